@@ -1,0 +1,1 @@
+"""The linear operator of one column as a sum of named terms."""
