@@ -1,8 +1,8 @@
 """Coefficients of a tableau: text read exactly, rounded once.
 
 A coefficient is a string of integers, decimals, ``+ - * / **``, ``sqrt()`` and parentheses.
-Decimals are read as text, so ``"0.1"`` is one tenth. Values stay fractions until a square root that is not
-rational appears; from then on they are decimals of `DIGITS` digits.
+Decimals are read as text, so ``"0.1"`` is one tenth. Values stay fractions until a
+square root that is not rational appears; from then on they are decimals of `DIGITS` digits.
 """
 
 import ast

@@ -1,7 +1,7 @@
 """Real polynomials with exact coefficients: where does one first become positive?
 
 Coefficients are listed from the constant upwards. Roots are counted with Sturm's theorem, so that
-a polynomial that only touches zero (optimal stability polynomials do) is told from one that crosses.
+a polynomial that only touches zero (optimal stability polynomials do) is told from a crossing one.
 """
 
 from collections.abc import Callable, Sequence

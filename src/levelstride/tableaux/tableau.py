@@ -45,10 +45,10 @@ class ExactTables:
 
 @dataclass(frozen=True, eq=False)
 class Tableau:
-    """An implicit-explicit additive Runge-Kutta pair, or an explicit method (both tables the same).
+    """An implicit-explicit additive Runge-Kutta pair, or an explicit method (two equal tables).
 
-    What follows from the coefficients is a property; the orders are those that the source claims and
-    the audit measures.
+    What follows from the coefficients is a property; the orders are those that the source claims
+    and the audit measures.
     """
 
     name: str
@@ -103,12 +103,12 @@ class Tableau:
     @cached_property
     def c_explicit(self) -> Array:
         """Row sums of the explicit table, (nstage)."""
-        return _read_only(tuple(_exact_sum(row) for row in self.exact.a_explicit))
+        return _read_only(tuple(exact_sum(row) for row in self.exact.a_explicit))
 
     @cached_property
     def c_implicit(self) -> Array:
         """Row sums of the implicit table, (nstage)."""
-        return _read_only(tuple(_exact_sum(row) for row in self.exact.a_implicit))
+        return _read_only(tuple(exact_sum(row) for row in self.exact.a_implicit))
 
     @property
     def implicit_solves(self) -> int:
@@ -182,7 +182,8 @@ def _exact_table(rows: Sequence[Sequence[str]]) -> tuple[tuple[Number, ...], ...
     return tuple(tuple(map(evaluate, row)) for row in rows)
 
 
-def _exact_sum(row: Sequence[Number]) -> Number:
+def exact_sum(row: Sequence[Number]) -> Fraction:
+    """Sum of a row of coefficients, every digit kept."""
     return sum((Fraction(x) for x in row), Fraction(0))
 
 
