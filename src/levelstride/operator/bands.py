@@ -91,9 +91,10 @@ class Banded:
 
     def diagonal(self, offset: int) -> Matrix:
         """Return one diagonal, row-aligned, zeros if it is not stored."""
+        found: Matrix = np.zeros(self.size, dtype=self.diagonals.dtype)
         if offset in self.offsets:
-            return self.diagonals[self.offsets.index(offset)]
-        return np.zeros(self.size, dtype=self.diagonals.dtype)
+            found = self.diagonals[self.offsets.index(offset)]
+        return found
 
     def entries(self, rows: ArrayLike, columns: ArrayLike) -> Matrix:
         """Return the entries at the given places, broadcast against one another."""

@@ -3,10 +3,15 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from levelstride.operator.bands import Banded
 from levelstride.operator.pressure import vertical_flux_divergence
 from levelstride.operator.setting import Setting
+from levelstride.operator.state import Index
+
+Array = NDArray[np.float64]
+Entry = tuple[Index, Index, Array]
 
 
 def vertical_diffusion(setting: Setting) -> Banded:
@@ -35,7 +40,7 @@ def vertical_diffusion(setting: Setting) -> Banded:
     return Banded.from_entries(size, entries)
 
 
-def _exchange(places: np.ndarray, conductance: np.ndarray, inertia: np.ndarray) -> list:
+def _exchange(places: Index, conductance: Array, inertia: Array) -> list[Entry]:
     """Entries of an exchange between neighbours, conserving sum of inertia times value."""
     low, high = places[:-1], places[1:]
     down, up = conductance / inertia[:-1], conductance / inertia[1:]

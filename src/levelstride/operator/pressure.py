@@ -51,7 +51,10 @@ def vertical_flux_divergence(setting: Setting) -> tuple[Array, Array]:
 
 
 def vertical_divergence(setting: Setting) -> Banded:
-    """pi'_j <- -(c^2/(cp theta0))_j [(rho0 theta0 w)_{j+1} - (rho0 theta0 w)_j]/(rho0 theta0 dz)_j."""
+    """pi'_j <- -(c^2/(cp theta0))_j (flux_{j+1} - flux_j)/(rho0 theta0 dz)_j, flux rho0 theta0 w.
+
+    Ground and lid carry no flux.
+    """
     at = setting.layout
     lower, upper = vertical_flux_divergence(setting)
     factor = -stiffness(setting)

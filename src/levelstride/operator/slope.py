@@ -26,7 +26,10 @@ def _lowest_count(setting: Setting) -> NDArray[np.float64]:
 
 
 def slope_pressure_gradient(setting: Setting) -> Banded:
-    """u_j <- cp theta0_j [sum over interior faces s rho0 theta0 (pi'_f - pi'_{f-1})/2]/(rho0 theta0 dz)_j."""
+    """u_j <- cp theta0_j [sum of s rho0 theta0 (pi'_f - pi'_{f-1})/2]/(rho0 theta0 dz)_j.
+
+    The sum runs over the interior faces f of the layer.
+    """
     at = setting.layout
     flux = _slope_flux(setting)
     factor = (
@@ -45,7 +48,10 @@ def slope_pressure_gradient(setting: Setting) -> Banded:
 
 
 def slope_divergence(setting: Setting) -> Banded:
-    """pi'_j <- (c^2/(cp theta0))_j [(rho0 theta0 s u)_{j+1} - (rho0 theta0 s u)_j]/(rho0 theta0 dz)_j."""
+    """pi'_j <- (c^2/(cp theta0))_j (flux_{j+1} - flux_j)/(rho0 theta0 dz)_j, flux rho0 theta0 s u.
+
+    u at a face is the mean of its two layers; ground and lid carry no flux.
+    """
     at = setting.layout
     flux = _slope_flux(setting)
     count = _lowest_count(setting)

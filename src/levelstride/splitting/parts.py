@@ -47,9 +47,7 @@ class Parts:
         return all(part.is_real for part in parts)
 
 
-def split_operator(
-    splitting: Splitting, column: Column, air: Background, wave: Wave
-) -> Parts:
+def split_operator(splitting: Splitting, column: Column, air: Background, wave: Wave) -> Parts:
     """Sort every term into its part.
 
     With a reference state the fast part is the implicit terms built on the reference, and the slow
@@ -87,6 +85,5 @@ def sort_terms(
     active = frozenset(
         name for name in splitting.terms("implicit") if not on_reference[name].is_zero
     )
-    return Parts(
-        slow, fast, gather("after-step", terms), gather("after-step-implicit", terms), layout, active
-    )
+    after, after_implicit = gather("after-step", terms), gather("after-step-implicit", terms)
+    return Parts(slow, fast, after, after_implicit, layout, active)

@@ -77,7 +77,9 @@ def resolve(given: str | Mapping[str, str], *, where: str = "split") -> Splittin
     if problems:
         raise InputError(*problems)
     changes = [
-        f"{term} {treatment[term]}" for term in CATALOGUE if treatment[term] != splitting.treatment[term]
+        f"{term} {treatment[term]}"
+        for term in CATALOGUE
+        if treatment[term] != splitting.treatment[term]
     ]
     name = ", ".join([splitting.name, *changes]) if changes else splitting.name
     return Splitting(name, MappingProxyType(treatment))
