@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any, Final
+from typing import Any, Final, cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -51,7 +51,7 @@ class BandedFactors:
         weakest: int | None = int(info) - 1 if info > 0 else None
         if weakest is None:
             norm = np.abs(scaled.diagonals).sum(axis=0).max()
-            reciprocal, _ = condition(lower, upper, factors, pivots + 1, norm, norm="I")
+            reciprocal, _ = condition(lower, upper, factors, pivots, norm, norm="I")
             if not reciprocal > _SINGULAR:
                 weakest = int(np.argmin(np.abs(factors[lower + upper])))
         return cls(factors, pivots, lower, upper, rows, columns, weakest)
@@ -67,7 +67,8 @@ class BandedFactors:
 
 
 def _lapack(name: str, matrix: Array) -> Any:
-    routine: Any = get_lapack_funcs((name,), (matrix,))[0]
+    routine: Any
+    (routine,) = cast(Any, get_lapack_funcs((name,), (matrix,)))
     return routine
 
 
