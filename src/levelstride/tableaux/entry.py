@@ -1,7 +1,7 @@
 """One entry of a tableau file turned into a `Tableau`, or into all its problems at once."""
 
 from collections.abc import Mapping
-from difflib import get_close_matches
+from difflib import SequenceMatcher
 from typing import Any, Final, Literal
 
 from levelstride.errors import InputError
@@ -93,8 +93,13 @@ def build(entry: Mapping[str, Any], kind: Kind, where: str) -> Tableau:
 
 
 def nearest(word: str, known: tuple[str, ...]) -> str:
-    """The known word that is closest to the given one."""
-    return get_close_matches(word, known, n=1, cutoff=0.0)[0]
+    """The known word that is closest to the given one; of equals the one that begins most alike."""
+
+    def likeness(candidate: str) -> tuple[float, int]:
+        alike = [a == b for a, b in zip(word, candidate, strict=False)]
+        return SequenceMatcher(None, word, candidate).ratio(), [*alike, False].index(False)
+
+    return max(known, key=likeness)
 
 
 class _Problems:

@@ -2,8 +2,8 @@
 
 Every vertex of a tree has the colour of one part, explicit (slow) or implicit (fast). A pair has
 order p when for each tree of at most p vertices the elementary weight equals one over the density.
-The weight of a tree is b (of the root's colour) applied to the product of its branches; a branch is A
-(of the colour of its own root) applied to the product of its branches; a single vertex gives c = A 1.
+The weight of a tree is b (of the root's colour) applied to the product of its branches; a branch is
+A (of its own root's colour) applied to the product of its branches; a single vertex gives c = A 1.
 
 Trees of one colour are the conditions of one table alone; trees of both colours couple the tables.
 Tall trees (no vertex with two branches) are all that linear problems with constant coefficients ask
@@ -12,8 +12,8 @@ for.
 References
 ----------
 E. Hairer, G. Wanner, S. P. Noersett (1993), Solving Ordinary Differential Equations I, sections
-II.2 and II.15 (P-series). A. L. Araujo, A. Murua, J. M. Sanz-Serna (1997), SIAM Journal on Numerical
-Analysis 34(5), 1926-1947, doi:10.1137/S0036142995292128.
+II.2 and II.15 (P-series). A. L. Araujo, A. Murua, J. M. Sanz-Serna (1997), SIAM Journal on
+Numerical Analysis 34(5), 1926-1947, doi:10.1137/S0036142995292128.
 """
 
 from collections.abc import Iterator

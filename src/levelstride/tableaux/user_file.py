@@ -22,7 +22,8 @@ def read_file(path: str | Path) -> tuple[Tableau, ...]:
     ----------
     path : str or Path
         TOML file with ``[[tableau]]`` entries (``name``, ``order``, ``a_explicit``, ``b_explicit``,
-        ``a_implicit``, ``b_implicit``) and ``[[explicit]]`` ones (``name``, ``order``, ``a``, ``b``).
+        ``a_implicit``, ``b_implicit``) and ``[[explicit]]`` ones (``name``, ``order``, ``a``,
+        ``b``).
 
     Returns
     -------
