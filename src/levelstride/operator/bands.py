@@ -53,12 +53,12 @@ class Banded:
     @property
     def lower(self) -> int:
         """Number of diagonals below the main one that must be stored."""
-        return max((-o for o in self.offsets), default=0) if self.offsets else 0
+        return max(0, *(-o for o in self.offsets), 0)
 
     @property
     def upper(self) -> int:
         """Number of diagonals above the main one that must be stored."""
-        return max(self.offsets, default=0) if self.offsets else 0
+        return max(0, *self.offsets, 0)
 
     @property
     def is_real(self) -> bool:

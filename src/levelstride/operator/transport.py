@@ -16,10 +16,7 @@ Stencil = tuple[list[int], list[int], list[float]]
 def horizontal_advection(setting: Setting) -> Banded:
     """Every unknown q <- -U a(kappa) q, U at the unknown's own height."""
     at, air = setting.layout, setting.air
-    wind = np.zeros(at.size)
-    for field in FIELDS:
-        places = at.places(field)
-        wind[places] = air.wind_c if places.size == at.nlev else air.wind_f[1:-1]
+    wind = at.spread(air.wind_c, air.wind_f[1:-1])
     if not np.any(wind):
         return Banded.zeros(at.size)
     every = np.arange(at.size)
