@@ -90,7 +90,10 @@ def _audited(entry: Mapping[str, Any], kind: Kind, where: str, before: list[Tabl
     report = audit(tableau)
     if not report.passed:
         raise InputError(
-            *(f"{where}: {tableau.name!r} fails its audit: {line}" for line in report.violations)
+            *(
+                f"{where}: {tableau.name!r} fails its audit: {line}; mend the coefficients or the claim"
+                for line in report.violations
+            )
         )
     return tableau
 
