@@ -89,12 +89,9 @@ def _audited(entry: Mapping[str, Any], kind: Kind, where: str, before: list[Tabl
         raise InputError(f"{where}: {problem}")
     report = audit(tableau)
     if not report.passed:
-        raise InputError(
-            *(
-                f"{where}: {tableau.name!r} fails its audit: {line}; mend the coefficients or the claim"
-                for line in report.violations
-            )
-        )
+        failing = f"{where}: {tableau.name!r} fails its audit"
+        mend = "mend the coefficients or the claim"
+        raise InputError(*(f"{failing}: {line}; {mend}" for line in report.violations))
     return tableau
 
 
