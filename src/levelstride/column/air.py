@@ -10,8 +10,9 @@ from .arrays import Array, read_only
 class Background:
     """One air state on a level set.
 
-    The ending ``_c`` marks values at layer centres, shape (nlev,); ``_f`` values at interfaces, shape
-    (nlev+1,), ground and lid included. ``dtheta_dz_f`` alone is kept at the interior interfaces 1..nlev-1.
+    The ending ``_c`` marks values at layer centres, shape (nlev,); ``_f`` values at interfaces,
+    shape (nlev+1,), ground and lid included. ``dtheta_dz_f`` alone is kept at the interior
+    interfaces 1..nlev-1.
 
     Parameters
     ----------

@@ -117,7 +117,8 @@ def check_reach(
     if isinstance(air, ConstantNAir) and not 10.0 <= temperature <= 1500.0:
         problems.add(
             f"{where}.buoyancy_frequency_per_s",
-            f"with this N the temperature at the lid would be {temperature:.4g} K; it must lie between "
+            f"with this N the temperature at the lid would be {temperature:.4g} K; it must lie "
+            "between "
             "10 and 1500 K: lower the top or change N",
             air.buoyancy_frequency_per_s,
         )
@@ -125,7 +126,8 @@ def check_reach(
     if not pressure >= LEAST_PRESSURE:
         problems.add(
             f"{where}.kind",
-            f"the pressure at the lid, {lid_m:.6g} m above sea level, would be {pressure:.2g} Pa; that is "
+            f"the pressure at the lid, {lid_m:.6g} m above sea level, would be {pressure:.2g} Pa; "
+            "that is "
             "no air to speak of: lower the top",
             air.kind,
         )

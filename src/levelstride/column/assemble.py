@@ -1,4 +1,4 @@
-"""From a checked definition to the records of the column; what tables mean together is checked here."""
+"""From a definition to the records of the column; what tables mean together is checked here."""
 
 import hashlib
 import json
@@ -77,7 +77,8 @@ def _make_levels(
         if altitude >= heights[-1]:
             problems.add(
                 "terrain.surface_altitude_m",
-                f"must lie below the top of the level set at {heights[-1]:g} m, into which the layers are "
+                f"must lie below the top of the level set at {heights[-1]:g} m, into which the "
+                "layers are "
                 'squeezed; raise the top or write compression = "none"',
                 altitude,
             )
@@ -194,7 +195,8 @@ def _check_wind_of_soundings(
         if not isinstance(air, SoundingAir) or air.winds_m_per_s is None:
             problems.add(
                 "wind.kind",
-                f"{_place(definition, i)} has no wind; every air state must be a sounding with the column "
+                f"{_place(definition, i)} has no wind; every air state must be a sounding with "
+                "the column "
                 "wind_m_per_s, or give another kind of wind",
                 "sounding",
             )
@@ -262,7 +264,7 @@ def _background(
 
 
 def _reference(definition: Definition, parts: _Parts, levels: Levels) -> Background | None:
-    """Reference state; it moves with the wind of the first air unless it is an ascent with its own."""
+    """Reference state, with the wind of the first air unless it is an ascent with its own."""
     if parts.reference is None or definition.reference is None:
         return None
     _, first_air, first_profile = parts.airs[0]

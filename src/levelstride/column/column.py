@@ -82,7 +82,8 @@ class Column:
     source : str
         Path as given, or ``<memory>``.
     digest : str
-        SHA-256 of the resolved definition as canonical JSON; referenced files enter with their contents.
+        SHA-256 of the resolved definition as canonical JSON; referenced files enter with their
+        contents.
     levels : Levels
         The interfaces.
     airs : tuple of Background
@@ -116,7 +117,8 @@ class Column:
     wind_given : bool
         Whether the file has a ``[wind]`` table.
     split : mapping, str or None
-        Splitting named by the file, or term -> treatment; names are checked where splittings are known.
+        Splitting named by the file, or term -> treatment; names are checked where splittings are
+        known.
     advice : Advice
         What is asked of the advice.
     definition : mapping

@@ -1,6 +1,7 @@
 """Put the contents of the files that a column file refers to into its definition.
 
-After this a definition stands alone: it can be built again elsewhere, and its digest covers everything.
+After this a definition stands alone: it can be built again elsewhere, and its digest covers
+everything.
 """
 
 import hashlib
@@ -91,7 +92,8 @@ def _air(air: OneAir, where: str, folder: Path, problems: Problems) -> OneAir | 
     if (air.file is None) != listed:
         problems.add(
             f"{where}.file",
-            "a sounding needs either a file or the lists temperatures_k and heights_m or pressures_pa; "
+            "a sounding needs either a file or the lists temperatures_k and heights_m or "
+            "pressures_pa; "
             "give one of the two",
         )
         return None

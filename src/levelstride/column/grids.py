@@ -1,7 +1,7 @@
 """Arithmetic of level sets: interfaces from a rule with few numbers.
 
-Every function returns heights above the ground [m], shape (nlev+1,), bottom-up, or raises ValueError
-with one sentence that says why the rule has no solution and how to mend it.
+Every function returns heights above the ground [m], shape (nlev+1,), bottom-up, or raises
+ValueError with one sentence that says why the rule has no solution and how to mend it.
 """
 
 from typing import Final, cast
@@ -48,7 +48,7 @@ def geometric(layers: int, top_m: float, lowest_layer_m: float) -> Array:
             "lowest_layer_m or a lower top_m"
         )
     low = float(np.log1p(-min(lowest_layer_m / top_m, 1.0 - 1e-12))) - 1.0
-    t = cast("float", brentq(lambda x: _log_sum(x, layers) - wanted, low, high, xtol=1e-15))
+    t = brentq(lambda x: _log_sum(x, layers) - wanted, low, high, xtol=1e-15)
     heights = np.concatenate([[0.0], np.cumsum(lowest_layer_m * np.exp(t * np.arange(layers)))])
     heights *= top_m / heights[-1]
     heights[-1] = top_m
@@ -70,7 +70,8 @@ def tanh(layers: int, top_m: float, lowest_layer_m: float) -> Array:
         )
 
     def share(a: float, x: Array) -> Array:
-        return np.sinh(a * x) / (np.sinh(a) * np.cosh(a * (1.0 - x)))
+        part: Array = np.sinh(a * x) / (np.sinh(a) * np.cosh(a * (1.0 - x)))
+        return part
 
     first = np.array([1.0 / layers])
 
@@ -82,7 +83,7 @@ def tanh(layers: int, top_m: float, lowest_layer_m: float) -> Array:
             f"no tanh set of {layers} layers below {top_m:g} m has so thin a lowest layer; give a "
             "thicker lowest_layer_m or more layers"
         )
-    a = cast("float", brentq(gap, 1e-7, 40.0, xtol=1e-15))
+    a = brentq(gap, 1e-7, 40.0, xtol=1e-15)
     return top_m * share(a, np.arange(layers + 1) / layers)
 
 

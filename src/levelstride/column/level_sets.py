@@ -72,7 +72,8 @@ def check_heights(
     if heights.size < needed:
         problems.add(
             label(-1),
-            f"has {heights.size} heights; a column has at least two layers: list {needed} or more {at}",
+            f"has {heights.size} heights; a column has at least two layers: list {needed} or more "
+            f"{at}",
             file=file,
         )
         return False
@@ -111,7 +112,8 @@ def _check_order(
     if repeated.size:
         problems.add_many(
             [label(int(i) + 1) for i in repeated],
-            f"repeats the height before it; layers must be at least {THINNEST:g} m thick: remove it",
+            f"repeats the height before it; layers must be at least {THINNEST:g} m thick: remove "
+            "it",
             float(heights[repeated[0] + 1]),
             file=file,
         )
@@ -137,7 +139,8 @@ def _check_ground(
     if at == "interfaces" and lowest != 0.0:
         problems.add(
             label(index),
-            "the lowest interface is the ground and must be 0; heights count from the ground (if these "
+            "the lowest interface is the ground and must be 0; heights count from the ground (if "
+            "these "
             'are layer centres write at = "centres"; if altitudes, subtract the ground\'s)',
             lowest,
             file=file,
@@ -207,7 +210,8 @@ def interfaces_of(table: Table, problems: Problems) -> Array | None:
     if thinnest < THINNEST:
         problems.add(
             "levels",
-            f"these numbers make a layer of {thinnest:.2g} m; layers must be at least {THINNEST:g} m "
+            f"these numbers make a layer of {thinnest:.2g} m; layers must be at least "
+            f"{THINNEST:g} m "
             "thick: use fewer layers, another lowest_layer_m or a higher top_m",
         )
         return None
@@ -219,8 +223,8 @@ def hybrid_interfaces(
 ) -> Array | None:
     """Interface heights of hybrid-pressure levels in the first air state, (nlev+1,) [m], or None.
 
-    The pressures are p = a p_ref + b p_s with p_s the pressure of that air at the ground; heights follow
-    by inverting its hydrostatic profile.
+    The pressures are p = a p_ref + b p_s with p_s the pressure of that air at the ground; heights
+    follow by inverting its hydrostatic profile.
     """
     pressures = _hybrid_pressures(table, profile, ground_m, problems)
     if pressures is None:
@@ -231,7 +235,8 @@ def hybrid_interfaces(
             problems.add(
                 "levels",
                 f"the lid at {pressures[-1]:g} Pa lies above the first air state, which ends at "
-                f"{profile.ceiling_m / 1000.0:g} km with {least:g} Pa; cut the highest interfaces or "
+                f"{profile.ceiling_m / 1000.0:g} km with {least:g} Pa; cut the highest interfaces "
+                "or "
                 "use another air",
             )
             return None
@@ -241,7 +246,8 @@ def hybrid_interfaces(
     if not np.all(np.isfinite(heights)) or heights[-1] > HIGHEST:
         problems.add(
             "levels",
-            f"the first air state never reaches the lid's pressure of {pressures[-1]:g} Pa; cut the "
+            f"the first air state never reaches the lid's pressure of {pressures[-1]:g} Pa; cut "
+            "the "
             "highest interfaces or use another air",
         )
         return None
@@ -249,7 +255,8 @@ def hybrid_interfaces(
         where = int(np.argmin(np.diff(heights)))
         problems.add(
             "levels",
-            f"layer {where} (from the ground) is thinner than {THINNEST:g} m; merge it with the next",
+            f"layer {where} (from the ground) is thinner than {THINNEST:g} m; merge it with the "
+            "next",
         )
         return None
     return heights
@@ -266,7 +273,8 @@ def _hybrid_pressures(
     if len(first) != len(table.b) or len(table.b) < 3:
         problems.add(
             f"levels.{name}",
-            f"{name} has {len(first)} and b {len(table.b)} entries; both need one per interface, ground "
+            f"{name} has {len(first)} and b {len(table.b)} entries; both need one per interface, "
+            "ground "
             "and lid included, at least 3",
         )
         return None
@@ -287,7 +295,8 @@ def _hybrid_pressures(
         at = int(np.flatnonzero(~falls)[0])
         problems.add(
             f"levels.{name}",
-            f"with surface pressure {surface:.1f} Pa the pressure does not fall from interface {at} "
+            f"with surface pressure {surface:.1f} Pa the pressure does not fall from interface "
+            f"{at} "
             f"({pressures[at]:.6g} Pa) to {at + 1} ({pressures[at + 1]:.6g} Pa), counted from the "
             "ground; it must fall at every interface",
         )

@@ -9,8 +9,8 @@ from .arrays import Array, read_only
 class Levels:
     """Interfaces of a column, heights above the ground.
 
-    Layer ``j`` lies between the interfaces ``j`` and ``j + 1``; interior interface ``f`` lies between
-    the layers ``f - 1`` and ``f``.
+    Layer ``j`` lies between the interfaces ``j`` and ``j + 1``; interior interface ``f`` lies
+    between the layers ``f - 1`` and ``f``.
 
     Parameters
     ----------
@@ -48,5 +48,5 @@ class Levels:
 
     @property
     def spacing_m(self) -> Array:
-        """Distance of the layer centres at the interior interfaces 1..nlev-1, shape (nlev-1,) [m]."""
+        """Distance of layer centres at the interior interfaces 1..nlev-1, shape (nlev-1,) [m]."""
         return read_only(0.5 * (self.interfaces_m[2:] - self.interfaces_m[:-2]))

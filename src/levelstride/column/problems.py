@@ -69,7 +69,7 @@ class Problems:
     def add_many(
         self, where: Sequence[str], advice: str, *value: object, file: str | None = None
     ) -> None:
-        """Add one kind of mistake that occurs at several places: the first in full, the rest counted."""
+        """Add a mistake made at several places: the first in full, the others counted."""
         more = f" (and {len(where) - 1} more like it)" if len(where) > 1 else ""
         self.add(where[0], advice + more, *value, file=file)
 

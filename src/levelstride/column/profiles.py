@@ -1,7 +1,7 @@
 """Hydrostatic air as a function of altitude, in closed form.
 
-Every profile answers three questions: temperature and pressure at an altitude, and the altitude of a
-pressure. Altitudes are geopotential, above sea level [m].
+Every profile answers three questions: temperature and pressure at an altitude, and the altitude of
+a pressure. Altitudes are geopotential, above sea level [m].
 """
 
 from dataclasses import dataclass
@@ -146,24 +146,25 @@ class ConstantNAir:
     @property
     def ceiling_m(self) -> float:
         """Altitude at which the temperature reaches zero [m]; infinite where it never does."""
-        exner = (self.ground_pa / REFERENCE_PRESSURE) ** KAPPA
-        limit = exner * HEAT_CAPACITY * (self.ground_k / exner) / GRAVITY
+        limit = HEAT_CAPACITY * self.ground_k / GRAVITY
         growth = self.frequency_per_s**2 / GRAVITY
         if limit * growth >= 1.0:
             return np.inf
-        shrink = 1.0 if growth == 0.0 else float(-np.log1p(-limit * growth) / (limit * growth))
+        shrink = float(_log1p_over(np.array(-limit * growth)))
         return self.ground_m + limit * shrink
 
     def _theta(self, altitude: Array) -> Array:
         exner = (self.ground_pa / REFERENCE_PRESSURE) ** KAPPA
         growth = self.frequency_per_s**2 / GRAVITY
-        return self.ground_k / exner * np.exp(growth * (altitude - self.ground_m))
+        theta: Array = self.ground_k / exner * np.exp(growth * (altitude - self.ground_m))
+        return theta
 
     def _exner(self, altitude: Array) -> Array:
         ground = (self.ground_pa / REFERENCE_PRESSURE) ** KAPPA
         height = altitude - self.ground_m
         fall = GRAVITY * height / (HEAT_CAPACITY * self.ground_k / ground)
-        return ground - fall * _expm1_over(-(self.frequency_per_s**2) / GRAVITY * height)
+        exner: Array = ground - fall * _expm1_over(-(self.frequency_per_s**2) / GRAVITY * height)
+        return exner
 
     def temperature(self, altitude: Array) -> Array:
         """Temperature [K] at ``altitude`` [m], same shape."""
@@ -179,4 +180,5 @@ class ConstantNAir:
         fall = ground - (pressure / REFERENCE_PRESSURE) ** KAPPA
         reach = fall * (HEAT_CAPACITY * self.ground_k / ground) / GRAVITY
         growth = self.frequency_per_s**2 / GRAVITY
-        return self.ground_m + reach * _log1p_over(-growth * reach)
+        altitude: Array = self.ground_m + reach * _log1p_over(-growth * reach)
+        return altitude

@@ -1,9 +1,9 @@
 """Measured ascents: read, check, and turn into hydrostatic air.
 
-Between rows temperature is linear in height. Below the first row and above the last one it keeps the
-value of that row. An ascent by pressure alone gets its heights from hydrostatic balance with the same
-linear temperature: rise = (R/g) L ln(p0/p1), L = (T1 - T0)/ln(T1/T0), upward and downward from the
-ground, which lies where the pressure is the surface pressure.
+Between rows temperature is linear in height. Below the first row and above the last one it keeps
+the value of that row. An ascent by pressure alone gets its heights from hydrostatic balance with
+the same linear temperature: rise = (R/g) L ln(p0/p1), L = (T1 - T0)/ln(T1/T0), upward and downward
+from the ground, which lies where the pressure is the surface pressure.
 """
 
 from collections.abc import Callable
@@ -67,7 +67,7 @@ class Ascent:
 
 
 def read_ascent(path: Path, where: str, problems: Problems) -> Ascent | None:
-    """Read an ascent from a CSV file; columns in any order, others than the known ones are ignored."""
+    """Read an ascent from a CSV file; columns in any order, unknown ones are ignored."""
     table = read_csv(path, problems, where)
     if table is None:
         return None
@@ -101,14 +101,16 @@ def _has_columns(ascent: Ascent, table: CsvTable, problems: Problems) -> bool:
     if not vertical:
         problems.add(
             "line 1",
-            f"no column height_m, pressure_pa or pressure_hpa; found: {found}; name the columns in the "
+            f"no column height_m, pressure_pa or pressure_hpa; found: {found}; name the columns "
+            "in the "
             "first line",
             file=table.file,
         )
     if "temperatures_k" not in ascent.values:
         problems.add(
             "line 1",
-            f"no column temperature_k or temperature_c; found: {found}; name the columns in the first "
+            f"no column temperature_k or temperature_c; found: {found}; name the columns in the "
+            "first "
             "line",
             file=table.file,
         )
@@ -223,8 +225,8 @@ def ascent_air(
     ground_m : float
         Altitude of the ground [m].
     surface_pressure_pa : float or None
-        Pressure at the ground [Pa]; None takes that of the ascent where it has heights and pressures, and
-        101325 otherwise.
+        Pressure at the ground [Pa]; None takes that of the ascent where it has heights and
+        pressures, and 101325 otherwise.
     problems : Problems
         Where mistakes are added.
 

@@ -34,7 +34,8 @@ def standard_air(pressure_pa: float | None = None, at_m: float = 0.0) -> Piecewi
     Parameters
     ----------
     pressure_pa : float, optional
-        Pressure at the altitude ``at_m`` [Pa] that replaces the standard one; the temperatures stay.
+        Pressure at the altitude ``at_m`` [Pa] that replaces the standard one; the temperatures
+        stay.
     at_m : float
         Altitude of that pressure [m].
 

@@ -1,4 +1,4 @@
-"""What the ground does to a column: squeezed layers, sloping coordinate surfaces; and what the lid does."""
+"""What ground, lid and latitude do: squeezed layers, sloping surfaces, absorption, rotation."""
 
 from typing import Final
 
@@ -13,7 +13,8 @@ EARTH_ROTATION: Final = 7.292115e-5
 def squeezed(interfaces_m: Array, altitude_m: float) -> Array:
     """Heights above the ground after linear compression by (top - altitude)/top, same shape [m]."""
     top = interfaces_m[-1]
-    return interfaces_m * ((top - altitude_m) / top)
+    squeezed_m: Array = interfaces_m * ((top - altitude_m) / top)
+    return squeezed_m
 
 
 def linear_slope(slope: float, interfaces_m: Array) -> Array:
@@ -23,13 +24,15 @@ def linear_slope(slope: float, interfaces_m: Array) -> Array:
 
 def exponential_slope(slope: float, interfaces_m: Array, decay_height_m: float) -> Array:
     """Slope times exp(-z/h), (nlev+1,) [1]."""
-    return slope * np.exp(-interfaces_m / decay_height_m)
+    slopes: Array = slope * np.exp(-interfaces_m / decay_height_m)
+    return slopes
 
 
 def absorbing_layer(rate_per_s: float, base_m: float, interfaces_m: Array) -> Array:
     """Rate r = rate sin^2(pi/2 (z - base)/(top - base)) above the base, (nlev+1,) [1/s]."""
     share = np.clip((interfaces_m - base_m) / (interfaces_m[-1] - base_m), 0.0, 1.0)
-    return rate_per_s * np.sin(0.5 * np.pi * share) ** 2
+    rates: Array = rate_per_s * np.sin(0.5 * np.pi * share) ** 2
+    return rates
 
 
 def coriolis(latitude_deg: float) -> float:
