@@ -86,7 +86,7 @@ def resolve(given: str | Mapping[str, str], *, where: str = "split") -> Splittin
 
 
 def _from_text(text: str, where: str) -> Splitting:
-    parts = [_standard(part) for part in text.split("+")]
+    parts = list(dict.fromkeys(_standard(part) for part in text.split("+")))
     fast: set[str] = set()
     problems = []
     for part in parts:
@@ -96,8 +96,12 @@ def _from_text(text: str, where: str) -> Splitting:
             fast |= set(GROUPS[part])
         elif part in CATALOGUE:
             fast.add(part)
+        elif part in WHOLE:
+            problems.append(
+                f"{where}: '{part}' in '{text}' stands alone; leave out the other names"
+            )
         else:
-            known = (*GROUPS, *WHOLE, *CATALOGUE)
+            known = tuple(dict.fromkeys((*GROUPS, *WHOLE, *CATALOGUE)))
             problems.append(_unknown(where, part, "group or term", known))
     if problems:
         raise InputError(*problems)
