@@ -1,0 +1,1 @@
+"""Where work items run: each module hands out a `concurrent.futures.Executor`."""

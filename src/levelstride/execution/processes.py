@@ -1,0 +1,63 @@
+"""Work items in processes of their own on this machine, one thread in each."""
+
+import multiprocessing
+import os
+import signal
+from collections.abc import Iterator
+from concurrent.futures import Executor, ProcessPoolExecutor
+from contextlib import contextmanager
+
+THREAD_VARIABLES = (
+    "OMP_NUM_THREADS",
+    "OPENBLAS_NUM_THREADS",
+    "MKL_NUM_THREADS",
+    "NUMBA_NUM_THREADS",
+)
+
+
+@contextmanager
+def processes(workers: int) -> Iterator[Executor]:
+    """Hand out an executor of worker processes.
+
+    They are spawned, never forked: a fork after threads have started may hang. Each holds linear
+    algebra and compiled kernels at one thread. When the block is left by an exception, an
+    interruption from the keyboard included, the workers are ended at once.
+
+    Parameters
+    ----------
+    workers : int
+        Number of processes.
+    """
+    before = set(multiprocessing.active_children())
+    executor = ProcessPoolExecutor(
+        workers, mp_context=multiprocessing.get_context("spawn"), initializer=_prepare
+    )
+    try:
+        yield executor
+    except BaseException:
+        executor.shutdown(wait=False, cancel_futures=True)
+        workers_left = set(multiprocessing.active_children()) - before
+        for worker in workers_left:
+            worker.terminate()
+        for worker in workers_left:
+            worker.join()
+        raise
+    executor.shutdown(wait=True)
+
+
+def _prepare() -> None:
+    """Make this worker single-threaded and deaf to the keyboard; its parent ends it."""
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    for variable in THREAD_VARIABLES:
+        os.environ[variable] = "1"
+    import scipy.linalg  # noqa: F401  so that its thread pools exist and can be limited
+    from threadpoolctl import threadpool_limits  # type: ignore[import-untyped]
+
+    threadpool_limits(1)
+
+
+def thread_counts() -> list[int]:
+    """Count the threads of every pool of linear algebra in this process; a work item itself."""
+    from threadpoolctl import threadpool_info  # type: ignore[import-untyped]
+
+    return [pool["num_threads"] for pool in threadpool_info()]

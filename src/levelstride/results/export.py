@@ -1,0 +1,171 @@
+"""Records as JSON, CSV and plain text."""
+
+import csv
+import io
+import json
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import asdict, is_dataclass
+from typing import Any, Final
+
+from .dataset import Advice, AdviceRow
+from .wording import headroom, number, percent, step
+
+_BITES: Final = (
+    "wavenumber_per_m", "growth_per_s", "kind", "layer_lowest", "layer_highest", "bottom_m",
+    "top_m", "wavelength_layers", "wavelength_m", "period_s",
+)  # fmt: skip
+_COLUMNS: Final = (
+    "tableau", "split", "advised_step_s", "advised_step_fraction", "stable_step_s", "unbounded",
+    "scanned_to_s", "strict_step_s", "criterion", "binding", "steps_per_hour", "cost_per_hour",
+    "explicit_evaluations_per_hour", "solves_per_hour", "exchanges_per_hour", "measured_s_per_hour",
+    "frequency_error", "amplitude_change_per_period", "explicit_share", "gain", "efolding_s",
+    "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns",
+)  # fmt: skip
+
+
+def to_plain(record: Any) -> Any:
+    """Turn a record into dicts, lists and finite numbers.
+
+    Parameters
+    ----------
+    record : Any
+        A record, or mappings, sequences and scalars of such.
+
+    Returns
+    -------
+    Any
+        Plain data; a number that is not finite becomes None.
+    """
+    if is_dataclass(record) and not isinstance(record, type):
+        return to_plain(asdict(record))
+    if isinstance(record, Mapping):
+        return {str(key): to_plain(value) for key, value in record.items()}
+    if isinstance(record, Sequence) and not isinstance(record, str | bytes):
+        return [to_plain(value) for value in record]
+    if isinstance(record, bool | int | str) or record is None:
+        return record
+    value = float(record)
+    return value if math.isfinite(value) else None
+
+
+def to_json(record: Any) -> str:
+    """Write a record as JSON (RFC 8259), finite numbers only.
+
+    Parameters
+    ----------
+    record : Any
+        A record, or mappings, sequences and scalars of such.
+
+    Returns
+    -------
+    str
+        Indented text that ends with a line feed.
+
+    Examples
+    --------
+    >>> print(to_json({"stable_step_s": 27.5, "strict_step_s": float("nan")}), end="")
+    {
+      "stable_step_s": 27.5,
+      "strict_step_s": null
+    }
+    """
+    return json.dumps(to_plain(record), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+
+
+def to_csv(advice: Advice) -> str:
+    """Write the rows of an advice as CSV, one line per tableau and splitting.
+
+    Parameters
+    ----------
+    advice : Advice
+        The advice.
+
+    Returns
+    -------
+    str
+        Comma-separated text with a heading line; nothing stands where there is no value.
+    """
+    lines = [_cells(row, advice.intervals_s) for row in advice.rows]
+    headings = list(dict.fromkeys(name for line in lines for name in line))
+    text = io.StringIO()
+    writer = csv.DictWriter(text, headings, restval="", lineterminator="\n")
+    writer.writeheader()
+    writer.writerows(lines)
+    return text.getvalue()
+
+
+def _cells(row: AdviceRow, intervals_s: tuple[float, ...]) -> dict[str, str]:
+    plain = to_plain(row)
+    cells = {name: plain[name] for name in _COLUMNS}
+    cells |= {f"bites_{name}": (plain["bites"] or {}).get(name) for name in _BITES}
+    for at in row.stable_step_by_efolding:
+        cells[f"stable_step_s_efolding_{at.efolding_s:.6g}_s"] = at.stable_step_s
+    for interval, steps in zip(intervals_s, row.steps_per_interval, strict=False):
+        cells[f"steps_per_{interval:.6g}_s"] = steps
+    return {name: _cell(value) for name, value in cells.items()}
+
+
+def _cell(value: Any) -> str:
+    if value is None:
+        return ""
+    if isinstance(value, bool):
+        return "true" if value else "false"
+    return repr(value) if isinstance(value, float) else str(value)
+
+
+def to_text(advice: Advice) -> str:
+    """Write the best row as ten plain lines to paste beside a configuration.
+
+    Parameters
+    ----------
+    advice : Advice
+        The advice.
+
+    Returns
+    -------
+    str
+        Ten lines.
+    """
+    provenance = advice.provenance
+    lines = [
+        ("advice", f"levelstride {provenance.version}, {provenance.created_utc}"),
+        ("column", _one_line(advice.title)),
+        *_best_lines(advice),
+        ("hash", f"sha256 {provenance.column_sha256}"),
+        ("caution", " ".join(filter(None, (advice.caution, advice.wind_note)))),
+    ]
+    return "".join(f"{name + ':':<11}{text}\n" for name, text in lines)
+
+
+def _best_lines(advice: Advice) -> list[tuple[str, str]]:
+    if advice.best is None:
+        names = ("step", "splitting", "tableau", "reason", "headroom", "accuracy")
+        reason = advice.rows[0].binding if advice.rows else "nothing was tried"
+        return [(n, reason if n == "reason" else "none can be advised") for n in names]
+    row = advice.rows[advice.best]
+    return [
+        ("step", _step_line(row, advice.intervals_s)),
+        ("splitting", f"{row.split} implicit" if row.path != "explicit" else row.split),
+        ("tableau", row.tableau),
+        ("reason", row.binding),
+        ("headroom", headroom(row)),
+        (
+            "accuracy",
+            f"gravity waves: frequency error {percent(row.frequency_error)}, "
+            f"amplitude change per period {percent(row.amplitude_change_per_period)}",
+        ),
+    ]
+
+
+def _step_line(row: AdviceRow, intervals_s: tuple[float, ...]) -> str:
+    text = f"{step(row.advised_step_s, 6)} s"
+    if row.advised_step_fraction and "/" in row.advised_step_fraction:
+        text += f" (exactly {row.advised_step_fraction} s)"
+    for interval, steps in zip(intervals_s, row.steps_per_interval, strict=False):
+        text += f", {steps} per {number(interval, 6)} s"
+    return text
+
+
+def _one_line(text: str) -> str:
+    return " ".join(text.split())

@@ -1,0 +1,148 @@
+"""Made-up records for tests of everything that reads them: complete, small, meaningless."""
+
+from dataclasses import asdict, fields
+
+from levelstride.results.dataset import (
+    Advice,
+    AdviceRow,
+    Bites,
+    ColumnSummary,
+    CurrentStep,
+    Limit,
+    OwnGrowth,
+    Provenance,
+    StepAtTolerance,
+    Window,
+)
+from levelstride.results.wording import CAUTION
+
+
+def bites(**changes):
+    values = {
+        "wavenumber_per_m": 1.0471975511965976e-3,
+        "growth_per_s": 1.2e-5,
+        "kind": "sound",
+        "layer_lowest": 0,
+        "layer_highest": 3,
+        "bottom_m": 0.0,
+        "top_m": 140.0,
+        "energy_share": {"u": 0.4, "pi": 0.35, "w": 0.2, "theta": 0.05},
+        "kind_share": {"sound": 0.9, "gravity": 0.1},
+        "wavelength_layers": 2.5,
+        "wavelength_m": 6000.0,
+        "period_s": 12.5,
+    }
+    return Bites(**{**values, **changes})
+
+
+def limit(**changes):
+    values = {
+        "tableau": "ARS(2,3,2)",
+        "split": "sound+buoyancy",
+        "stable_step_s": 27.5,
+        "unbounded": False,
+        "scanned_to_s": 110.0,
+        "strict_step_s": 26.25,
+        "stable_step_by_efolding": tuple(
+            StepAtTolerance(efolding_s=e, stable_step_s=s)
+            for e, s in ((86400.0, 27.5), (3600.0, 28.0), (600.0, None))
+        ),
+        "criterion": "spectrum",
+        "explicit_share": 0.95,
+        "gain": 40.0,
+        "bites": bites(),
+        "certified": "dense eigenvalues on both sides of the limit",
+        "efolding_s": 86400.0,
+        "growth_per_step": 3.2e-4,
+        "air": "standard",
+        "own_growth": (
+            OwnGrowth(air="standard", wavenumber_per_m=1e-4, growth_per_s=1e-6, cause="shear"),
+        ),
+        "windows": (Window(from_s=30.0, to_s=31.5),),
+        "path": "tridiagonal",
+    }
+    return Limit(**{**values, **changes})
+
+
+def unbounded(**changes):
+    return limit(
+        **{
+            "stable_step_s": None,
+            "unbounded": True,
+            "strict_step_s": None,
+            "criterion": "none",
+            "bites": None,
+            "stable_step_by_efolding": (),
+            "growth_per_step": None,
+            "explicit_share": None,
+            "windows": (),
+            **changes,
+        }
+    )
+
+
+def row(of=None, **changes):
+    of = of or limit()
+    values = {
+        "advised_step_s": 24.0,
+        "advised_step_fraction": "24",
+        "steps_per_interval": (25, 150),
+        "steps_per_hour": 150.0,
+        "cost_per_hour": 1125.0,
+        "explicit_evaluations_per_hour": 450.0,
+        "solves_per_hour": 300.0,
+        "exchanges_per_hour": 450.0,
+        "measured_s_per_hour": 0.012,
+        "binding": "spectrum: sound wave of 6.0 km, layers 0-3 (0-140 m)",
+        "frequency_error": 0.002,
+        "amplitude_change_per_period": -0.011,
+    }
+    inherited = {field.name: getattr(of, field.name) for field in fields(Limit)}
+    return AdviceRow(**{**inherited, **values, **changes})
+
+
+def without_step(**changes):
+    nothing = dict.fromkeys(
+        [field.name for field in fields(AdviceRow) if field.name not in asdict(limit())]
+    )
+    nothing |= {"steps_per_interval": (), "binding": "unstable at every step"}
+    return row(limit(stable_step_s=None, split="sound"), **{**nothing, **changes})
+
+
+def advice(**changes):
+    values = {
+        "title": "Brackwater coast, 3 layers",
+        "column": ColumnSummary(
+            layers=3,
+            lowest_layer_m=20.0,
+            thickest_layer_m=60.0,
+            largest_ratio=2.0,
+            top_m=120.0,
+            interfaces_m=(0.0, 20.0, 60.0, 120.0),
+        ),
+        "intervals_s": (600.0, 3600.0),
+        "rows": (row(), row(unbounded(split="all-implicit")), without_step()),
+        "best": 0,
+        "current": CurrentStep(
+            step_s=22.9,
+            share_of_limit=0.8327272727272728,
+            stable=True,
+            verdict="your step is at 83 % of the limit",
+            frequency_error=0.001,
+            amplitude_change_per_period=-0.01,
+            limit=limit(),
+        ),
+        "wind_note": "no wind was given, the limit is for air at rest",
+        "caution": CAUTION,
+        "provenance": Provenance(
+            version="0.1.0",
+            format_version=1,
+            column_source="columns/brackwater_coast.toml",
+            column_sha256="ab" * 32,
+            created_utc="2031-05-17T08:30:00Z",
+            constants={"gravity_m_per_s2": 9.80665},
+            tolerances={"efolding_s": 86400.0},
+            certified="dense eigenvalues on both sides of the limit",
+        ),
+    }
+    return Advice(**{**values, **changes})
