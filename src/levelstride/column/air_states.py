@@ -106,8 +106,8 @@ def check_reach(
     if isinstance(air, ConstantNAir) and lid_m >= profile.ceiling_m:
         problems.add(
             f"{where}.buoyancy_frequency_per_s",
-            f"with this N the temperature falls to zero {profile.ceiling_m:.0f} m above sea level, "
-            f"below the lid at {lid_m:.0f} m; lower the top or raise N",
+            f"with this N the temperature falls to zero {profile.ceiling_m:.0f} m above sea "
+            f"level, below the lid at {lid_m:.0f} m; lower the top or raise N",
             air.buoyancy_frequency_per_s,
         )
         return False
@@ -118,8 +118,7 @@ def check_reach(
         problems.add(
             f"{where}.buoyancy_frequency_per_s",
             f"with this N the temperature at the lid would be {temperature:.4g} K; it must lie "
-            "between "
-            "10 and 1500 K: lower the top or change N",
+            "between 10 and 1500 K: lower the top or change N",
             air.buoyancy_frequency_per_s,
         )
         return False
@@ -127,8 +126,7 @@ def check_reach(
         problems.add(
             f"{where}.kind",
             f"the pressure at the lid, {lid_m:.6g} m above sea level, would be {pressure:.2g} Pa; "
-            "that is "
-            "no air to speak of: lower the top",
+            "that is no air to speak of: lower the top",
             air.kind,
         )
         return False

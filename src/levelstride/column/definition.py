@@ -195,8 +195,6 @@ Airs: TypeAlias = Annotated[
     list[OneAir], Field(min_length=1, max_length=100), BeforeValidator(_as_list)
 ]
 
-# --- wind and updraft -----------------------------------------------------------------------------
-
 
 class Wind(Table):
     """What every wind has."""
@@ -245,9 +243,6 @@ class UpdraftTable(Table):
     heights_m: list[Height] | None = None
     speeds_m_per_s: list[Speed] | None = None
     scheme: VerticalAdvection = "upwind-3"
-
-
-# --- the other tables -----------------------------------------------------------------------------
 
 
 class HorizontalTable(Table):
@@ -350,8 +345,6 @@ class Definition(Table):
     split: SplitTable | None = None
     advice: AdviceTable = AdviceTable()
 
-
-# --- reading --------------------------------------------------------------------------------------
 
 _STAND_INS: Final[dict[str, Any]] = {
     "levels": {"kind": "uniform", "layers": 2, "top_m": 1000.0},

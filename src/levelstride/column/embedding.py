@@ -93,8 +93,7 @@ def _air(air: OneAir, where: str, folder: Path, problems: Problems) -> OneAir | 
         problems.add(
             f"{where}.file",
             "a sounding needs either a file or the lists temperatures_k and heights_m or "
-            "pressures_pa; "
-            "give one of the two",
+            "pressures_pa; give one of the two",
         )
         return None
     if air.file is None:

@@ -65,8 +65,8 @@ def tanh(layers: int, top_m: float, lowest_layer_m: float) -> Array:
         return uniform(layers, top_m)
     if lowest_layer_m > mean:
         raise ValueError(
-            f"a tanh set needs a lowest layer no thicker than the mean layer of {mean:g} m; give a "
-            "thinner lowest_layer_m, fewer layers or a higher top_m"
+            f"a tanh set needs a lowest layer no thicker than the mean layer of {mean:g} m; give "
+            "a thinner lowest_layer_m, fewer layers or a higher top_m"
         )
 
     def share(a: float, x: Array) -> Array:

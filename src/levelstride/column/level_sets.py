@@ -211,8 +211,7 @@ def interfaces_of(table: Table, problems: Problems) -> Array | None:
         problems.add(
             "levels",
             f"these numbers make a layer of {thinnest:.2g} m; layers must be at least "
-            f"{THINNEST:g} m "
-            "thick: use fewer layers, another lowest_layer_m or a higher top_m",
+            f"{THINNEST:g} m thick: use fewer layers, another lowest_layer_m or a higher top_m",
         )
         return None
     return heights
@@ -236,8 +235,7 @@ def hybrid_interfaces(
                 "levels",
                 f"the lid at {pressures[-1]:g} Pa lies above the first air state, which ends at "
                 f"{profile.ceiling_m / 1000.0:g} km with {least:g} Pa; cut the highest interfaces "
-                "or "
-                "use another air",
+                "or use another air",
             )
             return None
     with np.errstate(invalid="ignore", divide="ignore"):
@@ -247,8 +245,7 @@ def hybrid_interfaces(
         problems.add(
             "levels",
             f"the first air state never reaches the lid's pressure of {pressures[-1]:g} Pa; cut "
-            "the "
-            "highest interfaces or use another air",
+            "the highest interfaces or use another air",
         )
         return None
     if np.min(np.diff(heights)) < THINNEST:
@@ -274,8 +271,7 @@ def _hybrid_pressures(
         problems.add(
             f"levels.{name}",
             f"{name} has {len(first)} and b {len(table.b)} entries; both need one per interface, "
-            "ground "
-            "and lid included, at least 3",
+            "ground and lid included, at least 3",
         )
         return None
     if not check_layers(len(table.b) - 1, problems, "levels.b"):
@@ -296,9 +292,8 @@ def _hybrid_pressures(
         problems.add(
             f"levels.{name}",
             f"with surface pressure {surface:.1f} Pa the pressure does not fall from interface "
-            f"{at} "
-            f"({pressures[at]:.6g} Pa) to {at + 1} ({pressures[at + 1]:.6g} Pa), counted from the "
-            "ground; it must fall at every interface",
+            f"{at} ({pressures[at]:.6g} Pa) to {at + 1} ({pressures[at + 1]:.6g} Pa), counted "
+            "from the ground; it must fall at every interface",
         )
     elif abs(pressures[0] - surface) > 1e-6 * surface:
         problems.add(
@@ -309,8 +304,8 @@ def _hybrid_pressures(
     elif pressures[-1] <= 0.0:
         problems.add(
             f"levels.{name}",
-            "the highest interface has no pressure, so the lid would be infinitely high; cut that "
-            "interface or give it a pressure above 0",
+            "the highest interface has no pressure, so the lid would be infinitely high; cut "
+            "that interface or give it a pressure above 0",
         )
     else:
         return pressures

@@ -102,16 +102,14 @@ def _has_columns(ascent: Ascent, table: CsvTable, problems: Problems) -> bool:
         problems.add(
             "line 1",
             f"no column height_m, pressure_pa or pressure_hpa; found: {found}; name the columns "
-            "in the "
-            "first line",
+            "in the first line",
             file=table.file,
         )
     if "temperatures_k" not in ascent.values:
         problems.add(
             "line 1",
             f"no column temperature_k or temperature_c; found: {found}; name the columns in the "
-            "first "
-            "line",
+            "first line",
             file=table.file,
         )
     return bool(vertical) and "temperatures_k" in ascent.values

@@ -12,14 +12,13 @@ EARTH_ROTATION: Final = 7.292115e-5
 
 def squeezed(interfaces_m: Array, altitude_m: float) -> Array:
     """Heights above the ground after linear compression by (top - altitude)/top, same shape [m]."""
-    top = interfaces_m[-1]
-    squeezed_m: Array = interfaces_m * ((top - altitude_m) / top)
-    return squeezed_m
+    top = float(interfaces_m[-1])
+    return interfaces_m * ((top - altitude_m) / top)
 
 
 def linear_slope(slope: float, interfaces_m: Array) -> Array:
     """Slope that decays linearly from the ground to zero at the lid, (nlev+1,) [1]."""
-    return slope * (1.0 - interfaces_m / interfaces_m[-1])
+    return slope * (1.0 - interfaces_m / float(interfaces_m[-1]))
 
 
 def exponential_slope(slope: float, interfaces_m: Array, decay_height_m: float) -> Array:
