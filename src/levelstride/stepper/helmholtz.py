@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 
 from levelstride.operator.bands import Banded
 from levelstride.operator.state import Layout
-from levelstride.stepper.kernels import Places5, Reduction, Traits, factor, solve
+from levelstride.stepper.kernels import Origin, Reduction, Traits, factor, solve
 
 Array = NDArray[Any]
 
@@ -143,9 +143,9 @@ class Tridiagonal:
         return float(rows.max())
 
 
-def places(at: Layout) -> Places5:
+def origin(at: Layout) -> Origin:
     """Describe the layout to the kernel."""
-    return Places5(at.nlev, at.stride, int(at.u[0]), int(at.pi[0]), int(at.w[0]), int(at.theta[0]))
+    return Origin(at.nlev, at.stride, int(at.u[0]), int(at.pi[0]), int(at.w[0]), int(at.theta[0]))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -176,7 +176,7 @@ class Helmholtz:
 
     def __init__(self, couplings: Couplings, at: Layout, steps: NDArray[np.float64]) -> None:
         self.at, self.couplings, self.steps = at, couplings, steps
-        self.places = places(at)
+        self.origin = origin(at)
         self.traits = couplings.traits(lorenz=at.theta_in_layers)
         self.singular: Singular | None = None
         self.systems: list[Tridiagonal] = []
@@ -245,7 +245,7 @@ class Helmholtz:
     def solve(self, rhs: Array, d: int) -> Array:
         """Return the stage Y of a right-hand side, shape (nstate, nlane)."""
         y = np.array(rhs, dtype=self.reduction.inverse.dtype, order="C")
-        solve(y, self.places, self.traits, self.reduction, d, y.shape[1])
+        solve(y, self.origin, self.traits, self.reduction, d, y.shape[1])
         return y
 
     def residual_ratio(self, rhs: Array) -> float:

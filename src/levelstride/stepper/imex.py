@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any, Literal
+from functools import lru_cache
+from typing import Any, Final, Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,6 +20,13 @@ from levelstride.stepper.plan import NONE, Plan, Scheme
 
 Array = NDArray[Any]
 Path = Literal["auto", "tridiagonal", "banded"]
+
+BLOCK_BYTES: Final = 2**21
+"""Room for the stages of a block of lanes: they should stay in the caches."""
+
+FEWEST_LANES: Final = 32
+MOST_LANES: Final = 64
+"""Shorter rows spend their time on starting loops, longer ones leave the innermost cache."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -75,6 +83,12 @@ class _Operator:
         return Banded(matrix.offsets, matrix.diagonals.astype(self.dtype))
 
 
+@lru_cache(maxsize=64)
+def _operator(parts: Parts, scheme: Scheme) -> _Operator:
+    """Keep what is known of the latest operators: a search for a step comes back to each."""
+    return _Operator(parts, scheme)
+
+
 class Stepper:
     """Takes steps of one length with one tableau.
 
@@ -113,7 +127,7 @@ class Stepper:
     """
 
     def __init__(self, parts: Parts, tableau: Scheme, dt: float, *, path: Path = "auto") -> None:
-        self._prepare(_Operator(parts, tableau), dt, path)
+        self._prepare(_operator(parts, tableau), dt, path)
 
     def at_step(self, dt: float) -> Stepper:
         """Return the same stepper for another step [s], reusing what does not depend on it."""
@@ -239,39 +253,42 @@ class Stepper:
             return stepped if factors is None else factors.solve(stepped)
 
     def _stages_compiled(self, q: Array) -> Array:
-        nstate, operator = q.shape[0], self._operator
-        block = (nstate, max(1, min(kernels.LANES, q.shape[1])))
-        out, y, rhs = np.empty_like(q), np.empty(block, q.dtype), np.empty(block, q.dtype)
-        kept = np.empty((operator.plan.nslot, *block), q.dtype)
+        operator, (nstate, nlane) = self._operator, q.shape
+        nslot = operator.plan.nslot
+        nblock = min(nlane, lanes_at_once(nstate * q.itemsize * (nslot + 2)))
+        out, kept = np.empty_like(q), np.zeros((nslot, nstate, nblock), q.dtype)
+        work = np.empty((2, nstate, nblock), q.dtype)
         helmholtz = self._helmholtz or _nothing_to_solve(self.dtype)
         status = kernels.advance(
-            q, out, kept, y, rhs, self._schedule, operator.slow_rows, operator.fast_rows,
-            helmholtz.places, helmholtz.traits, helmholtz.reduction,
+            q, out, kept, work, self._schedule, operator.slow_rows, operator.fast_rows,
+            helmholtz.origin, helmholtz.traits, helmholtz.reduction,
         )  # fmt: skip
         if status != kernels.DONE:
             raise InternalError(f"step kernel refused its workspaces, status {status}")
         return out
 
     def _stages_banded(self, q: Array) -> Array:
-        plan, operator, schedule = self._operator.plan, self._operator, self._schedule
+        plan, operator = self._operator.plan, self._operator
         kept = np.empty((plan.nslot, *q.shape), q.dtype)
         y = q
         for i in np.flatnonzero(plan.used):
-            rhs = np.empty_like(q)
-            kernels.combine(q, kept, schedule, i, rhs, 0, q.shape[1])
-            y = rhs
+            y = rhs = self._combine(q, kept, int(i))
+            keep = plan.fast_slot[i]
             if plan.solver[i] != NONE:
                 y = self._lu[plan.solver[i]].solve(rhs)
-                if plan.fast_slot[i] != NONE:
-                    np.subtract(y, rhs, out=kept[plan.fast_slot[i]])
-            elif plan.fast_slot[i] != NONE:
-                kept[plan.fast_slot[i]] = _multiply(operator.fast_rows, y)
+                if keep != NONE:
+                    np.subtract(y, rhs, out=kept[keep])
+            elif keep != NONE:
+                kept[keep] = _multiply(operator.fast_rows, y)
             if plan.slow_slot[i] != NONE:
                 kept[plan.slow_slot[i]] = _multiply(operator.slow_rows, y)
-        if plan.result_stage == NONE:
-            y = np.empty_like(q)
-            kernels.combine(q, kept, schedule, plan.nstage, y, 0, q.shape[1])
-        return y
+        return self._combine(q, kept, plan.nstage) if plan.result_stage == NONE else y
+
+    def _combine(self, q: Array, kept: Array, stage: int) -> Array:
+        out = np.empty_like(q)
+        flat_kept = kept.reshape(kept.shape[0], q.size)
+        kernels.combine(q.ravel(), flat_kept, self._schedule, stage, out.ravel())
+        return out
 
 
 def _multiply(rows: kernels.Rows, x: Array) -> Array:
@@ -280,6 +297,13 @@ def _multiply(rows: kernels.Rows, x: Array) -> Array:
     return y
 
 
+def lanes_at_once(bytes_per_lane: int) -> int:
+    """Lanes to take through a whole step together so that their stages stay in the cache."""
+    lanes = BLOCK_BYTES // (8 * bytes_per_lane) * 8
+    return int(np.clip(lanes, FEWEST_LANES, MOST_LANES))
+
+
+@lru_cache(maxsize=2)
 def _nothing_to_solve(dtype: Any) -> Helmholtz:
     at = Layout(2, "charney-phillips")
     return Helmholtz(Couplings.of(Banded.zeros(at.size), at, dtype), at, np.ones(1))

@@ -11,6 +11,7 @@ picks the one or the other when the kernel is compiled.
 from __future__ import annotations
 
 from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 from typing import Any, Final, NamedTuple
 
@@ -25,11 +26,11 @@ Places = NDArray[np.int64]
 DONE: Final = 0
 WRONG_SHAPE: Final = -1
 
-LANES: Final = 32
-"""Lanes taken through a whole step at once, so that the stages of a block stay in the cache."""
+PIECE: Final = 1024
+"""Numbers of a state added up at once, so that they stay in the innermost cache."""
 
 
-def compiled(function: Callable[..., Any]) -> Any:
+def compiled(function: Callable[..., Any], *, inline: bool = False) -> Any:
     """Compile a kernel on first use: the one place for flags and caching.
 
     ``cache``: compiling takes seconds, and a command that answers in one must not pay them every
@@ -37,9 +38,11 @@ def compiled(function: Callable[..., Any]) -> Any:
     cache and the kernel is compiled in every process. ``fastmath`` stays off: reordered sums would
     make results depend on the number of lanes, and infinities must pass through so that an
     unstable step shows as such. ``error_model="numpy"``: no check of divisors inside the loops,
-    the factorisation looks at its own pivots.
+    the factorisation looks at its own pivots. ``inline`` is for what is called once a layer: handing
+    over sixteen arrays costs more than the work. The cache names the records of this module: after
+    renaming one, old cache files in ``__pycache__`` must go.
     """
-    flags: dict[str, Any] = {"error_model": "numpy", "fastmath": False}
+    flags: dict[str, Any] = {"error_model": "numpy", "fastmath": False, "forceinline": inline}
     try:
         return numba.njit(cache=True, **flags)(function)
     except RuntimeError:
@@ -71,7 +74,7 @@ class Schedule(NamedTuple):
     result_stage: int
 
 
-class Places5(NamedTuple):
+class Origin(NamedTuple):
     """Where the unknowns of layer and interface 0 are, and the stride to the next."""
 
     nlev: int
@@ -120,6 +123,10 @@ class Reduction(NamedTuple):
     upper: Vector
 
 
+inlined = partial(compiled, inline=True)
+"""Compile into the caller."""
+
+
 def lane_of(coefficient: Any, lane: int) -> Any:
     """Return a shared coefficient as it is, a row of coefficients at the lane."""
     return coefficient[lane] if np.ndim(coefficient) else coefficient
@@ -134,26 +141,23 @@ def _lane_of(coefficient, lane):  # type: ignore[no-untyped-def]  # numba compar
 
 @compiled
 def multiply(rows: Rows, x: Vector, y: Vector, nlane: int) -> None:
-    """Y = A x for the first ``nlane`` lanes."""
+    """Y = A x for the first ``nlane`` lanes; two entries of a row at a time."""
     for i in range(y.shape[0]):
         out = y[i]
         first, last = rows.start[i], rows.start[i + 1]
-        if first == last:
+        odd = (last - first) % 2
+        if odd:
+            a, p = rows.value[first], x[rows.column[first]]
+            for lane in range(nlane):
+                out[lane] = lane_of(a, lane) * p[lane]
+        else:
             for lane in range(nlane):
                 out[lane] = 0.0
-            continue
-        a, source = rows.value[first], x[rows.column[first]]
-        for lane in range(nlane):
-            out[lane] = lane_of(a, lane) * source[lane]
-        for k in range(first + 1, last):
-            add_product(out, rows.value[k], x[rows.column[k]], nlane)
-
-
-@compiled
-def add_product(out: Vector, coefficient: Any, source: Vector, nlane: int) -> None:
-    """Add coefficient times source to out, lane by lane."""
-    for lane in range(nlane):
-        out[lane] += lane_of(coefficient, lane) * source[lane]
+        for k in range(first + odd, last, 2):
+            a, p = rows.value[k], x[rows.column[k]]
+            b, q = rows.value[k + 1], x[rows.column[k + 1]]
+            for lane in range(nlane):
+                out[lane] += lane_of(a, lane) * p[lane] + lane_of(b, lane) * q[lane]
 
 
 @compiled
@@ -190,105 +194,115 @@ def factor(sub: Vector, diagonal: Vector, sup: Vector, lower: Vector, inverse: V
 
 
 @compiled
-def solve(y: Vector, at: Places5, has: Traits, c: Reduction, d: int, nlane: int) -> None:
+def solve(y: Vector, at: Origin, has: Traits, c: Reduction, d: int, nlane: int) -> None:
     """Solve the stage system for the d-th diagonal coefficient in place, from rhs to Y.
 
     Upward: pi' without its part from w, then the right-hand side of w, eliminating from below.
     Downward: w, then pi', u and theta' of the layer above it. Shapes: ``y`` (nstate, nlane).
+    Couplings that the ground and the lid lack have coefficient zero.
     """
     for j in range(at.nlev):
         begin_layer(y, at, has, c, d, j, nlane)
         if j > 0:
-            m = j - 1
-            w = y[at.w + m * at.stride]
-            begin_interface(y, w, at, has, c, d, m, nlane)
-            if m > 0:
-                add_product(w, c.lower[d][m], y[at.w + (m - 1) * at.stride], nlane)
+            begin_interface(y, at, has, c, d, j - 1, nlane)
     for m in range(at.nlev - 2, -1, -1):
-        w, inverse = y[at.w + m * at.stride], c.inverse[d][m]
+        w = y[at.w + m * at.stride]
+        next_w = y[at.w + min(m + 1, at.nlev - 2) * at.stride]
+        inverse, upper = c.inverse[d][m], c.upper[d][m]
         for lane in range(nlane):
-            w[lane] *= lane_of(inverse, lane)
-        if m < at.nlev - 2:
-            add_product(w, c.upper[d][m], y[at.w + (m + 1) * at.stride], nlane)
+            w[lane] = lane_of(inverse, lane) * w[lane] + lane_of(upper, lane) * next_w[lane]
         finish_layer(y, at, has, c, d, m + 1, nlane)
     finish_layer(y, at, has, c, d, 0, nlane)
 
 
-@compiled
-def begin_layer(y: Vector, at: Places5, has: Traits, c: Reduction, d: int, j: int,
+@inlined
+def begin_layer(y: Vector, at: Origin, has: Traits, c: Reduction, d: int, j: int,
                 nlane: int) -> None:  # fmt: skip
     """Put into pi' what it is without w."""
-    pi = y[at.pi + j * at.stride]
-    if has.wind_in_pressure:
-        add_product(pi, c.pi_u[d][j], y[at.u + j * at.stride], nlane)
+    pi, u = y[at.pi + j * at.stride], y[at.u + j * at.stride]
     if has.neighbours_in_pressure:
-        if j > 0:
-            add_product(pi, c.pi_u_below[d][j], y[at.u + (j - 1) * at.stride], nlane)
-        if j < at.nlev - 1:
-            add_product(pi, c.pi_u_above[d][j], y[at.u + (j + 1) * at.stride], nlane)
-    if has.pressure_in_wind:
-        shrink = c.shrink[d][j]
+        below = y[at.u + max(j - 1, 0) * at.stride]
+        above = y[at.u + min(j + 1, at.nlev - 1) * at.stride]
+        a, b = c.pi_u_below[d][j], c.pi_u_above[d][j]
         for lane in range(nlane):
-            pi[lane] *= lane_of(shrink, lane)
+            pi[lane] += lane_of(a, lane) * below[lane] + lane_of(b, lane) * above[lane]
+    if has.wind_in_pressure or has.pressure_in_wind:
+        a, b = c.pi_u[d][j], c.shrink[d][j]
+        for lane in range(nlane):
+            pi[lane] = lane_of(b, lane) * (pi[lane] + lane_of(a, lane) * u[lane])
 
 
-@compiled
-def begin_interface(y: Vector, w: Vector, at: Places5, has: Traits, c: Reduction, d: int, m: int,
+@inlined
+def begin_interface(y: Vector, at: Origin, has: Traits, c: Reduction, d: int, m: int,
                     nlane: int) -> None:  # fmt: skip
-    """Put into w the right-hand side of the tridiagonal system."""
-    add_product(w, c.w_pi_below[d][m], y[at.pi + m * at.stride], nlane)
-    add_product(w, c.w_pi_above[d][m], y[at.pi + (m + 1) * at.stride], nlane)
+    """Put into w the right-hand side of the tridiagonal system, and eliminate the w below."""
+    w, below = y[at.w + m * at.stride], y[at.w + max(m - 1, 0) * at.stride]
+    pi_low, pi_high = y[at.pi + m * at.stride], y[at.pi + (m + 1) * at.stride]
     if has.buoyancy:
-        add_product(w, c.w_theta_below[d][m], y[at.theta + m * at.stride], nlane)
+        low = y[at.theta + m * at.stride]
+        a = c.w_theta_below[d][m]
+        for lane in range(nlane):
+            w[lane] += lane_of(a, lane) * low[lane]
         if has.lorenz:
-            add_product(w, c.w_theta_above[d][m], y[at.theta + (m + 1) * at.stride], nlane)
+            high = y[at.theta + (m + 1) * at.stride]
+            b = c.w_theta_above[d][m]
+            for lane in range(nlane):
+                w[lane] += lane_of(b, lane) * high[lane]
+    p, q, r = c.w_pi_below[d][m], c.w_pi_above[d][m], c.lower[d][m]
+    for lane in range(nlane):
+        w[lane] += (
+            lane_of(p, lane) * pi_low[lane]
+            + lane_of(q, lane) * pi_high[lane]
+            + lane_of(r, lane) * below[lane]
+        )
 
 
-@compiled
-def finish_layer(y: Vector, at: Places5, has: Traits, c: Reduction, d: int, j: int,
+@inlined
+def finish_layer(y: Vector, at: Origin, has: Traits, c: Reduction, d: int, j: int,
                  nlane: int) -> None:  # fmt: skip
     """Give pi', u and theta' of a layer their part from the solved w."""
-    pi = y[at.pi + j * at.stride]
-    below, above = y[at.w + (j - 1) * at.stride], y[at.w + j * at.stride]
-    theta = y[at.theta + j * at.stride]
-    stored = j < at.nlev - 1 or has.lorenz
-    if j > 0:
-        add_product(pi, c.pi_w_below[d][j], below, nlane)
-        if has.stratification and has.lorenz:
-            add_product(theta, c.theta_w_below[d][j], below, nlane)
-    if j < at.nlev - 1:
-        add_product(pi, c.pi_w_above[d][j], above, nlane)
-        if has.stratification and stored:
-            add_product(theta, c.theta_w_above[d][j], above, nlane)
+    pi, u = y[at.pi + j * at.stride], y[at.u + j * at.stride]
+    below = y[at.w + max(j - 1, 0) * at.stride]
+    above = y[at.w + min(j, at.nlev - 2) * at.stride]
+    a, b, g = c.pi_w_below[d][j], c.pi_w_above[d][j], c.u_pi[d][j]
+    for lane in range(nlane):
+        pi[lane] += lane_of(a, lane) * below[lane] + lane_of(b, lane) * above[lane]
     if has.pressure_in_wind:
-        add_product(y[at.u + j * at.stride], c.u_pi[d][j], pi, nlane)
+        for lane in range(nlane):
+            u[lane] += lane_of(g, lane) * pi[lane]
+    if has.stratification and (has.lorenz or j < at.nlev - 1):
+        theta = y[at.theta + j * at.stride]
+        a, b = c.theta_w_below[d][j], c.theta_w_above[d][j]
+        for lane in range(nlane):
+            theta[lane] += lane_of(a, lane) * below[lane] + lane_of(b, lane) * above[lane]
 
 
 @compiled
-def combine(q: Vector, kept: Vector, schedule: Schedule, stage: int, out: Vector, start: int,
-            nlane: int) -> None:  # fmt: skip
-    """Out = lanes of q from ``start`` + the weighted tendencies kept for one stage."""
+def combine(q: Vector, kept: Vector, schedule: Schedule, stage: int, out: Vector) -> None:
+    """Out = q + the weighted tendencies kept for one stage; all arrays flat, ``kept`` by slot.
+
+    A piece of ``out`` stays in the cache while all tendencies are added to it, two at a time.
+    """
     first, last = schedule.first[stage], schedule.first[stage + 1]
-    for i in range(out.shape[0]):
-        target, source = out[i], q[i]
-        for lane in range(nlane):
-            target[lane] = source[start + lane]
-        for k in range(first, last):
-            add_product(target, schedule.weight[k], kept[schedule.slot[k], i], nlane)
+    odd = (last - first) % 2
+    for begin in range(0, out.shape[0], PIECE):
+        end = min(begin + PIECE, out.shape[0])
+        target = out[begin:end]
+        target[:] = q[begin:end]
+        if odd:
+            a, p = schedule.weight[first], kept[schedule.slot[first], begin:end]
+            for i in range(target.shape[0]):
+                target[i] += a * p[i]
+        for k in range(first + odd, last, 2):
+            a, p = schedule.weight[k], kept[schedule.slot[k], begin:end]
+            b, r = schedule.weight[k + 1], kept[schedule.slot[k + 1], begin:end]
+            for i in range(target.shape[0]):
+                target[i] += a * p[i] + b * r[i]
 
 
 @compiled
-def difference(kept: Vector, y: Vector, rhs: Vector, nlane: int) -> None:
-    """Kept = y - rhs for the first lanes."""
-    for i in range(y.shape[0]):
-        target, high, low = kept[i], y[i], rhs[i]
-        for lane in range(nlane):
-            target[lane] = high[lane] - low[lane]
-
-
-@compiled
-def advance(q: Vector, out: Vector, kept: Vector, y: Vector, rhs: Vector, schedule: Schedule,
-            slow: Rows, fast: Rows, at: Places5, has: Traits, c: Reduction) -> int:  # fmt: skip
+def advance(q: Vector, out: Vector, kept: Vector, work: Vector, schedule: Schedule, slow: Rows,
+            fast: Rows, at: Origin, has: Traits, c: Reduction) -> int:  # fmt: skip
     """Take one step for all lanes, a block of lanes at a time.
 
     Parameters
@@ -297,12 +311,12 @@ def advance(q: Vector, out: Vector, kept: Vector, y: Vector, rhs: Vector, schedu
         State before and after the step.
     kept : ndarray, shape (nslot, nstate, nblock)
         Workspace for the tendencies.
-    y, rhs : ndarray, shape (nstate, nblock)
-        Workspace for a stage and its right-hand side.
+    work : ndarray, shape (2, nstate, nblock)
+        Workspace for the block's state before the step and for a stage.
     schedule : Schedule
     slow, fast : Rows
         The two parts of the operator.
-    at, has, c : Places5, Traits, Reduction
+    at, has, c : Origin, Traits, Reduction
         The stage systems; not read where no stage is solved.
 
     Returns
@@ -310,27 +324,35 @@ def advance(q: Vector, out: Vector, kept: Vector, y: Vector, rhs: Vector, schedu
     int
         `DONE`, or `WRONG_SHAPE` if the workspaces do not fit.
     """
-    nstate, nlane, nblock = q.shape[0], q.shape[1], y.shape[1]
-    if y.shape[0] != nstate or rhs.shape != y.shape or kept.shape[1:] != y.shape or nblock < 1:
+    nstate, nlane, nblock = q.shape[0], q.shape[1], work.shape[2]
+    if work.shape[1] != nstate or kept.shape[1:] != work.shape[1:] or nblock < 1:
         return WRONG_SHAPE
     nstage = schedule.used.shape[0]
+    start_of_step, y = work[0], work[1]
+    flat_start, flat_y = start_of_step.reshape(-1), y.reshape(-1)
+    flat_kept = kept.reshape(kept.shape[0], nstate * nblock)
+    work[:] = 0.0
     for start in range(0, nlane, nblock):
         width = min(nblock, nlane - start)
+        start_of_step[:, :width] = q[:, start : start + width]
         for i in range(nstage):
             if not schedule.used[i]:
                 continue
-            combine(q, kept, schedule, i, y, start, width)
+            combine(flat_start, flat_kept, schedule, i, flat_y)
+            keep = schedule.fast_slot[i]
             if schedule.solver[i] >= 0:
-                rhs[:, :width] = y[:, :width]
+                if keep >= 0:
+                    flat_kept[keep] = flat_y
                 solve(y, at, has, c, schedule.solver[i], width)
-                if schedule.fast_slot[i] >= 0:
-                    difference(kept[schedule.fast_slot[i]], y, rhs, width)
-            elif schedule.fast_slot[i] >= 0:
-                multiply(fast, y, kept[schedule.fast_slot[i]], width)
+                if keep >= 0:
+                    for k in range(flat_y.shape[0]):
+                        flat_kept[keep, k] = flat_y[k] - flat_kept[keep, k]
+            elif keep >= 0:
+                multiply(fast, y, kept[keep], width)
             if schedule.slow_slot[i] >= 0:
                 multiply(slow, y, kept[schedule.slow_slot[i]], width)
         if schedule.result_stage < 0:
-            combine(q, kept, schedule, nstage, y, start, width)
+            combine(flat_start, flat_kept, schedule, nstage, flat_y)
         out[:, start : start + width] = y[:, :width]
     return DONE
 

@@ -19,6 +19,9 @@ NONE = -1
 class Scheme(Protocol):
     """What the stepper asks of a tableau."""
 
+    def __hash__(self) -> int:
+        """Tableaux are told apart by identity or by value, whichever they choose."""
+
     @property
     def name(self) -> str:
         """As published."""
