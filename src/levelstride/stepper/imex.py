@@ -15,8 +15,9 @@ from levelstride.operator.state import Layout
 from levelstride.splitting.parts import Parts
 from levelstride.stepper import kernels
 from levelstride.stepper.banded_solve import BandedFactors, identity_minus
-from levelstride.stepper.helmholtz import Couplings, Helmholtz, obstacles
-from levelstride.stepper.plan import NONE, Plan, Scheme
+from levelstride.stepper.helmholtz import Couplings, Helmholtz
+from levelstride.stepper.plan import NONE, Scheme
+from levelstride.stepper.prepared import Prepared, prepare, rows_of
 
 Array = NDArray[Any]
 Path = Literal["auto", "tridiagonal", "banded"]
@@ -46,47 +47,6 @@ class Counts:
     explicit_evaluations: int
     fast_evaluations: int
     solves: int
-
-
-def rows_of(matrix: Banded) -> kernels.Rows:
-    """Turn a banded matrix into rows, leaving out the zeros of its diagonals."""
-    n, offsets = matrix.size, np.array(matrix.offsets, dtype=np.int64)
-    by_row = matrix.diagonals.T
-    row, k = np.nonzero(by_row)
-    start = np.zeros(n + 1, dtype=np.int64)
-    np.cumsum(np.bincount(row, minlength=n), out=start[1:])
-    return kernels.Rows(start, row + offsets[k], np.ascontiguousarray(by_row[row, k]))
-
-
-class _Operator:
-    """What a stepper knows of its operator whatever the step: shared by all steps of a scan."""
-
-    def __init__(self, parts: Parts, scheme: Scheme) -> None:
-        self.layout = parts.layout
-        self.dtype = np.dtype(np.float64 if parts.is_real else np.complex128)
-        explicit = scheme.kind == "explicit"
-        slow = self._typed(parts.slow + parts.fast if explicit else parts.slow)
-        self.fast = self._typed(Banded.zeros(slow.size) if explicit else parts.fast)
-        self.after = self._typed(parts.after)
-        self.after_implicit = self._typed(parts.after_implicit)
-        self.plan = Plan(scheme, has_slow=not slow.is_zero, has_fast=not self.fast.is_zero)
-        self.slow_rows = rows_of(slow)
-        self.fast_rows = rows_of(self.fast)
-        self.obstacles = obstacles(parts.implicit_terms)
-        self.couplings: Couplings | None = None
-        if self.plan.solves and not self.obstacles:
-            self.couplings = Couplings.of(self.fast, parts.layout, self.dtype)
-
-    def _typed(self, matrix: Banded) -> Banded:
-        if self.dtype.kind == "f":
-            return matrix.real()
-        return Banded(matrix.offsets, matrix.diagonals.astype(self.dtype))
-
-
-@lru_cache(maxsize=64)
-def _operator(parts: Parts, scheme: Scheme) -> _Operator:
-    """Keep what is known of the latest operators: a search for a step comes back to each."""
-    return _Operator(parts, scheme)
 
 
 class Stepper:
@@ -127,7 +87,7 @@ class Stepper:
     """
 
     def __init__(self, parts: Parts, tableau: Scheme, dt: float, *, path: Path = "auto") -> None:
-        self._prepare(_operator(parts, tableau), dt, path)
+        self._prepare(prepare(parts, tableau), dt, path)
 
     def at_step(self, dt: float) -> Stepper:
         """Return the same stepper for another step [s], reusing what does not depend on it."""
@@ -135,7 +95,7 @@ class Stepper:
         other._prepare(self._operator, dt, self._wanted)
         return other
 
-    def _prepare(self, operator: _Operator, dt: float, wanted: Path) -> None:
+    def _prepare(self, operator: Prepared, dt: float, wanted: Path) -> None:
         if not (np.isfinite(dt) and dt > 0.0):
             raise InputError(f"step {dt!r} s: a step must be positive and finite")
         self._operator, self._wanted, self.dt = operator, wanted, float(dt)
@@ -255,7 +215,7 @@ class Stepper:
     def _stages_compiled(self, q: Array) -> Array:
         operator, (nstate, nlane) = self._operator, q.shape
         nslot = operator.plan.nslot
-        nblock = min(nlane, lanes_at_once(nstate * q.itemsize * (nslot + 2)))
+        nblock = min(max(nlane, 1), lanes_at_once(nstate * q.itemsize * (nslot + 2)))
         out, kept = np.empty_like(q), np.zeros((nslot, nstate, nblock), q.dtype)
         work = np.empty((2, nstate, nblock), q.dtype)
         helmholtz = self._helmholtz or _nothing_to_solve(self.dtype)
