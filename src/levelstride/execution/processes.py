@@ -58,6 +58,6 @@ def _prepare() -> None:
 
 def thread_counts() -> list[int]:
     """Count the threads of every pool of linear algebra in this process; a work item itself."""
-    from threadpoolctl import threadpool_info  # type: ignore[import-untyped]
+    from threadpoolctl import threadpool_info
 
     return [pool["num_threads"] for pool in threadpool_info()]

@@ -1,0 +1,62 @@
+"""What one simulated hour costs."""
+
+from dataclasses import dataclass
+
+from levelstride.column.column import Advice
+from levelstride.splitting.splitting import Splitting
+from levelstride.tableaux.tableau import Tableau
+
+HOUR_S = 3600.0
+
+_NEEDS_NEIGHBOURS = ("horizontal-divergence", "slope-divergence")
+
+
+@dataclass(frozen=True, slots=True)
+class StepCost:
+    """What one step needs.
+
+    Parameters
+    ----------
+    evaluations, solves, exchanges : int
+        Explicit evaluations, implicit solves and exchanges with neighbouring columns in one step.
+    weighted : float
+        Their weighted sum [1].
+    """
+
+    evaluations: int
+    solves: int
+    exchanges: int
+    weighted: float
+
+
+def step_cost(tableau: Tableau, splitting: Splitting, weights: Advice) -> StepCost:
+    """Count what one step needs.
+
+    Every explicit evaluation asks for one exchange with neighbours, every solve for one more where
+    the divergence is implicit: pressure then sees the new wind.
+
+    Parameters
+    ----------
+    tableau : Tableau
+        The time scheme.
+    splitting : Splitting
+        The splitting.
+    weights : Advice
+        Costs of an evaluation, a solve and an exchange.
+
+    Returns
+    -------
+    StepCost
+        Counts and weighted sum for one step.
+    """
+    treatments = splitting.treatment
+    solves = tableau.implicit_solves if "implicit" in treatments.values() else 0
+    evaluations = tableau.explicit_evaluations if "explicit" in treatments.values() else 0
+    sees_neighbours = any(treatments[term] == "implicit" for term in _NEEDS_NEIGHBOURS)
+    exchanges = evaluations + (solves if sees_neighbours else 0)
+    weighted = (
+        evaluations * weights.cost_explicit
+        + solves * weights.cost_solve
+        + exchanges * weights.cost_exchange
+    )
+    return StepCost(evaluations, solves, exchanges, weighted)

@@ -1,0 +1,90 @@
+"""Tableaux and splittings by the names that a column file or a user gives."""
+
+from collections.abc import Sequence
+from functools import lru_cache
+
+from levelstride.column.column import Column
+from levelstride.errors import InputError
+from levelstride.splitting.splitting import Splitting, resolve
+from levelstride.tableaux.library import find
+from levelstride.tableaux.tableau import Tableau
+from levelstride.tableaux.user_file import read_file
+
+
+def tableau_of(column: Column, name: str) -> Tableau:
+    """Find a tableau among the built-in ones and those of the column's own tableau file.
+
+    Parameters
+    ----------
+    column : Column
+        The column.
+    name : str
+        Published name, alias or bare form.
+
+    Returns
+    -------
+    Tableau
+        The time scheme.
+
+    Raises
+    ------
+    InputError
+        If the name is unknown or the tableau file is at fault.
+    """
+    path = column.advice.tableau_file
+    return find(name, _own_tableaux(path) if path else ())
+
+
+@lru_cache(maxsize=8)
+def _own_tableaux(path: str) -> tuple[Tableau, ...]:
+    return read_file(path)
+
+
+def pairs_of(
+    column: Column, tableaux: Sequence[str] | None, splits: Sequence[str] | None
+) -> list[tuple[Tableau, Splitting]]:
+    """Pair every tableau with every splitting, each once.
+
+    Parameters
+    ----------
+    column : Column
+        The column, whose file names what is not given here.
+    tableaux, splits : sequence of str, optional
+        Names.
+
+    Returns
+    -------
+    list of (Tableau, Splitting)
+        Tableau by tableau. An explicit method steps every term alike, so it comes once, with
+        ``all-explicit``.
+
+    Raises
+    ------
+    InputError
+        With one line for every unknown name.
+    """
+    problems: list[str] = []
+    schemes: dict[str, Tableau] = {}
+    for name in column.advice.tableaux if tableaux is None else tableaux:
+        try:
+            scheme = tableau_of(column, name)
+            schemes[scheme.name] = scheme
+        except InputError as error:
+            problems += [line for line in error.problems if line not in problems]
+    splittings: dict[str, Splitting] = {}
+    for name in column.advice.splits if splits is None else splits:
+        try:
+            splitting = resolve(name)
+            splittings[splitting.name] = splitting
+        except InputError as error:
+            problems += error.problems
+    if problems:
+        raise InputError(*problems)
+    if not schemes or not splittings:
+        raise InputError("advise: nothing to try; name at least one tableau and one splitting")
+    unsplit = resolve("all-explicit")
+    return [
+        (scheme, splitting)
+        for scheme in schemes.values()
+        for splitting in ([unsplit] if scheme.kind == "explicit" else splittings.values())
+    ]

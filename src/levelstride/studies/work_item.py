@@ -1,0 +1,187 @@
+"""One tableau and one splitting on one column: the unit of work that executors share out."""
+
+import pickle
+from dataclasses import dataclass, replace
+from functools import lru_cache
+from math import inf
+
+import numpy as np
+
+from levelstride.accuracy.wave_errors import ResolvedWaves, StepErrors, resolved_waves
+from levelstride.column.column import Column, LowestSlopeGradient
+from levelstride.errors import CalculationError
+from levelstride.operator.wave import Wave
+from levelstride.results.dataset import Limit
+from levelstride.results.wording import number, percent
+from levelstride.splitting.splitting import Splitting, resolve
+from levelstride.stability.spectrum import sampled_wavenumbers
+from levelstride.stability.tolerance import Tolerance
+from levelstride.stability.wave_problem import WaveProblem
+from levelstride.studies.advised_step import Choice, StepCheck, choose_step
+from levelstride.studies.limit import limit
+from levelstride.studies.methods import tableau_of
+from levelstride.tableaux.tableau import Tableau
+
+
+@dataclass(frozen=True, slots=True)
+class WorkItem:
+    """What one worker needs to know, as plain data.
+
+    Parameters
+    ----------
+    column : bytes
+        The column, pickled; each process unpacks it once.
+    tableau, split : str
+        Names.
+    current_s : float or None
+        A step to judge besides [s].
+    """
+
+    column: bytes
+    tableau: str
+    split: str
+    current_s: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """What was found for one work item.
+
+    Parameters
+    ----------
+    limit : Limit
+        The limit, the smaller of both slope gradients over a slope.
+    choice : Choice
+        The step to advise.
+    current : StepCheck or None
+        What the step to judge does.
+    current_stable : bool
+        Whether no sampled wave grows at that very step.
+    """
+
+    limit: Limit
+    choice: Choice
+    current: StepCheck | None = None
+    current_stable: bool = False
+
+
+def carry_out(item: WorkItem) -> Finding:
+    """Find limit and step of one work item.
+
+    Parameters
+    ----------
+    item : WorkItem
+        The item.
+
+    Returns
+    -------
+    Finding
+        The same in whatever process it is found.
+    """
+    columns = _columns(item.column)
+    splitting = resolve(item.split)
+    tableau = tableau_of(columns[0], item.tableau)
+    asked = columns[0].advice
+    try:
+        found = smaller([limit(c, tableau=item.tableau, split=item.split) for c in columns])
+    except CalculationError as error:
+        found = _no_limit(item, str(error))
+    checker = _Checker(columns, splitting, tableau)
+    choice = choose_step(
+        found, safety=asked.safety, intervals_s=asked.divides_s, check=checker.examine
+    )
+    if item.current_s is None:
+        return Finding(found, choice)
+    current = checker.examine(item.current_s)
+    return Finding(found, choice, current, checker.stable(item.current_s))
+
+
+def smaller(limits: list[Limit]) -> Limit:
+    """Take the limit with the smallest stable step: no stable step at all, then the shortest."""
+
+    def reach(one: Limit) -> float:
+        if one.unbounded:
+            return inf
+        return one.stable_step_s or 0.0
+
+    return min(limits, key=reach)
+
+
+def _no_limit(item: WorkItem, reason: str) -> Limit:
+    """Stand in for a limit that could not be found, so that one pair does not stop the others."""
+    return Limit(
+        tableau=item.tableau,
+        split=item.split,
+        stable_step_s=None,
+        unbounded=False,
+        scanned_to_s=0.0,
+        criterion=reason,
+    )
+
+
+@lru_cache(maxsize=4)
+def _columns(packed: bytes) -> tuple[Column, ...]:
+    """Unpack a column; over a slope, once for each treatment of the lowest slope gradient."""
+    column: Column = pickle.loads(packed)
+    if not np.any(column.slope_f):
+        return (column,)
+    gradients: tuple[LowestSlopeGradient, ...] = ("half", "full")
+    return tuple(replace(column, lowest_slope_gradient=gradient) for gradient in gradients)
+
+
+@lru_cache(maxsize=8)
+def _resolved(column: Column) -> tuple[ResolvedWaves, ...]:
+    waves = [Wave(float(k), column.horizontal) for k in sampled_wavenumbers(column.horizontal)]
+    return tuple(w for air in column.airs for w in resolved_waves(column, air, waves))
+
+
+class _Checker:
+    """Examines steps of one tableau and splitting at every sampled wave."""
+
+    def __init__(self, columns: tuple[Column, ...], splitting: Splitting, tableau: Tableau) -> None:
+        self._asked = columns[0].advice
+        self._tolerance = Tolerance(self._asked.efolding_s, self._asked.transient_limit)
+        waves = [wave for column in columns for wave in _resolved(column)]
+        self._errors = StepErrors(waves, splitting, tableau)
+        self._problems = [
+            WaveProblem(column, air, splitting, tableau, float(kappa))
+            for column in columns
+            for air in column.airs
+            for kappa in sampled_wavenumbers(column.horizontal)
+        ]
+
+    def examine(self, step_s: float) -> StepCheck:
+        """Say what speaks against a step: accuracy first, stability at that very step then."""
+        try:
+            errors = self._errors.at(step_s)
+        except CalculationError as error:
+            return StepCheck(str(error))
+        turned, changed = errors.frequency_error, errors.amplitude_change_per_period
+        failure = self._inaccurate(step_s, turned, changed)
+        if failure is None and not self.stable(step_s):
+            failure = f"stability: grows at {number(step_s)} s itself, in a narrow window"
+        return StepCheck(failure, turned, changed)
+
+    def stable(self, step_s: float) -> bool:
+        """Whether no sampled wave grows more than is tolerated at this very step."""
+        for problem in self._problems:
+            if not problem.stable(step_s, self._tolerance):
+                self._problems.remove(problem)
+                self._problems.insert(0, problem)
+                return False
+        return True
+
+    def _inaccurate(self, step_s: float, turned: float | None, changed: float | None) -> str | None:
+        found = []
+        if turned is not None and turned > self._asked.frequency_error:
+            found.append(("frequency", turned, self._asked.frequency_error))
+        if changed is not None and abs(changed) > self._asked.amplitude_loss_per_period:
+            found.append(("amplitude", changed, self._asked.amplitude_loss_per_period))
+        if not found:
+            return None
+        what, value, allowed = max(found, key=lambda one: abs(one[1]) / max(one[2], 1e-300))
+        per_period = " per period" if what == "amplitude" else ""
+        return (
+            f"{what} of gravity waves: {percent(value)}{per_period} at {number(step_s)} s, "
+            f"{percent(allowed)} allowed"
+        )
