@@ -5,7 +5,7 @@ import io
 import json
 import math
 from collections.abc import Mapping, Sequence
-from dataclasses import asdict, is_dataclass
+from dataclasses import fields, is_dataclass
 from typing import Any, Final
 
 from .dataset import Advice, AdviceRow
@@ -38,7 +38,7 @@ def to_plain(record: Any) -> Any:
         Plain data; a number that is not finite becomes None.
     """
     if is_dataclass(record) and not isinstance(record, type):
-        return to_plain(asdict(record))
+        return {f.name: to_plain(getattr(record, f.name)) for f in fields(record)}
     if isinstance(record, Mapping):
         return {str(key): to_plain(value) for key, value in record.items()}
     if isinstance(record, Sequence) and not isinstance(record, str | bytes):

@@ -14,7 +14,9 @@ _KIND_NAMES = {
     "gravity": "gravity wave",
     "Lamb": "Lamb wave",
     "computational": "computational mode",
+    "vortical": "vortical mode",
 }
+_ROW_KINDS = ("transport", "mixing")
 
 
 def number(value: float | None, digits: int = 4) -> str:
@@ -81,7 +83,9 @@ def wave(bites: Bites) -> str:
     ...            layer_highest=3, bottom_m=0.0, top_m=140.0, wavelength_m=6283.2))
     'sound wave of 6.3 km, layers 0-3 (0-140 m)'
     """
-    name = _KIND_NAMES.get(bites.kind, bites.kind)
+    if bites.kind in _ROW_KINDS:
+        return f"{bites.kind} in {layers(bites)}"
+    name = _KIND_NAMES.get(bites.kind, f"{bites.kind} wave")
     length = f" of {metres(bites.wavelength_m)}" if bites.wavelength_m is not None else ""
     return f"{name}{length}, {layers(bites)}"
 

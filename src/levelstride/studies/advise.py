@@ -1,9 +1,9 @@
 """Which step, with which tableau and splitting: every pair tried, the cheapest hour first."""
 
 import pickle
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from concurrent.futures import BrokenExecutor, Executor, Future
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from math import inf
 
 from levelstride.column.column import Column
@@ -30,13 +30,15 @@ class CurrentConfiguration:
     ----------
     step_s : float
         The step [s].
-    tableau, split : str
-        Names.
+    tableau : str
+        Name.
+    split : str or mapping
+        Name, or term to treatment.
     """
 
     step_s: float
     tableau: str
-    split: str
+    split: str | Mapping[str, str]
 
 
 def advise(
@@ -96,7 +98,11 @@ def advise(
     judged = _judged_pair(column, current)
     wanted = [*pairs] if judged is None or _key(judged) in map(_key, pairs) else [*pairs, judged]
     packed = pickle.dumps(column)
-    items = [WorkItem(packed, *_key(pair), _current_of(pair, judged, current)) for pair in wanted]
+    items = [WorkItem(packed, *_key(pair)) for pair in wanted]
+    if current is not None and judged is not None:
+        place = [_key(pair) for pair in wanted].index(_key(judged))
+        split = current.split if judged[0].kind == "additive" else judged[1].name
+        items[place] = replace(items[place], split=split, current_s=current.step_s)
     findings = _gather(items, executor, progress)
     rows = [
         _row(column, *pair, finding)
@@ -109,7 +115,7 @@ def advise(
         intervals_s=tuple(column.advice.divides_s),
         rows=tuple(rows),
         best=best_row(rows),
-        current=None if current is None else _judge(current, wanted, findings),
+        current=None if current is None else _judge(current, findings),
         wind_note=wind_note(column),
         caution=CAUTION,
         provenance=provenance(column, "; ".join(dict.fromkeys(row.certified for row in rows))),
@@ -140,15 +146,6 @@ def _judged_pair(
 
 def _key(pair: tuple[Tableau, Splitting]) -> tuple[str, str]:
     return pair[0].name, pair[1].name
-
-
-def _current_of(
-    pair: tuple[Tableau, Splitting],
-    judged: tuple[Tableau, Splitting] | None,
-    current: CurrentConfiguration | None,
-) -> float | None:
-    same = judged is not None and _key(pair) == _key(judged)
-    return current.step_s if current is not None and same else None
 
 
 def _gather(
@@ -212,11 +209,7 @@ def _order(row: AdviceRow) -> tuple[float, float, float]:
     return cost, -(row.advised_step_s or 0.0), -(row.stable_step_s or 0.0)
 
 
-def _judge(
-    current: CurrentConfiguration,
-    wanted: Sequence[tuple[Tableau, Splitting]],
-    findings: Sequence[Finding],
-) -> CurrentStep:
+def _judge(current: CurrentConfiguration, findings: Sequence[Finding]) -> CurrentStep:
     finding = next(f for f in findings if f.current is not None)
     check, limit = finding.current, finding.limit
     assert check is not None

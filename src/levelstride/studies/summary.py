@@ -14,8 +14,7 @@ from levelstride.constants import (
     REFERENCE_PRESSURE,
 )
 from levelstride.results.dataset import FORMAT_VERSION, ColumnSummary, Provenance
-
-NO_WIND = "no wind was given, the limit is for air at rest"
+from levelstride.studies.limit import NO_WIND
 
 
 def column_summary(column: Column) -> ColumnSummary:

@@ -1,6 +1,7 @@
 """One tableau and one splitting on one column: the unit of work that executors share out."""
 
 import pickle
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from functools import lru_cache
 from math import inf
@@ -31,15 +32,17 @@ class WorkItem:
     ----------
     column : bytes
         The column, pickled; each process unpacks it once.
-    tableau, split : str
-        Names.
+    tableau : str
+        Name.
+    split : str or mapping
+        Name, or term to treatment.
     current_s : float or None
         A step to judge besides [s].
     """
 
     column: bytes
     tableau: str
-    split: str
+    split: str | Mapping[str, str]
     current_s: float | None = None
 
 
@@ -111,7 +114,7 @@ def _no_limit(item: WorkItem, reason: str) -> Limit:
     """Stand in for a limit that could not be found, so that one pair does not stop the others."""
     return Limit(
         tableau=item.tableau,
-        split=item.split,
+        split=resolve(item.split).name,
         stable_step_s=None,
         unbounded=False,
         scanned_to_s=0.0,

@@ -1,0 +1,162 @@
+"""``levelstride tableaux``: the time schemes and their audit."""
+
+import sys
+from math import isinf
+from typing import TYPE_CHECKING, Annotated, Any
+
+from cyclopts import Parameter
+
+from levelstride.cli.console import Heading, say, show_pairs, show_table
+from levelstride.cli.options import Json
+
+if TYPE_CHECKING:
+    from levelstride.tableaux.audit import Audit
+    from levelstride.tableaux.tableau import Tableau
+
+_IMPLICIT = (
+    "coupling order", "implicit order", "implicit solves", "value at infinity", "A-stable",
+    "stiffly accurate",
+)  # fmt: skip
+"""What an explicit method has no answer to."""
+
+
+def tableaux(
+    name: Annotated[str | None, Parameter(help="Tableau to show, as published or bare.")] = None,
+    /,
+    *,
+    file: Annotated[str | None, Parameter(help="TOML file of your own tableaux.")] = None,
+    json: Json = False,
+) -> None:
+    """List the IMEX tableaux, or show one with its audit."""
+    from levelstride.results.export import to_json
+    from levelstride.tableaux.library import find, names
+    from levelstride.tableaux.user_file import read_file
+
+    own = read_file(file) if file is not None else ()
+    if name is not None:
+        _show_one(find(name, own), json=json)
+        return
+    listed = [*own, *map(find, names())]
+    if json:
+        sys.stdout.write(to_json([_summary(tableau) for tableau in listed]))
+    else:
+        _show_list(listed)
+
+
+def _summary(tableau: "Tableau") -> dict[str, Any]:
+    return {
+        "name": tableau.name,
+        "aliases": tableau.aliases,
+        "kind": tableau.kind,
+        "order": tableau.order,
+        "stages": tableau.nstage,
+        "implicit_solves": tableau.implicit_solves,
+        "explicit_evaluations": tableau.explicit_evaluations,
+        "imaginary_axis_limit": tableau.imaginary_axis_limit,
+        "value_at_infinity": tableau.value_at_infinity,
+        "value_at_infinity_is_infinite": isinf(tableau.value_at_infinity),
+        "stiffly_accurate": tableau.stiffly_accurate,
+        "source": tableau.source,
+    }
+
+
+def _show_list(listed: "list[Tableau]") -> None:
+    from levelstride.results.wording import number
+
+    headings = [
+        Heading("tableau", cut=True),
+        Heading("order", number=True),
+        Heading("solves", number=True),
+        Heading("explicit", "evaluations", number=True),
+        Heading("imaginary", "axis limit", number=True),
+        Heading("value at", "infinity", number=True),
+        Heading("source", cut=True),
+    ]
+    rows = [
+        (
+            t.name,
+            str(t.order),
+            str(t.implicit_solves),
+            str(t.explicit_evaluations),
+            number(t.imaginary_axis_limit),
+            "-" if t.kind == "explicit" else number(t.value_at_infinity),
+            t.source,
+        )
+        for t in listed
+    ]
+    show_table(headings, rows)
+    say(f"{len(listed)} tableaux; 'levelstride tableaux NAME' shows one with its audit.")
+
+
+def _show_one(tableau: "Tableau", *, json: bool) -> None:
+    from levelstride.results.export import to_json, to_plain
+    from levelstride.tableaux.audit import audit
+
+    report = audit(tableau)
+    if json:
+        found = to_plain(report) | {"passed": report.passed}
+        text = to_plain(tableau.coefficient_text)
+        extra = {"note": tableau.note, "coefficients": text, "audit": found}
+        sys.stdout.write(to_json(_summary(tableau) | extra))
+        return
+    say(tableau.name, strong=True)
+    show_pairs(_pairs(tableau, report))
+    explicit = tableau.kind == "explicit"
+    _show_coefficients("" if explicit else "explicit part", tableau, "explicit")
+    if not explicit:
+        _show_coefficients("implicit part", tableau, "implicit")
+    for line in report.violations:
+        say(f"- {line}")
+    say("The audit is passed." if report.passed else "The audit is failed.", strong=True)
+
+
+def _pairs(tableau: "Tableau", report: "Audit") -> list[tuple[str, str]]:
+    from levelstride.results.wording import number
+
+    def order(value: int) -> str:
+        return f"{value} or more" if value >= len(report.worst) else str(value)
+
+    pairs = [
+        ("source", tableau.source),
+        ("note", tableau.note),
+        ("also called", ", ".join(tableau.aliases)),
+        ("stages", str(tableau.nstage)),
+        ("implicit solves", str(tableau.implicit_solves)),
+        ("explicit evaluations", str(tableau.explicit_evaluations)),
+        ("declared order", str(report.declared_order)),
+        ("linear order", order(report.linear_order)),
+        ("nonlinear order", order(report.nonlinear_order)),
+        ("coupling order", order(report.coupling_order)),
+        ("explicit order", order(report.explicit_order)),
+        ("implicit order", order(report.implicit_order)),
+        ("row sums differ by", number(report.row_sum_difference)),
+        ("imaginary-axis limit", f"{number(report.imaginary_axis_limit, 6)} of the explicit part"),
+        ("real-axis limit", f"{number(report.real_axis_limit, 6)} of the explicit part"),
+        ("value at infinity", f"{number(report.value_at_infinity, 6)} of the implicit part"),
+        ("A-stable", "yes" if report.a_stable else "no"),
+        ("stiffly accurate", "yes" if tableau.stiffly_accurate else "no"),
+    ]
+    if tableau.kind == "explicit":
+        implicit = (
+            "coupling order",
+            "implicit order",
+            "implicit solves",
+            "value at infinity",
+            "A-stable",
+            "stiffly accurate",
+        )
+        pairs = [pair for pair in pairs if pair[0] not in implicit]
+    for entry in report.negative_diagonals:
+        pairs.append(("negative diagonal", str(entry)))
+    return [pair for pair in pairs if pair[1]]
+
+
+def _show_coefficients(title: str, tableau: "Tableau", part: str) -> None:
+    text = tableau.coefficient_text
+    table, weights = getattr(text, f"a_{part}"), getattr(text, f"b_{part}")
+    sums = getattr(tableau, f"c_{part}")
+    headings = [Heading("c"), *(Heading(f"a{j + 1}") for j in range(tableau.nstage))]
+    rows = [[f"{c:.6g}", *row] for c, row in zip(sums, table, strict=True)]
+    if title:
+        say(title)
+    show_table(headings, [*rows, ["b", *weights]])
