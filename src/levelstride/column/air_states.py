@@ -42,7 +42,7 @@ def _sounding(
     ascent = ascent_of(air, where)
     if not check_ascent(ascent, problems):
         return None
-    return ascent_air(ascent, ground_m, air.surface_pressure_pa, problems)
+    return ascent_air(ascent, ground_m, air.surface_pressure_pa, where, problems)
 
 
 def profile_of(air: OneAir, where: str, ground_m: float, problems: Problems) -> Profile | None:

@@ -101,8 +101,8 @@ def read_csv(
     try:
         rows = _rows(read_text(path))
     except (OSError, ValueError, csv.Error) as error:
-        reason = error.strerror if isinstance(error, OSError) else str(error)
-        problems.add(where, f"cannot read this file: {reason}; check the path", str(path))
+        reason = (isinstance(error, OSError) and error.strerror) or str(error)
+        problems.add(where, f"cannot read {path}: {reason}; check the path", path.name)
         return None
     if not rows:
         problems.add("", "this file is empty; it needs rows of numbers", file=str(path))

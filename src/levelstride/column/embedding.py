@@ -112,9 +112,9 @@ def _advice(advice: AdviceTable, folder: Path, problems: Problems) -> AdviceTabl
     try:
         read_text(path)
     except (OSError, ValueError) as error:
-        reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
+        reason = (isinstance(error, OSError) and error.strerror) or str(error)
         problems.add(
-            "advice.tableau_file", f"cannot read this file: {reason}; check the path", str(path)
+            "advice.tableau_file", f"cannot read {path}: {reason}; check the path", path.name
         )
         return advice
     return advice.model_copy(update={"tableau_file": str(path.resolve())})

@@ -4,7 +4,7 @@ from collections.abc import Mapping
 from typing import Any, Final, TypeAlias
 
 from .glossary import meaning
-from .problems import Problems, nearest
+from .problems import Problems, brief, nearest
 
 Keys: TypeAlias = dict[str, dict[str, dict[str, str]]]
 """Table -> kind ("" where it has none) -> key -> description."""
@@ -73,7 +73,7 @@ def _path(location: tuple[int | str, ...], single_air: bool) -> tuple[str, str]:
         del parts[1]
     text = ""
     for part in parts:
-        word = "".join(c if c.isprintable() else "?" for c in str(part))[:60]
+        word = brief(str(part), 60)
         text += f"[{part}]" if isinstance(part, int) else f".{word}" if text else word
     return text, kind
 

@@ -50,7 +50,6 @@ def geometric(layers: int, top_m: float, lowest_layer_m: float) -> Array:
     low = float(np.log1p(-min(lowest_layer_m / top_m, 1.0 - 1e-12))) - 1.0
     t = brentq(lambda x: _log_sum(x, layers) - wanted, low, high, xtol=1e-15)
     heights = np.concatenate([[0.0], np.cumsum(lowest_layer_m * np.exp(t * np.arange(layers)))])
-    heights *= top_m / heights[-1]
     heights[-1] = top_m
     return cast("Array", heights)
 

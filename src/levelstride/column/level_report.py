@@ -194,8 +194,9 @@ def _air_findings(air: AirReport, staggering: str) -> list[str]:
     found = []
     if staggering == "lorenz" and air.unstable_layers:
         found.append(
-            f"{air.name}: N^2 < 0 in {len(air.unstable_layers)} layers ({runs(air.unstable_layers)}); "
-            "the air itself convects there, and that growth is part of every answer"
+            f"{air.name}: N^2 < 0 in {len(air.unstable_layers)} layers "
+            f"({runs(air.unstable_layers)}); the air itself convects there, and that growth is "
+            "part of every answer"
         )
     if staggering == "charney-phillips" and air.unstable_interfaces:
         found.append(
@@ -218,8 +219,9 @@ def _findings(
     if jumps:
         worst = max(jumps, key=lambda jump: jump.ratio)
         found.append(
-            f"{len(jumps)} jumps of layer thickness above {LARGEST_RATIO:g}; the largest, "
-            f"{worst.ratio:.3g}, at {worst.height_m:.5g} m: waves are reflected there"
+            f"layer thickness jumps by more than {LARGEST_RATIO:g} in {len(jumps)} places; the "
+            f"largest ratio is {worst.ratio:.3g}, {worst.height_m:.5g} m above the ground: waves "
+            "are reflected there"
         )
     if abs(steepness) > 1.0:
         found.append(

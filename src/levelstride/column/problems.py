@@ -20,8 +20,13 @@ def show(value: object) -> str:
         text = f"a list of {len(value)}"
     else:
         text = str(value)
+    return brief(text, 60)
+
+
+def brief(text: str, longest: int = 200) -> str:
+    """Keep a text from the user's file on one line, printable and short."""
     text = "".join(c if c.isprintable() else "?" for c in text)
-    return text if len(text) <= 60 else f"{text[:57]}..."
+    return text if len(text) <= longest else f"{text[: longest - 3]}..."
 
 
 def nearest(word: str, known: Iterable[str]) -> str:
@@ -30,7 +35,7 @@ def nearest(word: str, known: Iterable[str]) -> str:
     close = get_close_matches(word, choices, n=1, cutoff=0.6)
     if close:
         return f"did you mean {close[0]}?"
-    return f"known here: {', '.join(choices)}"
+    return f"known here: {brief(', '.join(choices), 400)}"
 
 
 class Problems:

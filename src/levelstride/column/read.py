@@ -39,7 +39,7 @@ def load(path: str | Path) -> Column:
     try:
         text = read_text(Path(path))
     except (OSError, ValueError) as error:
-        reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
+        reason = (isinstance(error, OSError) and error.strerror) or str(error)
         raise InputError(
             f"{source}: cannot read the column file: {reason}; check the path"
         ) from None

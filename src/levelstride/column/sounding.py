@@ -16,7 +16,7 @@ import numpy as np
 from ..constants import GAS_CONSTANT, GRAVITY
 from .arrays import Array
 from .csv_table import CsvTable, read_csv
-from .problems import Problems
+from .problems import Problems, brief
 from .profiles import PiecewiseLinearAir
 
 FARTHEST_START: Final = 1000.0
@@ -96,7 +96,7 @@ def _csv_label(table: CsvTable, written: dict[str, str]) -> Callable[[str, int],
 
 
 def _has_columns(ascent: Ascent, table: CsvTable, problems: Problems) -> bool:
-    found = ", ".join(table.columns)
+    found = brief(", ".join(table.columns))
     vertical = {"heights_m", "pressures_pa"} & ascent.values.keys()
     if not vertical:
         problems.add(
@@ -133,11 +133,12 @@ def check_ascent(ascent: Ascent, problems: Problems) -> bool:
         )
         return False
     checks = [_check_range(ascent, quantity, problems) for quantity in ascent.values]
-    return all(checks) and all(
-        _check_order(ascent, quantity, problems)
-        for quantity in ("heights_m", "pressures_pa")
-        if quantity in ascent.values
-    )
+    if not all(checks):
+        return False
+    vertical = [name for name in ("heights_m", "pressures_pa") if name in ascent.values]
+    checks = [_check_order(ascent, name, problems) for name in vertical]
+    by_pressure = "heights_m" not in ascent.values
+    return all(checks) and (not by_pressure or _check_rises(ascent, problems))
 
 
 def _check_range(ascent: Ascent, quantity: str, problems: Problems) -> bool:
@@ -204,6 +205,19 @@ def _check_order(ascent: Ascent, quantity: str, problems: Problems) -> bool:
     return not same.size and not wrong.size
 
 
+def _check_rises(ascent: Ascent, problems: Problems) -> bool:
+    rises = _rises(ascent.values["temperatures_k"], ascent.values["pressures_pa"])
+    close = np.flatnonzero(rises < SMALLEST_RISE)
+    if close.size:
+        problems.add_many(
+            [ascent.label("pressures_pa", int(i) + 1) for i in close],
+            "repeats the row before it; remove one of the two",
+            float(ascent.values["pressures_pa"][close[0] + 1]),
+            file=ascent.file,
+        )
+    return not close.size
+
+
 def _rises(temperatures: Array, pressures: Array) -> Array:
     """Rise from row to row with temperature linear in height, (nrow-1,) [m]."""
     x = np.diff(temperatures) / temperatures[:-1]
@@ -212,7 +226,11 @@ def _rises(temperatures: Array, pressures: Array) -> Array:
 
 
 def ascent_air(
-    ascent: Ascent, ground_m: float, surface_pressure_pa: float | None, problems: Problems
+    ascent: Ascent,
+    ground_m: float,
+    surface_pressure_pa: float | None,
+    where: str,
+    problems: Problems,
 ) -> PiecewiseLinearAir | None:
     """Make hydrostatic air of a checked ascent.
 
@@ -225,6 +243,8 @@ def ascent_air(
     surface_pressure_pa : float or None
         Pressure at the ground [Pa]; None takes that of the ascent where it has heights and
         pressures, and 101325 otherwise.
+    where : str
+        Key path of the air state, for messages.
     problems : Problems
         Where mistakes are added.
 
@@ -240,49 +260,37 @@ def ascent_air(
     anchor = (ground_m, surface)
     if heights is None and pressures is not None:
         heights = np.concatenate([[0.0], np.cumsum(_rises(temperatures, pressures))])
-        close = np.flatnonzero(np.diff(heights) < SMALLEST_RISE)
-        if close.size:
-            problems.add_many(
-                [ascent.label("pressures_pa", int(i) + 1) for i in close],
-                "repeats the row before it; remove one of the two",
-                float(pressures[close[0] + 1]),
-                file=ascent.file,
-            )
-            return None
         free = PiecewiseLinearAir(heights, temperatures, 0.0, float(pressures[0]))
         heights = heights + (ground_m - float(free.altitude_of(np.array([surface]))[0]))
     elif heights is not None and pressures is not None and surface_pressure_pa is None:
         anchor = (float(heights[0]), float(pressures[0]))
-    if heights is None or not _meets_ground(ascent, heights, ground_m, surface, problems):
+    by_pressure = surface if "heights_m" not in ascent.values else None
+    if heights is None or not _meets_ground(heights, ground_m, where, by_pressure, problems):
         return None
     return PiecewiseLinearAir(heights, temperatures, *anchor)
 
 
 def _meets_ground(
-    ascent: Ascent, heights: Array, ground_m: float, surface: float, problems: Problems
+    heights: Array, ground_m: float, where: str, by_pressure: float | None, problems: Problems
 ) -> bool:
-    by_pressure = "heights_m" not in ascent.values
-    quantity = "pressures_pa" if by_pressure else "heights_m"
+    """Check that the ground lies near or among the rows; ``by_pressure`` is the pressure there."""
     mend = (
-        f"the surface pressure is {surface:g} Pa: give surface_pressure_pa"
-        if by_pressure
-        else f"the ground lies at {ground_m:g} m: give terrain.surface_altitude_m"
+        f"the ground lies at {ground_m:g} m: give terrain.surface_altitude_m"
+        if by_pressure is None
+        else f"the surface pressure is {by_pressure:g} Pa: give surface_pressure_pa"
     )
     if heights[0] > ground_m + FARTHEST_START:
         problems.add(
-            ascent.label(quantity, 0),
+            where,
             f"the ascent starts {heights[0] - ground_m:.0f} m above the ground, more than "
             f"{FARTHEST_START:g} m; {mend} or add a row near the ground",
-            float(ascent.values[quantity][0]),
-            file=ascent.file,
         )
         return False
     if heights[-1] <= ground_m:
         problems.add(
-            ascent.label(quantity, heights.size - 1),
-            f"the ascent ends below the ground; {mend} or take another ascent",
-            float(ascent.values[quantity][-1]),
-            file=ascent.file,
+            where,
+            f"the ascent ends {ground_m - heights[-1]:.0f} m below the ground; {mend} or take "
+            "another ascent",
         )
         return False
     return True
