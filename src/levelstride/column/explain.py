@@ -31,6 +31,17 @@ _WHAT: Final = {
     "literal_error": "must be one of {expected}",
 }
 
+_MEND: Final = {
+    "greater_than": "; write a larger value",
+    "greater_than_equal": "; write a larger value",
+    "less_than": "; write a smaller value",
+    "less_than_equal": "; write a smaller value",
+    "float_type": "; write it without quotes, as 1000.0",
+    "int_type": "; write it as 40",
+    "list_type": "; write it as [0.0, 100.0]",
+    "finite_number": "; write a number",
+}
+
 
 def _variants(annotation: Any) -> list[Any]:
     """Every table model that an annotation of the file's model may hold."""
@@ -138,4 +149,5 @@ def explain(error: Mapping[str, Any], known: Keys, problems: Problems, *, single
         if what == "literal_error":
             choices = str(context.get("expected", "")).replace(" or ", ", ").split(", ")
             described = _suggest(value, [word.strip("'") for word in choices])
-        problems.add(path, f"{text}{unit_hint(key, value)}{described}", value)
+        mend = unit_hint(key, value) or _MEND.get(what, "")
+        problems.add(path, f"{text}{mend}{described}", value)
