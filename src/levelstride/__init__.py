@@ -1,3 +1,75 @@
-"""Levelstride: how long a step can this level set carry, and what bites first."""
+"""Levelstride: how long a step can this level set carry, and what bites first.
+
+Examples
+--------
+>>> import levelstride
+>>> column = levelstride.build({
+...     "title": "ten layers",
+...     "levels": {"kind": "uniform", "layers": 10, "top_m": 10000.0},
+...     "air": {"kind": "isothermal", "temperature_k": 250.0},
+...     "horizontal": {"grid_spacing_m": 2000.0},
+... })
+>>> found = levelstride.limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy")
+>>> found.bites.kind, found.strict_step_s <= found.stable_step_s
+('sound', True)
+"""
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from levelstride.column.column import Column
+    from levelstride.column.level_report import level_report
+    from levelstride.column.read import build, load
+    from levelstride.errors import CalculationError, InputError
+    from levelstride.results.dataset import Advice, AdviceRow, Limit
+    from levelstride.results.files import write_advice
+    from levelstride.studies.advise import CurrentConfiguration, advise
+    from levelstride.studies.limit import limit
 
 __version__ = "0.1.0"
+
+__all__ = [
+    "Advice",
+    "AdviceRow",
+    "CalculationError",
+    "Column",
+    "CurrentConfiguration",
+    "InputError",
+    "Limit",
+    "advise",
+    "build",
+    "level_report",
+    "limit",
+    "load",
+    "write_advice",
+]
+
+_HOMES = {
+    "Advice": "results.dataset",
+    "AdviceRow": "results.dataset",
+    "CalculationError": "errors",
+    "Column": "column.column",
+    "CurrentConfiguration": "studies.advise",
+    "InputError": "errors",
+    "Limit": "results.dataset",
+    "advise": "studies.advise",
+    "build": "column.read",
+    "level_report": "column.level_report",
+    "limit": "studies.limit",
+    "load": "column.read",
+    "write_advice": "results.files",
+}
+
+
+def __getattr__(name: str) -> Any:
+    """Import a public name when it is first asked for, so that importing the package is quick."""
+    if name not in _HOMES:
+        raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+    value = getattr(import_module(f"{__name__}.{_HOMES[name]}"), name)
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted({*globals(), *__all__})

@@ -1,6 +1,7 @@
 """``levelstride advise``: which step, with which tableau and splitting?"""
 
 import os
+import re
 import sys
 from contextlib import AbstractContextManager
 from pathlib import Path
@@ -8,9 +9,18 @@ from typing import TYPE_CHECKING, Annotated
 
 from cyclopts import Parameter
 
-from levelstride.cli.console import Heading, progress, say, show_table
+from levelstride.cli.console import Heading, progress, say, show_table, width
 from levelstride.cli.kernels import prepare_kernels
 from levelstride.cli.options import ColumnFile, Json
+
+WIDTH_OF_SPLITTING = 18
+"""Characters in a line of the table's column of splittings."""
+
+WIDTH_FOR_COUNTS = 100
+"""Width of the terminal from which the table has a column of steps for every interval."""
+
+WIDTH_FOR_ACCURACY = 130
+"""Width from which it has columns of what the step does to resolved gravity waves."""
 
 if TYPE_CHECKING:
     from concurrent.futures import Executor
@@ -127,9 +137,10 @@ def _show(found: "Advice", written: tuple[Path, ...]) -> None:
         f"{metres(column.thickest_layer_m)}, largest ratio {number(column.largest_ratio)}, lid at "
         f"{metres(column.top_m)}"
     )
+    intervals_s = found.intervals_s if width() >= WIDTH_FOR_COUNTS else ()
     show_table(
-        _headings(found),
-        [_cells(i + 1, row, found) for i, row in enumerate(found.rows)],
+        _headings(intervals_s),
+        [_cells(i + 1, row, intervals_s) for i, row in enumerate(found.rows)],
         marked=found.best,
     )
     say(_best_sentence(found), strong=True)
@@ -137,40 +148,66 @@ def _show(found: "Advice", written: tuple[Path, ...]) -> None:
         say(f"Today: {found.current.verdict}.")
     if found.wind_note:
         say(f"Note: {found.wind_note}.")
-    say(f"Written: {', '.join(map(str, written))}")
+    say(f"Written to {written[0].parent}: {', '.join(path.name for path in written)}")
     say(f"Caution: {found.caution}")
 
 
-def _headings(found: "Advice") -> list[Heading]:
+_ACCURACY = (
+    Heading("frequency", "error [%]", number=True),
+    Heading("amplitude", "[%/period]", number=True),
+)
+
+
+def _headings(intervals_s: tuple[float, ...]) -> list[Heading]:
     from levelstride.results.wording import number
 
     return [
         Heading("", number=True),
-        Heading("tableau", cut=True),
-        Heading("implicit"),
+        Heading("tableau", whole=True),
+        Heading("implicit", whole=True),
         Heading("advised", "step [s]", number=True),
         Heading("stable", "step [s]", number=True),
-        *(Heading("steps in", f"{number(i, 6)} s", number=True) for i in found.intervals_s),
+        *(Heading("steps in", f"{number(i, 6)} s", number=True) for i in intervals_s),
         Heading("cost", "[1/h]", number=True),
-        Heading("what binds the advised step"),
+        *(_ACCURACY if width() >= WIDTH_FOR_ACCURACY else ()),
+        Heading("what binds", "the advised step"),
     ]
 
 
-def _cells(place: int, row: "AdviceRow", found: "Advice") -> list[str]:
-    from levelstride.results.wording import number, step
+def _cells(place: int, row: "AdviceRow", intervals_s: tuple[float, ...]) -> list[str]:
+    from levelstride.results.wording import in_short, number, step
 
+    errors = (row.frequency_error, row.amplitude_change_per_period)
+    accuracy = ["-" if error is None else number(100.0 * error, 2) for error in errors]
     stable = "no limit" if row.unbounded else step(row.stable_step_s)
-    counts = [str(count) for count in row.steps_per_interval] or ["-"] * len(found.intervals_s)
+    counts = [str(count) for count in row.steps_per_interval] or ["-"] * len(intervals_s)
     return [
         str(place),
         row.tableau,
-        row.split,
+        in_lines(row.split),
         step(row.advised_step_s),
         stable,
-        *counts,
+        *counts[: len(intervals_s)],
         number(row.cost_per_hour),
-        row.binding,
+        *(accuracy if width() >= WIDTH_FOR_ACCURACY else ()),
+        in_short(row.binding),
     ]
+
+
+def in_lines(split: str) -> str:
+    """Break a splitting behind its groups into lines that leave room for the rest.
+
+    Examples
+    --------
+    >>> in_lines("sound+buoyancy+divergence").splitlines()
+    ['sound+buoyancy+', 'divergence']
+    """
+    lines = [""]
+    for group in re.findall(r"[^+]*\+?", split):
+        if len(lines[-1]) + len(group) > WIDTH_OF_SPLITTING and lines[-1]:
+            lines.append("")
+        lines[-1] += group
+    return "\n".join(lines)
 
 
 def _best_sentence(found: "Advice") -> str:
@@ -182,5 +219,5 @@ def _best_sentence(found: "Advice") -> str:
     coupled = "; its solve couples neighbouring columns" if row.couples_columns else ""
     return (
         f"Most simulated time per cost: {row.tableau} with {row.split}, step "
-        f"{step(row.advised_step_s)} s, {headroom(row)}{coupled}."
+        f"{step(row.advised_step_s)} s, {headroom(row)}{coupled}. It is bound by {row.binding}."
     )

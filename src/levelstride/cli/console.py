@@ -7,7 +7,7 @@ from contextlib import contextmanager
 from dataclasses import dataclass
 
 from rich import box
-from rich.console import Console
+from rich.console import Console, RenderableType
 from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn, TimeRemainingColumn
 from rich.table import Table
 from rich.text import Text
@@ -28,14 +28,20 @@ class Heading:
         Unit or a second line.
     number : bool
         Whether numbers stand below, aligned to the right.
-    cut : bool
-        Whether text too long for the line is cut instead of wrapped.
+    whole : bool
+        Whether text below is never broken into lines.
+    most : int or None
+        Characters in a line at most.
+    rest : bool
+        Whether the column takes what is left of the width and cuts what is longer.
     """
 
     text: str
     unit: str = ""
     number: bool = False
-    cut: bool = False
+    whole: bool = False
+    rest: bool = False
+    most: int | None = None
 
 
 def _console(*, errors: bool = False) -> Console:
@@ -44,9 +50,22 @@ def _console(*, errors: bool = False) -> Console:
     return Console(file=stream, markup=False, highlight=False, emoji=False, width=width)
 
 
+def width() -> int:
+    """Characters in a line of standard output."""
+    return _console().width
+
+
+def _print(drawn: RenderableType) -> None:
+    """Print without the blanks that fill lines up to the width."""
+    console = _console()
+    with console.capture() as captured:
+        console.print(drawn)
+    sys.stdout.write("".join(f"{line.rstrip()}\n" for line in captured.get().splitlines()))
+
+
 def say(text: str = "", *, strong: bool = False) -> None:
     """Print a line or paragraph, wrapped to the width."""
-    _console().print(Text(text, style="bold" if strong else ""))
+    _print(Text(text, style="bold" if strong else ""))
 
 
 def say_errors(text: str) -> None:
@@ -69,17 +88,20 @@ def show_table(
         Row to stand out.
     """
     table = Table(box=box.SIMPLE_HEAD, pad_edge=False, padding=(0, 1), collapse_padding=True)
+    table.expand = any(heading.rest for heading in headings)
     for heading in headings:
         table.add_column(
             Text(f"{heading.text}\n{heading.unit}".rstrip("\n")),
             justify="right" if heading.number else "left",
             vertical="top",
-            no_wrap=heading.number or heading.cut,
-            overflow="ellipsis" if heading.cut else "fold",
+            no_wrap=heading.number or heading.whole or heading.rest,
+            overflow="ellipsis" if heading.rest else "fold",
+            max_width=heading.most,
+            ratio=1 if heading.rest else None,
         )
     for i, row in enumerate(rows):
         table.add_row(*map(Text, row), style="bold" if i == marked else "")
-    _console().print(table)
+    _print(table)
 
 
 def show_pairs(pairs: Sequence[tuple[str, str]]) -> None:
@@ -89,7 +111,7 @@ def show_pairs(pairs: Sequence[tuple[str, str]]) -> None:
     table.add_column(overflow="fold")
     for name, value in pairs:
         table.add_row(Text(name), Text(value))
-    _console().print(table)
+    _print(table)
 
 
 @contextmanager

@@ -1,5 +1,6 @@
 """``levelstride tableaux``: the time schemes and their audit."""
 
+import re
 import sys
 from math import isinf
 from typing import TYPE_CHECKING, Annotated, Any
@@ -9,7 +10,12 @@ from cyclopts import Parameter
 from levelstride.cli.console import Heading, say, show_pairs, show_table
 from levelstride.cli.options import Json
 
+LONGEST_COEFFICIENT = 12
+"""Characters up to which a coefficient is shown as published; --json has all digits."""
+
 if TYPE_CHECKING:
+    from collections.abc import Iterable, Sequence
+
     from levelstride.tableaux.audit import Audit
     from levelstride.tableaux.tableau import Tableau
 
@@ -64,13 +70,13 @@ def _show_list(listed: "list[Tableau]") -> None:
     from levelstride.results.wording import number
 
     headings = [
-        Heading("tableau", cut=True),
+        Heading("tableau", most=24),
         Heading("order", number=True),
         Heading("solves", number=True),
         Heading("explicit", "evaluations", number=True),
         Heading("imaginary", "axis limit", number=True),
         Heading("value at", "infinity", number=True),
-        Heading("source", cut=True),
+        Heading("source", rest=True),
     ]
     rows = [
         (
@@ -80,7 +86,7 @@ def _show_list(listed: "list[Tableau]") -> None:
             str(t.explicit_evaluations),
             number(t.imaginary_axis_limit),
             "-" if t.kind == "explicit" else number(t.value_at_infinity),
-            t.source,
+            re.split(r"(?<=\(\d{4}\))", t.source)[0],
         )
         for t in listed
     ]
@@ -147,16 +153,25 @@ def _pairs(tableau: "Tableau", report: "Audit") -> list[tuple[str, str]]:
         )
         pairs = [pair for pair in pairs if pair[0] not in implicit]
     for entry in report.negative_diagonals:
-        pairs.append(("negative diagonal", str(entry)))
+        pole = f"pole at z = {number(entry.pole)}, which damping terms can meet"
+        pairs.append(("negative diagonal", f"stage {entry.stage}: {number(entry.value)}, {pole}"))
     return [pair for pair in pairs if pair[1]]
 
 
 def _show_coefficients(title: str, tableau: "Tableau", part: str) -> None:
+    def row(first: str, texts: "Sequence[str]", values: "Iterable[float]") -> list[str]:
+        shown = [
+            text if len(text) <= LONGEST_COEFFICIENT else f"{value:.8g}"
+            for text, value in zip(texts, values, strict=True)
+        ]
+        return [first, *shown]
+
     text = tableau.coefficient_text
-    table, weights = getattr(text, f"a_{part}"), getattr(text, f"b_{part}")
+    texts, values = getattr(text, f"a_{part}"), getattr(tableau, f"a_{part}")
     sums = getattr(tableau, f"c_{part}")
-    headings = [Heading("c"), *(Heading(f"a{j + 1}") for j in range(tableau.nstage))]
-    rows = [[f"{c:.6g}", *row] for c, row in zip(sums, table, strict=True)]
+    rows = [row(f"{c:.8g}", *pair) for c, *pair in zip(sums, texts, values, strict=True)]
+    rows.append(row("b", getattr(text, f"b_{part}"), getattr(tableau, f"b_{part}")))
     if title:
         say(title)
-    show_table(headings, [*rows, ["b", *weights]])
+    headings = [Heading("c"), *(Heading(f"a{j + 1}") for j in range(tableau.nstage))]
+    show_table(headings, rows)

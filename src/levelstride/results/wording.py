@@ -107,6 +107,22 @@ def limit_reason(limit: Limit) -> str:
     return f"{limit.criterion}: {wave(limit.bites)}"
 
 
+def in_short(binding: str) -> str:
+    """Shorten a reason for a narrow column of a table; files keep it whole.
+
+    Examples
+    --------
+    >>> in_short("spectrum+transient: sound wave of 6.0 km, layers 0-3 (0-140 m)")
+    'spectrum, transient: sound 6.0 km, layers 0-3'
+    >>> in_short("frequency of gravity waves: 1.3 % at 24.5 s, 1 % allowed")
+    'frequency of gravity waves'
+    """
+    what, _, _ = binding.partition(": ")
+    if what.startswith(("frequency", "amplitude", "interval")):
+        return what
+    return binding.partition(" (")[0].replace("+", ", ").replace(" wave of ", " ")
+
+
 def headroom(row: AdviceRow) -> str:
     """Say how far the advised step is from the stable and from the strict step."""
     if row.advised_step_s is None:

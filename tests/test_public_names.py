@@ -1,0 +1,34 @@
+import subprocess
+import sys
+
+import levelstride
+
+NAMES = {
+    "Advice",
+    "AdviceRow",
+    "CalculationError",
+    "Column",
+    "CurrentConfiguration",
+    "InputError",
+    "Limit",
+    "advise",
+    "build",
+    "level_report",
+    "limit",
+    "load",
+    "write_advice",
+}
+HEAVY = {"numpy", "scipy", "numba", "h5py", "pydantic", "rich", "cyclopts"}
+
+
+def test_public_names_are_pinned_and_there():
+    assert set(levelstride.__all__) == NAMES
+    assert set(levelstride.__dir__()) >= NAMES
+    for name in NAMES:
+        assert getattr(levelstride, name).__doc__
+
+
+def test_importing_the_package_imports_nothing_heavy():
+    code = "import sys, levelstride; print(*{m.split('.')[0] for m in sys.modules})"
+    found = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert not HEAVY & set(found.stdout.split())
