@@ -68,7 +68,7 @@ def test_unstable_and_sheared_layers_are_named(plain):
     assert air.sheared_layers == (5,)
     text = "\n".join(report.findings)
     assert "autumn: N^2 < 0 in 2 layers (0-1)" in text
-    assert "Richardson number below 1/4 in 1 layers (5)" in text
+    assert "Richardson number below 1/4 in 1 layer (5)" in text
     assert "deserve attention" in report.verdict
 
 

@@ -1,5 +1,6 @@
 """The arithmetic behind ``levelstride check``: what a level set and its air look like."""
 
+from collections.abc import Sized
 from dataclasses import dataclass
 from typing import Final
 
@@ -190,23 +191,27 @@ def runs(indices: tuple[int, ...]) -> str:
     return ", ".join(parts)
 
 
+def _count(things: Sized, noun: str) -> str:
+    return f"{len(things)} {noun}" + ("" if len(things) == 1 else "s")
+
+
 def _air_findings(air: AirReport, staggering: str) -> list[str]:
     found = []
     if staggering == "lorenz" and air.unstable_layers:
         found.append(
-            f"{air.name}: N^2 < 0 in {len(air.unstable_layers)} layers "
+            f"{air.name}: N^2 < 0 in {_count(air.unstable_layers, 'layer')} "
             f"({runs(air.unstable_layers)}); the air itself convects there, and that growth is "
             "part of every answer"
         )
     if staggering == "charney-phillips" and air.unstable_interfaces:
         found.append(
-            f"{air.name}: N^2 < 0 at {len(air.unstable_interfaces)} interfaces "
+            f"{air.name}: N^2 < 0 at {_count(air.unstable_interfaces, 'interface')} "
             f"({runs(air.unstable_interfaces)}); the air itself convects there, and that growth is "
             "part of every answer"
         )
     if air.sheared_layers:
         found.append(
-            f"{air.name}: Richardson number below 1/4 in {len(air.sheared_layers)} layers "
+            f"{air.name}: Richardson number below 1/4 in {_count(air.sheared_layers, 'layer')} "
             f"({runs(air.sheared_layers)}); shear may break them up"
         )
     return found
@@ -219,7 +224,7 @@ def _findings(
     if jumps:
         worst = max(jumps, key=lambda jump: jump.ratio)
         found.append(
-            f"layer thickness jumps by more than {LARGEST_RATIO:g} in {len(jumps)} places; the "
+            f"layer thickness jumps by more than {LARGEST_RATIO:g} in {_count(jumps, 'place')}; the "
             f"largest ratio is {worst.ratio:.3g}, {worst.height_m:.5g} m above the ground: waves "
             "are reflected there"
         )
