@@ -224,7 +224,8 @@ def _findings(
     if jumps:
         worst = max(jumps, key=lambda jump: jump.ratio)
         found.append(
-            f"layer thickness jumps by more than {LARGEST_RATIO:g} in {_count(jumps, 'place')}; the "
+            f"layer thickness jumps by more than {LARGEST_RATIO:g} in {_count(jumps, "
+            "'place')}; the "
             f"largest ratio is {worst.ratio:.3g}, {worst.height_m:.5g} m above the ground: waves "
             "are reflected there"
         )
