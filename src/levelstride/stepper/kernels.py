@@ -132,7 +132,7 @@ def lane_of(coefficient: Any, lane: int) -> Any:
     return coefficient[lane] if np.ndim(coefficient) else coefficient
 
 
-@overload(lane_of, inline="always")
+@overload(lane_of)
 def _lane_of(coefficient, lane):  # type: ignore[no-untyped-def]  # numba compares signatures
     if isinstance(coefficient, numba.types.Array):
         return lambda coefficient, lane: coefficient[lane]
@@ -205,14 +205,15 @@ def solve(y: Vector, at: Origin, has: Traits, c: Reduction, d: int, nlane: int) 
         begin_layer(y, at, has, c, d, j, nlane)
         if j > 0:
             begin_interface(y, at, has, c, d, j - 1, nlane)
-    for m in range(at.nlev - 2, -1, -1):
-        w = y[at.w + m * at.stride]
-        next_w = y[at.w + min(m + 1, at.nlev - 2) * at.stride]
-        inverse, upper = c.inverse[d][m], c.upper[d][m]
-        for lane in range(nlane):
-            w[lane] = lane_of(inverse, lane) * w[lane] + lane_of(upper, lane) * next_w[lane]
-        finish_layer(y, at, has, c, d, m + 1, nlane)
-    finish_layer(y, at, has, c, d, 0, nlane)
+    for j in range(at.nlev - 1, -1, -1):
+        if j > 0:
+            m = j - 1
+            w = y[at.w + m * at.stride]
+            above = y[at.w + min(j, at.nlev - 2) * at.stride]
+            inverse, upper = c.inverse[d][m], c.upper[d][m]
+            for lane in range(nlane):
+                w[lane] = lane_of(inverse, lane) * w[lane] + lane_of(upper, lane) * above[lane]
+        finish_layer(y, at, has, c, d, j, nlane)
 
 
 @inlined
