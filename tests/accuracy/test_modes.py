@@ -176,6 +176,36 @@ def test_resolved_gravity_waves_are_the_lowest_quarter_of_orders():
     assert sorted(modes.vertical_order[wanted]) == sorted([1, 2, 3, 4, 5] * 2)
 
 
+def test_waves_of_a_jet_are_told_from_its_critical_layers():
+    """Most slow modes of a jet follow the wind of one level; waves of low order run both ways."""
+    wind = 40.0
+    jet = standard_column(40, 20e3, 60.0, 6e3, wind=lambda z: wind * np.sin(np.pi * z / 20e3))
+    wave = Wave(np.pi / 64 / 6e3, jet.horizontal)
+    modes = normal_modes(jet, jet.airs[0], wave)
+    wanted = modes.select(resolved_gravity(modes))
+    for order in (1, 2, 3):
+        both = wanted.intrinsic_frequency[wanted.vertical_order == order]
+        assert sorted(np.sign(both)) == [-1, 1]
+    carried = np.sqrt(2) * wave.kappa * wind
+    riding = (modes.kind == "gravity") & (modes.frequency < 0) & (modes.frequency > -carried)
+    assert np.sum(riding) > 40
+    assert np.median(modes.vertical_order[riding]) > 10
+
+
+def test_entangled_modes_are_not_taken_for_resolved_waves():
+    column = isothermal_column(36, 18e3, staggering="lorenz", vertical_advection="upwind-3")
+    air, levels = column.airs[0], column.levels
+    updraft_c, updraft_f = (
+        0.5 * np.sin(np.pi * z / levels.top_m) for z in (levels.centres_m, levels.interfaces_m)
+    )
+    rising = replace(air, updraft_c=updraft_c, updraft_f=updraft_f)
+    modes = normal_modes(column, rising, Wave(3e-5, column.horizontal))
+    assert modes.condition.max() > 100
+    wanted = modes.select(resolved_gravity(modes))
+    assert set(wanted.vertical_order) >= {1, 2}
+    assert wanted.condition.max() <= 10
+
+
 def test_weights_keep_pairs_skew_where_the_air_is_hardly_stable():
     column = isothermal_column(10)
     air = column.airs[0]

@@ -29,6 +29,9 @@ ROUND_OFF = 1.0e-13
 STILL = 1.0e-10
 """Frequencies smaller than this, relative to the largest, count as zero."""
 
+LARGEST_CONDITION = 10.0
+"""A mode whose dual is longer than this is no wave of its own but part of a transient."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Modes:
@@ -51,8 +54,8 @@ class Modes:
     kind_share : ndarray, shape (nmode,)
         Share of the energy in that kind [1].
     vertical_order : ndarray of int, shape (nmode,)
-        Of the wave at rest that the mode resembles most: 1 for the gravest; 0 for Lamb waves and
-        modes that stand still.
+        1 for the gravest; 0 for Lamb waves and modes that stand still. Where wind or damping mix
+        the waves at rest, the median order of those of its kind, weighted by their energy.
     intrinsic_frequency : ndarray, shape (nmode,)
         The frequency without the part that wind and other one-way terms bring: what an observer
         carried by the wind would see [1/s].
@@ -70,6 +73,11 @@ class Modes:
     vertical_order: Index
     intrinsic_frequency: Array
     is_normal: bool
+
+    @property
+    def condition(self) -> Array:
+        """Length of the duals, shape (nmode,): 1 for orthogonal modes, large for entangled ones."""
+        return np.asarray(np.linalg.norm(self.duals, axis=0))
 
     def select(self, mask: NDArray[np.bool_]) -> Modes:
         """Return the modes where ``mask``, shape (nmode,), is true."""
@@ -146,8 +154,8 @@ def modes_of(terms: Mapping[str, Banded], layout: Layout, weights: Array) -> Mod
         )
     value, left, right = cast("tuple[Matrix, Matrix, Matrix]", eig(operator, left=True, right=True))
     product = np.sum(left.conj() * right, axis=0)
-    product[product == 0] = np.finfo(np.float64).tiny
-    kind, share, like = _recognise(basis, right)
+    product[np.abs(product) < ROUND_OFF] = ROUND_OFF  # a defective pair has no dual
+    kind, share, order = _recognise(basis, right)
     one_way = total(layout.size, (terms[n] for n, t in CATALOGUE.items() if t.partner is None))
     carried = np.sum(right.conj() * one_way.apply(right), axis=0).imag
     return Modes(
@@ -159,7 +167,7 @@ def modes_of(terms: Mapping[str, Banded], layout: Layout, weights: Array) -> Mod
         duals=left / product.conj(),
         kind=kind,
         kind_share=share,
-        vertical_order=basis.vertical_order[like],
+        vertical_order=order,
         intrinsic_frequency=value.imag - carried,
         is_normal=False,
     )
@@ -174,19 +182,24 @@ def _shift(operator: Matrix, basis: WaveBasis) -> complex | None:
 
 
 def _recognise(basis: WaveBasis, vectors: Matrix) -> tuple[NDArray[np.str_], Array, Index]:
-    """Kind, share of the energy in it and most alike wave of the basis, for every vector."""
+    """Kind, share of the energy in it and vertical order of every vector, seen in the basis."""
     shares = np.abs(basis.vectors.conj().T @ vectors) ** 2
     names = np.unique(basis.kind)
     by_kind = np.array([shares[basis.kind == name].sum(axis=0) for name in names])
     best = by_kind.argmax(axis=0)
     kind = names[best]
-    shares[basis.kind[:, None] != kind[None, :]] = -1.0
-    share = by_kind.max(axis=0) / by_kind.sum(axis=0)
-    return kind, share, shares.argmax(axis=0)
+    by_order = np.zeros((basis.vertical_order.max(initial=0) + 1, kind.size))
+    np.add.at(by_order, basis.vertical_order, shares * (basis.kind[:, None] == kind))
+    below = np.cumsum(by_order, axis=0)
+    order = np.argmax(below >= 0.5 * below[-1], axis=0)
+    return kind, by_kind.max(axis=0) / by_kind.sum(axis=0), order
 
 
 def resolved_gravity(modes: Modes) -> NDArray[np.bool_]:
     """Gravity waves that a model may be asked to carry well: vertical order at most nlev/4.
+
+    Left out are modes that only resemble such waves: critical layers and decaying structures that
+    wind, updraft or damping entangle with others.
 
     Returns
     -------
@@ -196,6 +209,7 @@ def resolved_gravity(modes: Modes) -> NDArray[np.bool_]:
     return np.asarray(
         (modes.kind == "gravity")
         & (modes.kind_share >= 0.5)
+        & (modes.condition <= LARGEST_CONDITION)
         & (4 * modes.vertical_order <= modes.layout.nlev)
         & (np.abs(modes.intrinsic_frequency) > STILL * fastest)
     )
