@@ -223,11 +223,11 @@ def _findings(
     found = []
     if jumps:
         worst = max(jumps, key=lambda jump: jump.ratio)
+        places = _count(jumps, "place")
         found.append(
-            f"layer thickness jumps by more than {LARGEST_RATIO:g} in {_count(jumps, "
-            "'place')}; the "
-            f"largest ratio is {worst.ratio:.3g}, {worst.height_m:.5g} m above the ground: waves "
-            "are reflected there"
+            f"layer thickness jumps by more than {LARGEST_RATIO:g} in {places}; the largest ratio "
+            f"is {worst.ratio:.3g}, {worst.height_m:.5g} m above the ground: waves are reflected "
+            "there"
         )
     if abs(steepness) > 1.0:
         found.append(
