@@ -27,7 +27,8 @@ def test_every_term_equals_the_printed_equation(seed):
     for name, matrix in assemble(column, air, wave).items():
         expected = twin.matrix(name, layout)
         scale = np.abs(expected).max()
-        assert np.abs(matrix.to_dense() - expected).max() <= 2e-12 * scale, name
+        # differences of heights 5 m apart at 20 km lose four digits
+        assert np.abs(matrix.to_dense() - expected).max() <= 2e-11 * scale, name
         assert scale > 0 or matrix.is_zero, name
 
 

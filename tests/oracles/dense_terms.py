@@ -208,7 +208,7 @@ class Twin:
             chosen = third
         else:
             chosen = [i, i + up]
-        scale = max(self.dz)
+        scale = max(abs(points[k][0] - points[i][0]) for k in chosen)
         x = np.array([(points[k][0] - points[i][0]) / scale for k in chosen])
         y = np.array([points[k][1] for k in chosen])
         return np.linalg.solve(np.vander(x, increasing=True), y)[1] / scale
