@@ -100,6 +100,28 @@ class Layout:
         index: Index = getattr(self, field)
         return index
 
+    def spread(
+        self, in_layers: NDArray[np.float64], at_interfaces: NDArray[np.float64]
+    ) -> NDArray[np.float64]:
+        """Give every unknown the value at its own height.
+
+        Parameters
+        ----------
+        in_layers : ndarray, shape (nlev,)
+        at_interfaces : ndarray, shape (nlev-1,)
+            At interior interfaces.
+
+        Returns
+        -------
+        ndarray, shape (nstate,)
+        """
+        values = np.empty(self.size)
+        for field in FIELDS:
+            places = self.places(field)
+            if places.size:
+                values[places] = in_layers if places.size == self.nlev else at_interfaces
+        return values
+
     @cached_property
     def phase(self) -> NDArray[np.complex128]:
         """Factor from the stored to the physical unknown: i for u and v, 1 elsewhere."""

@@ -1,0 +1,1 @@
+"""Is the step bounded: eigenvalues, powers and symbols of the step matrix."""

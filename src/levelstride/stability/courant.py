@@ -1,0 +1,249 @@
+"""Frozen-coefficient limits of explicit one-way terms, row by row.
+
+One-way transport on a column is triangular: its eigenvalues know nothing of the Courant limit, and
+a few offending layers hide from power norms too. So every row of the advection and diffusion terms is
+frozen, its symbol taken over all vertical and horizontal phase angles (von Neumann analysis, Hirsch
+2007, Numerical Computation of Internal and External Flows, chapter 7), and the amplification factor
+of the explicit tableau, or of forward Euler for terms taken after the step, is held against the
+tolerated growth.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from levelstride.column.air import Background
+from levelstride.column.column import Column
+from levelstride.operator.setting import Setting, layout_of
+from levelstride.operator.state import FIELDS, Layout
+from levelstride.operator.terms import CATALOGUE
+from levelstride.operator.wave import Wave
+from levelstride.splitting.splitting import Splitting
+from levelstride.stability.amplification import explicit_polynomial
+from levelstride.tableaux.tableau import Tableau
+
+Complex = NDArray[np.complex128]
+Factor = Callable[[Complex], NDArray[np.float64]]
+
+ANGLES = 33
+"""Phase angles from 0 to pi in each direction of the first look; the binding row gets more."""
+
+FINE_ANGLES = 257
+SCAN_RATIO = 1.05
+BISECTION = 1.0005
+
+
+@dataclass(frozen=True, slots=True)
+class CourantLimit:
+    """Longest step at which no frozen row grows, and the row that binds.
+
+    Attributes
+    ----------
+    step_s : float
+        [s]
+    field : str
+        Unknown whose row binds.
+    layer : int
+        Layer, or the layer below the interface.
+    kappa : float
+        Wavenumber along one axis of the worst horizontal angle [1/m].
+    kind : str
+        ``transport`` or ``mixing``, whichever the worst symbol owes more to.
+    rate_per_s : float
+        Growth rate just beyond the limit [1/s].
+    """
+
+    step_s: float
+    field: str
+    layer: int
+    kappa: float
+    kind: str
+    rate_per_s: float
+
+
+@dataclass(frozen=True, eq=False)
+class _Rows:
+    """Frozen rows: vertical stencils and horizontal speeds.
+
+    Attributes
+    ----------
+    vertical : ndarray, shape (nrow, nstencil)
+        Coefficients at vertical offsets ``offsets`` [1/s].
+    wind : ndarray, shape (nrow,)
+        Advecting wind, zero where horizontal advection is not in the set [m/s].
+    diffuses : bool
+        Whether horizontal diffusion is in the set.
+    """
+
+    index: NDArray[np.intp]
+    offsets: NDArray[np.intp]
+    vertical: NDArray[np.float64]
+    wind: NDArray[np.float64]
+    diffuses: bool
+
+    def symbol(self, column: Column, rows: NDArray[np.intp], angles: int) -> Complex:
+        """Symbols, shape (nrow, nkappa, nphi) [1/s]."""
+        phi = np.linspace(-np.pi, np.pi, 2 * angles - 1)
+        if not np.any(self.vertical[rows]):
+            phi = np.zeros(1)
+        vertical = self.vertical[rows] @ np.exp(1j * np.outer(self.offsets, phi))
+        kappas = self.kappas(column, rows, angles)
+        horizontal = np.stack([self._horizontal(column, kappa, rows) for kappa in kappas], axis=1)
+        total: Complex = horizontal[:, :, None] + vertical[:, None, :]
+        return total
+
+    def kappas(self, column: Column, rows: NDArray[np.intp], angles: int) -> NDArray[np.float64]:
+        """Horizontal wavenumbers of the symbol [1/m]."""
+        if not self.diffuses and not np.any(self.wind[rows]):
+            return np.zeros(1)
+        return np.linspace(0, np.pi, angles) / column.horizontal.grid_spacing_m
+
+    def _horizontal(self, column: Column, kappa: float, rows: NDArray[np.intp]) -> Complex:
+        wave = Wave(float(kappa), column.horizontal)
+        value: Complex = wave.advection(self.wind[rows]).astype(complex)
+        if self.diffuses:
+            order = column.horizontal_diffusion_order
+            value = value - column.horizontal_diffusion * wave.laplacian**order
+        return value
+
+
+def courant_limit(
+    column: Column,
+    air: Background,
+    splitting: Splitting,
+    tableau: Tableau,
+    rate: float,
+    largest_s: float,
+) -> CourantLimit | None:
+    """Longest step that the explicit one-way terms allow by themselves.
+
+    Parameters
+    ----------
+    column : Column
+    air : Background
+    splitting : Splitting
+    tableau : Tableau
+    rate : float
+        Tolerated growth rate [1/s].
+    largest_s : float
+        Step up to which the limit is sought [s].
+
+    Returns
+    -------
+    CourantLimit or None
+        None if nothing bites up to ``largest_s``.
+    """
+    found = []
+    polynomial = explicit_polynomial(tableau)
+    factors: dict[str, Factor] = {
+        "explicit": lambda z: np.abs(np.polynomial.polynomial.polyval(z, polynomial)),
+        "after-step": lambda z: np.abs(1 + z),
+    }
+    for treatment, factor in factors.items():
+        rows = _frozen_rows(column, air, splitting, treatment)
+        if rows is not None:
+            limit = _limit_of(rows, column, factor, rate, largest_s)
+            if limit is not None:
+                found.append(limit)
+    return min(found, key=lambda limit: limit.step_s, default=None)
+
+
+def _frozen_rows(
+    column: Column, air: Background, splitting: Splitting, treatment: str
+) -> _Rows | None:
+    names = {n for n in splitting.terms(treatment) if CATALOGUE[n].one_way}
+    layout = layout_of(column)
+    setting = Setting(column, air, Wave(0.0, column.horizontal), layout)
+    vertical = [
+        CATALOGUE[n].build(setting)
+        for n in sorted(names & {"vertical-advection", "vertical-diffusion"})
+    ]
+    reach = np.arange(-3, 4)
+    every = np.arange(layout.size)
+    coefficients = np.zeros((layout.size, reach.size))
+    for matrix in vertical:
+        for k, offset in enumerate(reach):
+            coefficients[:, k] += matrix.diagonal(int(offset) * layout.stride).real
+    wind = np.zeros(layout.size)
+    if "horizontal-advection" in names:
+        wind = layout.spread(air.wind_c, air.wind_f[1:-1])
+    diffuses = "horizontal-diffusion" in names and column.horizontal_diffusion != 0.0
+    if not np.any(coefficients) and not np.any(wind) and not diffuses:
+        return None
+    keys = np.round(np.column_stack([coefficients, wind]), 14)
+    _, first = np.unique(keys, axis=0, return_index=True)
+    kept = every[np.sort(first)]
+    return _Rows(kept, reach, coefficients[kept], wind[kept], diffuses)
+
+
+def _limit_of(
+    rows: _Rows, column: Column, factor: Factor, rate: float, largest_s: float
+) -> CourantLimit | None:
+    every = np.arange(rows.index.size)
+    symbols = rows.symbol(column, every, ANGLES)
+    own = np.maximum(symbols.real.max(axis=(1, 2)), 0.0)
+
+    def grows(dt: float, z: Complex, extra: NDArray[np.float64]) -> NDArray[np.bool_]:
+        allowed = np.exp(dt * (rate + extra)) * (1 + 1e-12)
+        return np.asarray((factor(dt * z) > allowed[:, None, None]).any(axis=(1, 2)))
+
+    fastest = float(np.abs(symbols).max())
+    if fastest == 0.0:
+        return None
+    dt = 1e-3 / fastest
+    while grows(dt, symbols, own).any():
+        dt /= 10
+    while not (bad := grows(dt, symbols, own)).any():
+        dt *= SCAN_RATIO
+        if dt > largest_s:
+            return None
+    # rows that offend within the last stride, and a look at finer angles for them
+    chosen = every[bad]
+    fine = rows.symbol(column, chosen, FINE_ANGLES if symbols.shape[1] == 1 else 2 * ANGLES)
+    fine_own = np.maximum(fine.real.max(axis=(1, 2)), 0.0)
+    low, high = dt / SCAN_RATIO**2, dt
+    while high / low > BISECTION:
+        middle = np.sqrt(low * high)
+        if grows(middle, fine, fine_own).any():
+            high = middle
+        else:
+            low = middle
+    return _describe(rows, column, chosen, fine, fine_own, factor, low)
+
+
+def _describe(
+    rows: _Rows,
+    column: Column,
+    chosen: NDArray[np.intp],
+    symbols: Complex,
+    own: NDArray[np.float64],
+    factor: Factor,
+    step: float,
+) -> CourantLimit:
+    beyond = 1.001 * step
+    growth = np.log(np.maximum(factor(beyond * symbols), 1e-300)) / beyond - own[:, None, None]
+    row, i, j = (int(k) for k in np.unravel_index(np.argmax(growth), growth.shape))
+    angles = symbols.shape[1]
+    kappa = float(rows.kappas(column, chosen, angles)[i])
+    index = int(rows.index[chosen[row]])
+    layout = layout_of(column)
+    worst = symbols[row, i, j]
+    return CourantLimit(
+        step_s=float(step),
+        field=_field_of(layout, index),
+        layer=int(layout.layer_of[index]),
+        kappa=kappa,
+        kind="transport" if abs(worst.imag) > abs(worst.real) / 4 else "mixing",
+        rate_per_s=float(growth[row, i, j]),
+    )
+
+
+def _field_of(layout: Layout, index: int) -> str:
+    for field in FIELDS:
+        if index in layout.places(field):
+            return field
+    raise ValueError(f"no unknown at {index}")

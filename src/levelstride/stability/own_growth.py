@@ -1,0 +1,124 @@
+"""What the semi-discrete operator does by itself, before any time scheme touches it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.linalg import expm
+
+from levelstride.column.air import Background
+from levelstride.column.column import Column
+from levelstride.operator.bands import Banded, total
+from levelstride.stability.powers import power_norms
+
+Matrix = NDArray[Any]
+
+ROUND_OFF = 1e-12
+"""Share of the operator's norm below which its Hermitian part counts as round-off."""
+
+LOG_OVERFLOW = 600.0
+"""ln of a norm beyond which following exp(t L) tells nothing more."""
+
+
+class OperatorFacts:
+    """Growth and size of the semi-discrete operator L of one air state and wave.
+
+    Parameters
+    ----------
+    operator : ndarray, shape (nstate, nstate)
+        L in energy coordinates.
+    horizon : float
+        Time up to which exp(t L) is followed [s].
+
+    Attributes
+    ----------
+    own_growth : float
+        Largest real part of the eigenvalues of L, zero if negative [1/s].
+    largest_eigenvalue : float
+        Largest modulus of the eigenvalues of L [1/s].
+    """
+
+    def __init__(self, operator: Matrix, horizon: float) -> None:
+        self._operator, self._horizon = operator, horizon
+        self._size = float(np.linalg.norm(operator, 2))
+        self.own_growth, self.largest_eigenvalue, self._shrinks = 0.0, self._size, True
+        hermitian = (operator + operator.conj().T) / 2
+        if np.linalg.norm(hermitian) <= ROUND_OFF * self._size:
+            return
+        eigenvalues = np.linalg.eigvals(operator)
+        self.largest_eigenvalue = float(np.abs(eigenvalues).max())
+        if np.linalg.eigvalsh(hermitian)[-1] > ROUND_OFF * self._size:
+            self.own_growth = max(0.0, float(eigenvalues.real.max()))
+            self._shrinks = False
+
+    @cached_property
+    def _exponential(self) -> tuple[tuple[float, float], ...]:
+        if self._shrinks:
+            return ()
+        return _exponential_norms(self._operator, self._size, self._horizon)
+
+    def log_exponential_peak(self, rate: float) -> float:
+        """Logarithm of the largest ||exp(t L)|| exp(-t rate) over t >= 0, at least zero."""
+        return max([0.0, *(log_norm - t * rate for t, log_norm in self._exponential)])
+
+
+def _exponential_norms(
+    operator: Matrix, size: float, horizon: float
+) -> tuple[tuple[float, float], ...]:
+    """Follow ln ||exp(t L)|| by powers of exp(t0 L), t0 a quarter of 1/||L||."""
+    first = 0.25 / size
+    norms = []
+    for steps, log_norm in power_norms(expm(operator * first), horizon / first):
+        norms.append((steps * first, log_norm))
+        if log_norm > LOG_OVERFLOW:
+            break
+    return tuple(norms)
+
+
+def cause_of_growth(terms: Mapping[str, Banded], column: Column, air: Background) -> str:
+    """Name what makes the semi-discrete operator grow, by taking terms away.
+
+    Parameters
+    ----------
+    terms : mapping of str to Banded
+        All terms on the air.
+    column : Column
+    air : Background
+
+    Returns
+    -------
+    str
+        ``convection``, ``shear`` or ``formulation (...)``.
+    """
+    whole = _growth(terms, ())
+    candidates = [
+        ("convection", ("buoyancy", "stratification"), bool(np.any(air.n_squared_c < 0))),
+        ("shear", ("shear",), _richardson_below_quarter(column, air)),
+        ("formulation (frozen updraft)", ("vertical-advection",), True),
+        (
+            "formulation (shear along slopes)",
+            ("slope-pressure-gradient", "slope-divergence"),
+            bool(np.any(column.slope_f)),
+        ),
+        ("formulation (shear)", ("shear", "horizontal-advection"), True),
+        ("formulation (divergence damping)", ("divergence-damping",), True),
+    ]
+    for name, removed, possible in candidates:
+        if possible and _growth(terms, removed) < 0.5 * whole:
+            return name
+    return "formulation (several terms together)"
+
+
+def _growth(terms: Mapping[str, Banded], without: tuple[str, ...]) -> float:
+    kept = [matrix for name, matrix in terms.items() if name not in without]
+    operator = total(next(iter(terms.values())).size, kept).to_dense()
+    return float(np.linalg.eigvals(operator).real.max())
+
+
+def _richardson_below_quarter(column: Column, air: Background) -> bool:
+    shear = np.diff(air.wind_f) / column.levels.thickness_m
+    return bool(np.any(air.n_squared_c < 0.25 * shear**2))

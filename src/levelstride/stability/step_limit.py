@@ -1,0 +1,247 @@
+"""The search for the longest stable step over all waves and air states."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from levelstride.errors import CalculationError
+from levelstride.stability.wave_problem import WaveProblem
+
+Criterion = Callable[[WaveProblem, float], bool]
+Maker = Callable[[int, float], WaveProblem]
+
+SCAN_RATIO = 1.05
+BISECTION = 1.001
+FIRST_STEP = 1e-3
+"""First step scanned, over the largest |eigenvalue| of the whole operator."""
+
+SMALLEST_FIRST_STEP = 1e-12
+"""First step [s] below which a tableau counts as unstable however short the step."""
+
+NEAR_MINIMUM = 1.05
+"""Waves whose limit is within this factor of the smallest are refined around."""
+
+FLAT = 1.0025
+"""Where the limits on both sides are this close, nothing much smaller lies between them."""
+
+RESOLVED = 1.005
+"""Change of the limit below which no further waves are added."""
+
+
+@dataclass(frozen=True, eq=False)
+class Bracket:
+    """A stable and an unstable step of one wave, as close as the bisection brought them.
+
+    Attributes
+    ----------
+    low, high : float
+        Stable and unstable step [s].
+    problem : WaveProblem
+    """
+
+    low: float
+    high: float
+    problem: WaveProblem
+
+
+class StepSearch:
+    """Longest step that keeps a criterion at every wave of every air state.
+
+    Parameters
+    ----------
+    make : callable
+        Returns the problem of an air state (by number) and a wavenumber, the same object each time.
+    nair : int
+        Number of air states.
+    kappas : sequence of float
+        Sampled wavenumbers, ascending [1/m].
+    largest_s : float
+        Step up to which is scanned [s].
+    """
+
+    def __init__(self, make: Maker, nair: int, kappas: Sequence[float], largest_s: float) -> None:
+        self._make, self._nair, self.largest_s = make, nair, largest_s
+        self.kappas = [list(kappas) for _ in range(nair)]
+
+    def problems(self) -> list[WaveProblem]:
+        """All problems looked at so far, steepest gradient first."""
+        every = [self._make(air, k) for air in range(self._nair) for k in self.kappas[air]]
+        return sorted(every, key=lambda problem: -problem.slow_rate)
+
+    def run(self, holds: Criterion) -> Bracket | None:
+        """Find the limit, refining the wavenumbers around the worst ones.
+
+        Returns
+        -------
+        Bracket or None
+            None if the criterion holds up to ``largest_s``.
+
+        Raises
+        ------
+        CalculationError
+            If it fails at every step, however short.
+        """
+        pass_ = _Pass(self, holds)
+        pass_.cover(self.problems())
+        if pass_.best is None:
+            return None
+        for air in range(self._nair):
+            self._add_longer(pass_, air)
+            self._refine(pass_, air)
+        pass_.fill_below()
+        pass_.recheck(self.problems())
+        return pass_.best
+
+    def _add_longer(self, pass_: _Pass, air: int) -> None:
+        """Go on to longer waves while the longest one is the worst and the limit still falls."""
+        for _ in range(24):
+            longest = self._make(air, self.kappas[air][0])
+            assert pass_.best is not None
+            if pass_.best.problem is not longest:
+                return
+            before = pass_.best.low
+            self.kappas[air].insert(0, longest.kappa / 2)
+            pass_.cover([self._make(air, longest.kappa / 2)])
+            if before / pass_.best.low < RESOLVED:
+                return
+
+    def _refine(self, pass_: _Pass, air: int) -> None:
+        """Halve the spacing of the waves around every local minimum near the smallest limit."""
+        for _ in range(6):
+            assert pass_.best is not None
+            before, added = pass_.best.low, self._between(pass_, air)
+            if not added:
+                return
+            self.kappas[air] = sorted({*self.kappas[air], *added})
+            pass_.cover([self._make(air, kappa) for kappa in added])
+            if before / pass_.best.low < 1 + (RESOLVED - 1) / 4:
+                return
+
+    def _between(self, pass_: _Pass, air: int) -> list[float]:
+        kappas = self.kappas[air]
+        limits = [pass_.limit(self._make(air, kappa)) for kappa in kappas]
+        assert pass_.best is not None
+        added = []
+        for i, limit in enumerate(limits):
+            left = limits[i - 1] if i else np.inf
+            right = limits[i + 1] if i + 1 < len(limits) else np.inf
+            flat = max(left, right) <= FLAT * limit
+            if limit <= min(left, right, NEAR_MINIMUM * pass_.best.low) and not flat:
+                if i:
+                    added.append(float(np.sqrt(kappas[i - 1] * kappas[i])))
+                if i + 1 < len(kappas):
+                    added.append(float(np.sqrt(kappas[i] * kappas[i + 1])))
+        return added
+
+
+class _Pass:
+    """One criterion carried over the waves; keeps the smallest limit found."""
+
+    def __init__(self, search: StepSearch, holds: Criterion) -> None:
+        self._largest_s, self._holds = search.largest_s, holds
+        self.best: Bracket | None = None
+        self._limits: dict[int, float] = {}
+        self._start = self._first_step(search.problems())
+
+    def limit(self, problem: WaveProblem) -> float:
+        """Limit of one wave; inf if it is beyond all that matters."""
+        return self._limits.get(id(problem), np.inf)
+
+    def _first_step(self, problems: list[WaveProblem]) -> float:
+        fastest = max(problem.facts.largest_eigenvalue for problem in problems)
+        start = FIRST_STEP / fastest if fastest > 0 else FIRST_STEP * self._largest_s
+        for problem in problems:
+            while not self._holds(problem, start):
+                start /= 10
+                if start < SMALLEST_FIRST_STEP:
+                    raise CalculationError(
+                        f"no step down to {SMALLEST_FIRST_STEP:g} s keeps the tolerated growth at "
+                        f"wavenumber {problem.kappa:.4g} 1/m; allow a shorter e-folding time"
+                    )
+        return start
+
+    def cover(self, problems: Iterable[WaveProblem]) -> None:
+        """Scan waves up to a little beyond the smallest limit known."""
+        for problem in problems:
+            cap = self._largest_s
+            if self.best is not None:
+                cap = min(cap, NEAR_MINIMUM * self.best.low)
+            self._note(problem, self._first_failure(problem, cap))
+
+    def _note(self, problem: WaveProblem, bracket: Bracket | None) -> None:
+        if bracket is None:
+            return
+        self._limits[id(problem)] = bracket.low
+        if self.best is None or bracket.low < self.best.low:
+            self.best = bracket
+
+    def _first_failure(self, problem: WaveProblem, cap: float) -> Bracket | None:
+        strides = _strides(problem, self._start, cap)
+        low = 0.0
+        for high in strides:
+            if not self._holds(problem, high):
+                return self._close_in(problem, low, high)
+            low = high
+        return None
+
+    def _close_in(self, problem: WaveProblem, low: float, high: float) -> Bracket:
+        """Find the first failure between a stable and an unstable step, then bisect."""
+        if low == 0.0:
+            low = high / SCAN_RATIO
+            while not self._holds(problem, low):
+                low /= SCAN_RATIO
+        step = low * SCAN_RATIO
+        while step < high / np.sqrt(SCAN_RATIO):
+            if not self._holds(problem, step):
+                high = step
+                break
+            low, step = step, step * SCAN_RATIO
+        while high / low > BISECTION:
+            middle = float(np.sqrt(low * high))
+            if self._holds(problem, middle):
+                low = middle
+            else:
+                high = middle
+        return Bracket(low, high, problem)
+
+    def fill_below(self) -> None:
+        """Look at the binding wave at the full scan ratio over the factor two below its limit."""
+        assert self.best is not None
+        bracket = self.best
+        step = bracket.low / 2
+        while step < bracket.low:
+            if not self._holds(bracket.problem, step):
+                self._note(bracket.problem, self._close_in(bracket.problem, 0.0, step))
+                return
+            step *= SCAN_RATIO
+
+    def recheck(self, problems: Iterable[WaveProblem]) -> None:
+        """Check every wave again at the answer."""
+        assert self.best is not None
+        for problem in problems:
+            if not self._holds(problem, self.best.low):
+                self._note(problem, self._first_failure(problem, self.best.low))
+
+
+def _strides(problem: WaveProblem, start: float, cap: float) -> Iterable[float]:
+    """Steps at which one wave is looked at, ascending, ending with ``cap``.
+
+    Where the step is short for every rate of the operator, growth is a power of the step and needs
+    few looks; where it is short for all that is not implicit, growth varies over factors of the
+    step; elsewhere the scan is dense.
+    """
+    step, slow = start, problem.slow_rate
+    fastest = problem.facts.largest_eigenvalue
+    while step < cap:
+        yield step
+        if step * fastest < 0.3:
+            stride = 47
+        elif step * slow < 0.15:
+            stride = 8
+        else:
+            stride = 3
+        step *= SCAN_RATIO**stride
+    yield cap

@@ -1,0 +1,185 @@
+"""All criteria together: the stable step of one splitting and tableau on a whole column."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from levelstride.column.column import Column
+from levelstride.errors import CalculationError
+from levelstride.splitting.splitting import Splitting
+from levelstride.stability.courant import CourantLimit, courant_limit
+from levelstride.stability.spectrum import sampled_wavenumbers
+from levelstride.stability.step_limit import SCAN_RATIO, Bracket, StepSearch
+from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
+from levelstride.stability.wave_problem import WaveProblem
+from levelstride.tableaux.tableau import Tableau
+
+LONGEST_STEP_S = 1.0e4
+"""Step up to which is scanned [s]; longer ones are of no use to a model of the weather."""
+
+SAME = 1.001
+"""Limits within this factor bind together: the width of the bisection."""
+
+GROWTH_SHARE = 1e-3
+"""Own growth below this share of the strictest tolerated growth is round-off."""
+
+WINDOW_REACH = 4.0
+"""How far beyond the limit windows of stability are looked for, as a factor."""
+
+
+@dataclass(frozen=True, eq=False)
+class StableStep:
+    """Longest stable step for one tolerance.
+
+    Attributes
+    ----------
+    step_s : float or None
+        None if nothing bites [s].
+    bracket : Bracket or None
+        Spectrum and transient criterion, None if these do not bite.
+    courant : CourantLimit or None
+        Courant criterion, None if it does not bite.
+    courant_air : str
+        Air state of the Courant limit.
+    """
+
+    step_s: float | None
+    bracket: Bracket | None
+    courant: CourantLimit | None
+    courant_air: str = ""
+
+    @property
+    def courant_binds(self) -> bool:
+        """Whether the Courant criterion crosses within the bisection of the limit."""
+        return (
+            self.courant is not None
+            and self.step_s is not None
+            and self.courant.step_s <= SAME * self.step_s
+        )
+
+    @property
+    def waves_bind(self) -> bool:
+        """Whether spectrum or transient criterion cross within the bisection of the limit."""
+        return (
+            self.bracket is not None
+            and self.step_s is not None
+            and self.bracket.low <= SAME * self.step_s
+        )
+
+
+class ColumnVerdict:
+    """Searches over one column for one splitting and tableau; what is learnt serves all of them.
+
+    Parameters
+    ----------
+    column : Column
+    splitting : Splitting
+    tableau : Tableau
+    largest_s : float
+        Step up to which is scanned [s].
+    """
+
+    def __init__(
+        self,
+        column: Column,
+        splitting: Splitting,
+        tableau: Tableau,
+        largest_s: float = LONGEST_STEP_S,
+    ) -> None:
+        self.column, self.splitting, self.tableau = column, splitting, tableau
+        self.largest_s = largest_s
+        self._problems: dict[tuple[int, float], WaveProblem] = {}
+        kappas = [float(kappa) for kappa in sampled_wavenumbers(column.horizontal)]
+        self.search = StepSearch(self.problem, len(column.airs), kappas, largest_s)
+
+    def problem(self, air: int, kappa: float) -> WaveProblem:
+        """Return the problem of one air state and wave, always the same object."""
+        key = (air, kappa)
+        if key not in self._problems:
+            self._problems[key] = WaveProblem(
+                self.column, self.column.airs[air], self.splitting, self.tableau, kappa
+            )
+        return self._problems[key]
+
+    def stable_step(self, tolerance: Tolerance) -> StableStep:
+        """Longest step that keeps all three criteria.
+
+        Raises
+        ------
+        CalculationError
+            If no step does, however short.
+        """
+        courant, courant_air = self._courant(tolerance)
+        largest = self.largest_s
+        if courant is not None:
+            largest = min(largest, SAME * courant.step_s)
+        bracket = self._bracket(lambda problem, dt: problem.stable(dt, tolerance), largest)
+        steps = [limit.step_s for limit in [courant] if limit is not None]
+        steps += [found.low for found in [bracket] if found is not None]
+        return StableStep(min(steps, default=None), bracket, courant, courant_air)
+
+    @staticmethod
+    def grows_by_itself(problem: WaveProblem) -> bool:
+        """Whether the semi-discrete operator grows at this wave, round-off aside."""
+        return problem.facts.own_growth * STANDARD_EFOLDINGS_S[0] > GROWTH_SHARE
+
+    def strict_step(self) -> float | None:
+        """Longest step with no radius beyond one but for round-off; None if none or no limit."""
+        if any(self.grows_by_itself(problem) for problem in self.search.problems()):
+            return None
+        try:
+            bracket = self._bracket(lambda problem, dt: problem.strict(dt), self.largest_s)
+        except CalculationError:
+            return None
+        return bracket.low if bracket else None
+
+    def windows(self, limit: StableStep, tolerance: Tolerance) -> list[tuple[float, float]]:
+        """Runs of steps beyond the first loss at which every wave is stable again."""
+        if limit.bracket is None or limit.step_s is None or limit.courant_binds:
+            return []
+        worst = limit.bracket.problem
+        others = sorted(self.search.problems(), key=lambda problem: problem is not worst)
+        most = min(WINDOW_REACH * limit.step_s, self.largest_s)
+        if limit.courant is not None:
+            most = min(most, limit.courant.step_s)
+        found: list[tuple[float, float]] = []
+        dt, last = limit.bracket.high * SCAN_RATIO, 0.0
+        while dt <= most:
+            if all(problem.stable(dt, tolerance) for problem in others):
+                start = found.pop()[0] if found and last == found[-1][1] else dt
+                found.append((start, dt))
+                last = dt
+            else:
+                last = 0.0
+            dt *= SCAN_RATIO
+        return found
+
+    def explicit_rate(self) -> float:
+        """Largest |eigenvalue| of the partner pairs with an explicit member [1/s]."""
+        largest = 0.0
+        for problem in self.search.problems():
+            pairs = problem.explicit_pairs()
+            size = float(np.linalg.norm(pairs, 2)) if np.any(pairs) else 0.0
+            if size > 0 and np.linalg.norm(pairs + pairs.conj().T) > 1e-12 * size:
+                size = float(np.abs(np.linalg.eigvals(pairs)).max())
+            largest = max(largest, size)
+        return largest
+
+    def _bracket(
+        self, holds: Callable[[WaveProblem, float], bool], largest_s: float
+    ) -> Bracket | None:
+        self.search.largest_s = largest_s
+        return self.search.run(holds)
+
+    def _courant(self, tolerance: Tolerance) -> tuple[CourantLimit | None, str]:
+        best: tuple[CourantLimit | None, str] = (None, "")
+        for air in self.column.airs:
+            limit = courant_limit(
+                self.column, air, self.splitting, self.tableau, tolerance.rate, self.largest_s
+            )
+            if limit is not None and (best[0] is None or limit.step_s < best[0].step_s):
+                best = (limit, air.name)
+        return best

@@ -1,0 +1,217 @@
+"""One wave of one air state under one splitting and tableau: is this step bounded?"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import lru_cache, partial
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from levelstride.column.air import Background
+from levelstride.column.column import Column
+from levelstride.errors import CalculationError
+from levelstride.operator.bands import Banded, total
+from levelstride.operator.energy import energy_weights
+from levelstride.operator.setting import layout_of
+from levelstride.operator.terms import CATALOGUE, assemble
+from levelstride.operator.wave import Wave
+from levelstride.splitting.parts import Parts, sort_terms
+from levelstride.splitting.splitting import Splitting
+from levelstride.stability.amplification import growth_rate, step_matrix
+from levelstride.stability.own_growth import OperatorFacts
+from levelstride.stability.powers import PowerNorms, bounded, power_peak, radius_within
+from levelstride.stability.tolerance import LOG_STRICT, Tolerance
+from levelstride.tableaux.tableau import Tableau
+
+Matrix = NDArray[Any]
+
+KEEP_POWERS_UP_TO = 220
+"""Unknowns beyond which the last power of each examined step is dropped to save memory."""
+
+
+@dataclass(frozen=True, eq=False)
+class WaveTerms:
+    """Everything about one wave that does not depend on the splitting.
+
+    Attributes
+    ----------
+    kappa : float
+        Wavenumber along one axis [1/m].
+    terms, on_reference : dict of str to Banded
+        Terms on the air and on the reference, in energy coordinates.
+    facts : OperatorFacts
+    """
+
+    kappa: float
+    terms: dict[str, Banded]
+    on_reference: dict[str, Banded]
+    facts: OperatorFacts
+
+
+@lru_cache(maxsize=512)
+def wave_terms(column: Column, air: Background, kappa: float) -> WaveTerms:
+    """Assemble the terms of one wave and examine the operator they add up to."""
+    wave = Wave(kappa, column.horizontal)
+    layout = layout_of(column)
+    scale = np.sqrt(energy_weights(column, air, layout))
+    terms = assemble(column, air, wave)
+    scaled = {name: matrix.similar(scale) for name, matrix in terms.items()}
+    on_reference = scaled
+    if column.reference is not None:
+        built = assemble(column, column.reference, wave)
+        on_reference = {name: matrix.similar(scale) for name, matrix in built.items()}
+    longest = 10 * max(column.advice.efolding_s, Tolerance.LONGEST_EFOLDING_S)
+    facts = OperatorFacts(total(layout.size, scaled.values()).to_dense(), longest)
+    return WaveTerms(kappa, scaled, on_reference, facts)
+
+
+def lowest_log_limit(tolerance: Tolerance) -> float:
+    """Logarithm of the power norm tolerated where exp(t L) does not grow."""
+    return float(np.log(tolerance.transient_limit))
+
+
+class WaveProblem:
+    """One wave of one air state, with everything learnt about its steps kept.
+
+    Parameters
+    ----------
+    column : Column
+    air : Background
+        The air state.
+    splitting : Splitting
+    tableau : Tableau
+    kappa : float
+        Wavenumber along one axis [1/m].
+    """
+
+    def __init__(
+        self,
+        column: Column,
+        air: Background,
+        splitting: Splitting,
+        tableau: Tableau,
+        kappa: float,
+    ) -> None:
+        self.air, self.tableau, self.splitting, self.kappa = air, tableau, splitting, kappa
+        self.wave_terms = wave_terms(column, air, kappa)
+        self.parts: Parts = sort_terms(
+            splitting, self.wave_terms.terms, self.wave_terms.on_reference, layout_of(column)
+        )
+        self._norms: dict[float, PowerNorms | None] = {}
+        self._growth: dict[float, float] = {}
+        self._peaks: dict[tuple[float, Tolerance], float] = {}
+
+    @property
+    def facts(self) -> OperatorFacts:
+        """Growth and size of the semi-discrete operator."""
+        return self.wave_terms.facts
+
+    @property
+    def slow_rate(self) -> float:
+        """Bound on the rates of what is not implicit in the stages [1/s]."""
+        rest = self.parts.slow + self.parts.after
+        if not rest.offsets:
+            return 0.0
+        size = np.abs(rest.to_dense())
+        return float(np.sqrt(size.sum(0).max() * size.sum(1).max()))
+
+    def matrix(self, dt: float) -> Matrix:
+        """R(dt) in energy coordinates, shape (nstate, nstate)."""
+        return step_matrix(self.parts, self.tableau, dt)
+
+    def rate(self, tolerance: Tolerance) -> float:
+        """Growth rate tolerated at this wave, own growth included [1/s]."""
+        return tolerance.rate + self.facts.own_growth
+
+    def log_limit(self, tolerance: Tolerance) -> float:
+        """Logarithm of the largest power norm tolerated at this wave."""
+        peak = self.facts.log_exponential_peak(self.rate(tolerance))
+        return lowest_log_limit(tolerance) + peak
+
+    def norms(self, dt: float) -> PowerNorms | None:
+        """Power norms at this step; None where a stage has no solution."""
+        if dt not in self._norms:
+            try:
+                self._norms[dt] = PowerNorms(partial(self.matrix, dt))
+            except CalculationError:
+                self._norms[dt] = None
+        return self._norms[dt]
+
+    def growth(self, dt: float) -> float:
+        """Growth rate by dense eigenvalues [1/s]; inf where a stage has no solution."""
+        if dt not in self._growth:
+            try:
+                self._growth[dt] = growth_rate(self.matrix(dt), dt)
+            except CalculationError:
+                self._growth[dt] = np.inf
+        return self._growth[dt]
+
+    def stable(self, dt: float, tolerance: Tolerance) -> bool:
+        """Whether the step keeps both the spectrum and the transient criterion.
+
+        Power norms decide where they can, being rigorous; dense eigenvalues and exact power norms
+        where they cannot.
+        """
+        norms = self.norms(dt)
+        if norms is None:
+            return False
+        # exp(t L) only raises the limit, so it is followed only where the lowest one is exceeded
+        for log_limit in (lowest_log_limit, self.log_limit):
+            decided = bounded(
+                norms,
+                self.parts.layout.size,
+                dt,
+                self.rate(tolerance),
+                log_limit(tolerance),
+                tolerance.horizon,
+            )
+            if decided:
+                break
+        self._forget(norms)
+        if decided is not None:
+            return decided
+        return self.growth(dt) <= self.rate(tolerance) and not self.transient_broken(dt, tolerance)
+
+    def strict(self, dt: float) -> bool:
+        """Whether the spectral radius is at most one, but for round-off."""
+        norms = self.norms(dt)
+        if norms is None:
+            return False
+        decided = radius_within(norms, LOG_STRICT)
+        self._forget(norms)
+        return decided if decided is not None else self.growth(dt) * dt <= LOG_STRICT
+
+    def violated(self, dt: float, tolerance: Tolerance) -> tuple[str, ...]:
+        """Criteria that the step breaks, by dense eigenvalues and exact power norms."""
+        broken = ["spectrum"] if self.growth(dt) > self.rate(tolerance) else []
+        if self.transient_broken(dt, tolerance):
+            broken.append("transient")
+        return tuple(broken)
+
+    def transient_broken(self, dt: float, tolerance: Tolerance) -> bool:
+        """Whether a power of R exceeds the tolerated norm, by exact norms."""
+        key = (dt, tolerance)
+        if key not in self._peaks:
+            try:
+                matrix = self.matrix(dt)
+            except CalculationError:
+                return True
+            peak = power_peak(matrix, dt, self.rate(tolerance), tolerance.horizon)
+            self._peaks[key] = peak.log_value
+        return self._peaks[key] > self.log_limit(tolerance)
+
+    def explicit_pairs(self) -> Matrix:
+        """The operator made of all partner pairs with an explicit member, dense."""
+        chosen = set()
+        for name, term in CATALOGUE.items():
+            if term.partner and self.splitting.treatment[name] == "explicit":
+                chosen |= {name, term.partner}
+        return total(
+            self.parts.layout.size, (self.wave_terms.terms[name] for name in sorted(chosen))
+        ).to_dense()
+
+    def _forget(self, norms: PowerNorms) -> None:
+        if self.parts.layout.size > KEEP_POWERS_UP_TO:
+            norms.forget()

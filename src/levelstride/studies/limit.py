@@ -1,0 +1,257 @@
+"""How long a step one tableau and splitting carry on a column, and what bites."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import replace
+from functools import lru_cache
+
+import numpy as np
+
+from levelstride.column.column import Column, LowestSlopeGradient
+from levelstride.errors import CalculationError
+from levelstride.results.dataset import Bites, Limit, OwnGrowth, StepAtTolerance, Window
+from levelstride.results.wording import number
+from levelstride.splitting.splitting import Splitting, resolve
+from levelstride.stability.bites import anatomy, critical_state
+from levelstride.stability.courant import CourantLimit
+from levelstride.stability.own_growth import cause_of_growth
+from levelstride.stability.step_limit import SCAN_RATIO, Bracket
+from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
+from levelstride.stability.verdict import ColumnVerdict, StableStep
+from levelstride.stability.wave_problem import WaveProblem
+from levelstride.stepper.imex import Stepper
+from levelstride.studies.methods import tableau_of
+from levelstride.tableaux.tableau import Tableau
+
+NO_WIND = "no wind was given, the limit is for air at rest"
+DEFAULT_SPLIT = "sound"
+
+
+def limit(
+    column: Column,
+    *,
+    tableau: str,
+    split: str | Mapping[str, str] | None = None,
+    efolding_s: float | None = None,
+    lowest_slope_gradient: LowestSlopeGradient | None = None,
+) -> Limit:
+    """Find the stable step of one tableau and splitting on a column.
+
+    Parameters
+    ----------
+    column : Column
+    tableau : str
+        Published name, alias or bare form.
+    split : str or mapping, optional
+        Groups and terms joined by ``+``, or term to treatment; by default what the column file
+        says, else ``sound``.
+    efolding_s : float, optional
+        Tolerated e-folding time [s]; by default the column's own.
+    lowest_slope_gradient : {"half", "full"}, optional
+        By default the column's own.
+
+    Returns
+    -------
+    Limit
+
+    Raises
+    ------
+    InputError
+        If a name is unknown.
+    CalculationError
+        If no step is stable, however short.
+
+    Examples
+    --------
+    >>> import levelstride
+    >>> column = levelstride.load("columns/quietmarch_isothermal.toml")
+    >>> found = levelstride.limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy")
+    >>> found.criterion.split("+")[0]
+    'spectrum'
+    """
+    if lowest_slope_gradient is not None:
+        column = replace(column, lowest_slope_gradient=lowest_slope_gradient)
+    splitting = resolve(split if split is not None else column.split or DEFAULT_SPLIT)
+    method = tableau_of(column, tableau)
+    tolerance = Tolerance(efolding_s or column.advice.efolding_s, column.advice.transient_limit)
+    verdict = ColumnVerdict(column, splitting, method)
+    strict = verdict.strict_step()
+    found = verdict.stable_step(tolerance)
+    return Limit(
+        tableau=method.name,
+        split=splitting.name,
+        stable_step_s=found.step_s,
+        unbounded=found.step_s is None,
+        scanned_to_s=verdict.largest_s,
+        strict_step_s=strict,
+        stable_step_by_efolding=_by_efolding(verdict, tolerance, found),
+        criterion=_criterion(found, tolerance),
+        explicit_share=_explicit_share(verdict, found),
+        gain=_gain(column, splitting, method, tolerance, found),
+        bites=_bites(column, found, tolerance),
+        certified=_certified(found, tolerance, verdict),
+        efolding_s=tolerance.efolding_s,
+        growth_per_step=float(np.expm1(found.step_s * tolerance.rate)) if found.step_s else None,
+        air=_binding_air(found),
+        lowest_slope_gradient=column.lowest_slope_gradient if np.any(column.slope_f) else None,
+        own_growth=_own_growth(verdict),
+        windows=tuple(
+            Window(from_s=low, to_s=high) for low, high in verdict.windows(found, tolerance)
+        ),
+        path=_path(verdict),
+        couples_columns={"horizontal-pressure-gradient", "horizontal-divergence"}
+        <= splitting.implicit,
+        wind_note=None if column.wind_given else NO_WIND,
+    )
+
+
+def _by_efolding(
+    verdict: ColumnVerdict, tolerance: Tolerance, found: StableStep
+) -> tuple[StepAtTolerance, ...]:
+    steps = []
+    for efolding_s in STANDARD_EFOLDINGS_S:
+        step = found.step_s
+        if efolding_s != tolerance.efolding_s:
+            step = verdict.stable_step(replace(tolerance, efolding_s=efolding_s)).step_s
+        steps.append(StepAtTolerance(efolding_s=efolding_s, stable_step_s=step))
+    return tuple(steps)
+
+
+def _criterion(found: StableStep, tolerance: Tolerance) -> str:
+    named: list[str] = []
+    if found.waves_bind and found.bracket is not None:
+        named += found.bracket.problem.violated(found.bracket.high, tolerance)
+    if found.courant_binds:
+        named.append("courant")
+    return "+".join(named) or "none"
+
+
+def _explicit_share(verdict: ColumnVerdict, found: StableStep) -> float | None:
+    rate, reach = verdict.explicit_rate(), verdict.tableau.imaginary_axis_limit
+    if found.step_s is None or rate == 0.0 or reach == 0.0:
+        return None
+    return found.step_s * rate / reach
+
+
+def _gain(
+    column: Column,
+    splitting: Splitting,
+    tableau: Tableau,
+    tolerance: Tolerance,
+    found: StableStep,
+) -> float | None:
+    if found.step_s is None:
+        return None
+    if not splitting.implicit or tableau.kind == "explicit":
+        return 1.0
+    baseline = all_explicit_step(column, tableau, tolerance)
+    return found.step_s / baseline if baseline else None
+
+
+@lru_cache(maxsize=256)
+def all_explicit_step(column: Column, tableau: Tableau, tolerance: Tolerance) -> float | None:
+    """Stable step of the tableau's explicit part on the whole operator [s]; None if none."""
+    verdict = ColumnVerdict(column, resolve("all-explicit"), tableau)
+    try:
+        return verdict.stable_step(tolerance).step_s
+    except CalculationError:
+        return None
+
+
+def _binding_air(found: StableStep) -> str:
+    if found.waves_bind and found.bracket is not None:
+        return found.bracket.problem.air.name
+    return found.courant_air if found.courant_binds else ""
+
+
+def _bites(column: Column, found: StableStep, tolerance: Tolerance) -> Bites | None:
+    if found.waves_bind and found.bracket is not None:
+        return _wave_bites(column, found.bracket, tolerance)
+    if found.courant_binds and found.courant is not None:
+        return _row_bites(column, found.courant)
+    return None
+
+
+def _wave_bites(column: Column, bracket: Bracket, tolerance: Tolerance) -> Bites:
+    problem = bracket.problem
+    state = critical_state(problem, bracket.low, tolerance)
+    where = anatomy(problem, state.basis)
+    faces = column.levels.interfaces_m
+    return Bites(
+        wavenumber_per_m=problem.kappa,
+        growth_per_s=state.growth_per_s,
+        kind=max(where.kind_share, key=lambda kind: where.kind_share[kind]),
+        layer_lowest=where.layer_lowest,
+        layer_highest=where.layer_highest,
+        bottom_m=float(faces[where.layer_lowest]),
+        top_m=float(faces[where.layer_highest + 1]),
+        energy_share=where.energy_share,
+        kind_share=where.kind_share,
+        wavelength_layers=where.wavelength_layers,
+        wavelength_m=2 * np.pi / problem.kappa,
+        period_s=state.period_s,
+    )
+
+
+def _row_bites(column: Column, courant: CourantLimit) -> Bites:
+    faces = column.levels.interfaces_m
+    return Bites(
+        wavenumber_per_m=courant.kappa,
+        growth_per_s=courant.rate_per_s,
+        kind=courant.kind,
+        layer_lowest=courant.layer,
+        layer_highest=courant.layer,
+        bottom_m=float(faces[courant.layer]),
+        top_m=float(faces[courant.layer + 1]),
+        energy_share={courant.field: 1.0},
+        wavelength_m=2 * np.pi / courant.kappa if courant.kappa > 0 else None,
+    )
+
+
+def _certified(found: StableStep, tolerance: Tolerance, verdict: ColumnVerdict) -> str:
+    scan = (
+        f"every sampled wave scanned from {number(1e-3)} of the fastest rate upward and checked "
+        f"again at the limit, the binding one at ratio {SCAN_RATIO} below it; narrower windows of "
+        "instability can be missed"
+    )
+    if found.step_s is None:
+        return f"power norms up to {number(verdict.largest_s)} s; {scan}"
+    if not found.waves_bind or found.bracket is None:
+        return f"symbols of every frozen row on both sides of the limit; {scan}"
+    low, high, problem = found.bracket.low, found.bracket.high, found.bracket.problem
+    rate = problem.rate(tolerance)
+    below, above = problem.growth(low), problem.growth(high)
+    if below <= rate < above:
+        return (
+            f"dense eigenvalues at wavenumber {problem.kappa:.4g} 1/m: growth {below:.3g} 1/s at "
+            f"{low:.6g} s, {above:.3g} 1/s at {high:.6g} s, {rate:.3g} 1/s tolerated; {scan}"
+        )
+    return (
+        f"energy norms of powers of the step matrix at wavenumber {problem.kappa:.4g} 1/m on both "
+        f"sides of the limit, {low:.6g} s and {high:.6g} s; {scan}"
+    )
+
+
+def _own_growth(verdict: ColumnVerdict) -> tuple[OwnGrowth, ...]:
+    """The fastest own growth of each air state, if any, with its cause."""
+    worst: dict[str, WaveProblem] = {}
+    for problem in verdict.search.problems():
+        air = problem.air.name
+        grows = verdict.grows_by_itself(problem)
+        if grows and (air not in worst or problem.facts.own_growth > worst[air].facts.own_growth):
+            worst[air] = problem
+    return tuple(
+        OwnGrowth(
+            air=air,
+            wavenumber_per_m=problem.kappa,
+            growth_per_s=problem.facts.own_growth,
+            cause=cause_of_growth(problem.wave_terms.terms, verdict.column, problem.air),
+        )
+        for air, problem in worst.items()
+    )
+
+
+def _path(verdict: ColumnVerdict) -> str:
+    problem = verdict.search.problems()[0]
+    return str(Stepper(problem.parts, verdict.tableau, 1.0).path)
