@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.linalg import eig
 
-from levelstride.accuracy.wave_basis import WaveBasis, wave_basis
+from levelstride.operator.wave_basis import WaveBasis, wave_basis
 from levelstride.column.air import Background
 from levelstride.column.column import Column
 from levelstride.operator.bands import Banded, total

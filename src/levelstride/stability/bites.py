@@ -8,10 +8,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from levelstride.operator.bands import total
 from levelstride.operator.state import FIELDS, Layout
-from levelstride.operator.terms import CATALOGUE
-from levelstride.operator.wave_kinds import KINDS, wave_kinds
+from levelstride.operator.wave_basis import KINDS, wave_basis
 from levelstride.stability.powers import power_peak
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem
@@ -133,20 +131,13 @@ def anatomy(problem: WaveProblem, basis: Matrix) -> Anatomy:
 
 
 def _kind_shares(problem: WaveProblem, basis: Matrix) -> dict[str, float]:
-    """Energy on the normal modes of the windless, undamped column, by kind.
-
-    Where air is unstably stratified the skew part of the operator stands in for it.
-    """
-    layout = problem.parts.layout
-    pairs = [problem.wave_terms.terms[n] for n, term in CATALOGUE.items() if term.partner]
-    operator = total(layout.size, pairs).to_dense()
-    skew = (operator - operator.conj().T) / 2
-    frequency, modes = np.linalg.eigh(1j * skew)
-    kinds = wave_kinds(frequency, layout)
-    energy = (np.abs(modes.conj().T @ basis) ** 2).sum(axis=1)
+    """Energy on the normal modes of the windless, undamped column, by kind."""
+    found = problem.wave_terms
+    waves = wave_basis(found.terms, problem.parts.layout, found.weights)
+    energy = (np.abs(waves.vectors.conj().T @ basis) ** 2).sum(axis=1)
     energy /= energy.sum()
-    shares = {kind: float(energy[kinds == kind].sum()) for kind in KINDS}
-    return {kind: share for kind, share in shares.items() if np.any(kinds == kind)}
+    shares = {kind: float(energy[waves.kind == kind].sum()) for kind in KINDS}
+    return {kind: share for kind, share in shares.items() if np.any(waves.kind == kind)}
 
 
 def _energy_by_layer(layout: Layout, energy: NDArray[np.float64]) -> NDArray[np.float64]:

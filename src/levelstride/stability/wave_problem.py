@@ -42,12 +42,15 @@ class WaveTerms:
     terms, on_reference : dict of str to Banded
         Terms on the air and on the reference, in energy coordinates.
     facts : OperatorFacts
+    weights : ndarray, shape (nstate,)
+        Energy weights.
     """
 
     kappa: float
     terms: dict[str, Banded]
     on_reference: dict[str, Banded]
     facts: OperatorFacts
+    weights: NDArray[np.float64]
 
 
 @lru_cache(maxsize=512)
@@ -55,7 +58,8 @@ def wave_terms(column: Column, air: Background, kappa: float) -> WaveTerms:
     """Assemble the terms of one wave and examine the operator they add up to."""
     wave = Wave(kappa, column.horizontal)
     layout = layout_of(column)
-    scale = np.sqrt(energy_weights(column, air, layout))
+    weights = energy_weights(column, air, layout)
+    scale = np.sqrt(weights)
     terms = assemble(column, air, wave)
     scaled = {name: matrix.similar(scale) for name, matrix in terms.items()}
     on_reference = scaled
@@ -64,7 +68,7 @@ def wave_terms(column: Column, air: Background, kappa: float) -> WaveTerms:
         on_reference = {name: matrix.similar(scale) for name, matrix in built.items()}
     longest = 10 * max(column.advice.efolding_s, Tolerance.LONGEST_EFOLDING_S)
     facts = OperatorFacts(total(layout.size, scaled.values()).to_dense(), longest)
-    return WaveTerms(kappa, scaled, on_reference, facts)
+    return WaveTerms(kappa, scaled, on_reference, facts, weights)
 
 
 def lowest_log_limit(tolerance: Tolerance) -> float:

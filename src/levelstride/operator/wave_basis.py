@@ -15,6 +15,9 @@ from levelstride.operator.state import Index, Layout
 Array = NDArray[np.float64]
 Matrix = NDArray[Any]
 
+KINDS = ("sound", "Lamb", "gravity", "computational", "vortical")
+"""Kinds of waves; the computational one is the zero mode of the Lorenz staggering."""
+
 FORCES = (
     "vertical-pressure-gradient",
     "buoyancy",
