@@ -19,26 +19,33 @@ Matrix = NDArray[Any]
 LARGEST_EXPONENT = 44
 """Squarings after which the sequence ends; 2^44 steps outlast every tolerance asked for."""
 
+SMALLEST_UNSCALED = 1e-30
+"""Norms between this and its inverse need no scaling before the next product."""
+
 LOG_CONDITION = 30.0
 """ln of the largest departure from normality that power norms are trusted to tell from growth."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class ScaledMatrix:
-    """A matrix times exp(log_scale), so that no power overflows."""
+    """A matrix times exp(log_scale), so that no power overflows, and ln of its Frobenius norm."""
 
     matrix: Matrix
     log_scale: float
+    log_frobenius: float
 
     @classmethod
     def of(cls, matrix: Matrix, log_scale: float = 0.0) -> ScaledMatrix:
-        """Bring the matrix to unit Frobenius norm."""
+        """Measure the Frobenius norm; bring it to one where it strays far from that."""
         norm = float(np.linalg.norm(matrix))
         if not np.isfinite(norm):
-            return cls(matrix, np.inf)
+            return cls(matrix, log_scale, np.inf)
         if norm == 0.0:
-            return cls(matrix, -np.inf)
-        return cls(matrix / norm, log_scale + np.log(norm))
+            return cls(matrix, log_scale, -np.inf)
+        log_frobenius = log_scale + np.log(norm)
+        if SMALLEST_UNSCALED < norm < 1 / SMALLEST_UNSCALED:
+            return cls(matrix, log_scale, log_frobenius)
+        return cls(matrix / norm, log_frobenius, log_frobenius)
 
     def times(self, other: ScaledMatrix) -> ScaledMatrix:
         """Return the product."""
@@ -66,7 +73,7 @@ class PowerNorms:
     def __init__(self, make: Callable[[], Matrix]) -> None:
         self._make = make
         self._power: ScaledMatrix | None = ScaledMatrix.of(make())
-        self.logs = [self._power.log_scale]
+        self.logs = [self._power.log_frobenius]
 
     def forget(self) -> None:
         """Drop the last power; norms asked for later are computed from the start."""
@@ -85,7 +92,7 @@ class PowerNorms:
                 for _ in self.logs[1:]:
                     self._power = self._power.times(self._power)
             self._power = self._power.times(self._power)
-            self.logs.append(self._power.log_scale)
+            self.logs.append(self._power.log_frobenius)
         return self.logs[k] if k < len(self.logs) else None
 
 

@@ -18,6 +18,9 @@ BISECTION = 1.001
 FIRST_STEP = 1e-3
 """First step scanned, over the largest |eigenvalue| of the whole operator."""
 
+STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 12, 4
+"""Steps of the scan from one look to the next in the three regimes of ``_strides``."""
+
 SMALLEST_FIRST_STEP = 1e-12
 """First step [s] below which a tableau counts as unstable however short the step."""
 
@@ -71,8 +74,15 @@ class StepSearch:
         every = [self._make(air, k) for air in range(self._nair) for k in self.kappas[air]]
         return sorted(every, key=lambda problem: -problem.slow_rate)
 
-    def run(self, holds: Criterion) -> Bracket | None:
-        """Find the limit, refining the wavenumbers around the worst ones.
+    def run(self, holds: Criterion, *, refine: bool = True) -> Bracket | None:
+        """Find the limit.
+
+        Parameters
+        ----------
+        holds : callable
+            Whether a wave keeps the criterion at a step.
+        refine : bool
+            Whether to add wavenumbers around the worst ones.
 
         Returns
         -------
@@ -84,11 +94,11 @@ class StepSearch:
         CalculationError
             If it fails at every step, however short.
         """
-        pass_ = _Pass(self, holds)
+        pass_ = _Pass(self, holds, NEAR_MINIMUM if refine else 1.0)
         pass_.cover(self.problems())
         if pass_.best is None:
             return None
-        for air in range(self._nair):
+        for air in range(self._nair) if refine else ():
             self._add_longer(pass_, air)
             self._refine(pass_, air)
         pass_.fill_below()
@@ -140,8 +150,8 @@ class StepSearch:
 class _Pass:
     """One criterion carried over the waves; keeps the smallest limit found."""
 
-    def __init__(self, search: StepSearch, holds: Criterion) -> None:
-        self._largest_s, self._holds = search.largest_s, holds
+    def __init__(self, search: StepSearch, holds: Criterion, reach: float) -> None:
+        self._largest_s, self._holds, self._reach = search.largest_s, holds, reach
         self.best: Bracket | None = None
         self._limits: dict[int, float] = {}
         self._start = self._first_step(search.problems())
@@ -168,7 +178,7 @@ class _Pass:
         for problem in problems:
             cap = self._largest_s
             if self.best is not None:
-                cap = min(cap, NEAR_MINIMUM * self.best.low)
+                cap = min(cap, self._reach * self.best.low)
             self._note(problem, self._first_failure(problem, cap))
 
     def _note(self, problem: WaveProblem, bracket: Bracket | None) -> None:
@@ -238,10 +248,10 @@ def _strides(problem: WaveProblem, start: float, cap: float) -> Iterable[float]:
     while step < cap:
         yield step
         if step * fastest < 0.3:
-            stride = 47
+            stride = STRIDE_SHORT
         elif step * slow < 0.15:
-            stride = 8
+            stride = STRIDE_STIFF
         else:
-            stride = 3
+            stride = STRIDE_DENSE
         step *= SCAN_RATIO**stride
     yield cap

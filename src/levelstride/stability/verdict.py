@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -104,8 +103,14 @@ class ColumnVerdict:
             )
         return self._problems[key]
 
-    def stable_step(self, tolerance: Tolerance) -> StableStep:
+    def stable_step(self, tolerance: Tolerance, *, refine: bool = True) -> StableStep:
         """Longest step that keeps all three criteria.
+
+        Parameters
+        ----------
+        tolerance : Tolerance
+        refine : bool
+            Whether to add wavenumbers around the worst ones.
 
         Raises
         ------
@@ -116,7 +121,8 @@ class ColumnVerdict:
         largest = self.largest_s
         if courant is not None:
             largest = min(largest, SAME * courant.step_s)
-        bracket = self._bracket(lambda problem, dt: problem.stable(dt, tolerance), largest)
+        self.search.largest_s = largest
+        bracket = self.search.run(lambda problem, dt: problem.stable(dt, tolerance), refine=refine)
         steps = [limit.step_s for limit in [courant] if limit is not None]
         steps += [found.low for found in [bracket] if found is not None]
         return StableStep(min(steps, default=None), bracket, courant, courant_air)
@@ -131,7 +137,8 @@ class ColumnVerdict:
         if any(self.grows_by_itself(problem) for problem in self.search.problems()):
             return None
         try:
-            bracket = self._bracket(lambda problem, dt: problem.strict(dt), self.largest_s)
+            self.search.largest_s = self.largest_s
+            bracket = self.search.run(lambda problem, dt: problem.strict(dt), refine=False)
         except CalculationError:
             return None
         return bracket.low if bracket else None
@@ -167,12 +174,6 @@ class ColumnVerdict:
                 size = float(np.abs(np.linalg.eigvals(pairs)).max())
             largest = max(largest, size)
         return largest
-
-    def _bracket(
-        self, holds: Callable[[WaveProblem, float], bool], largest_s: float
-    ) -> Bracket | None:
-        self.search.largest_s = largest_s
-        return self.search.run(holds)
 
     def _courant(self, tolerance: Tolerance) -> tuple[CourantLimit | None, str]:
         best: tuple[CourantLimit | None, str] = (None, "")

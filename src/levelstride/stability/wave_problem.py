@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import lru_cache, partial
+from functools import cached_property, lru_cache, partial
 from typing import Any
 
 import numpy as np
@@ -21,7 +21,13 @@ from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.amplification import growth_rate, step_matrix
 from levelstride.stability.own_growth import OperatorFacts
-from levelstride.stability.powers import PowerNorms, bounded, power_peak, radius_within
+from levelstride.stability.powers import (
+    LOG_CONDITION,
+    PowerNorms,
+    bounded,
+    power_peak,
+    radius_within,
+)
 from levelstride.stability.tolerance import LOG_STRICT, Tolerance
 from levelstride.tableaux.tableau import Tableau
 
@@ -112,7 +118,7 @@ class WaveProblem:
         """Growth and size of the semi-discrete operator."""
         return self.wave_terms.facts
 
-    @property
+    @cached_property
     def slow_rate(self) -> float:
         """Bound on the rates of what is not implicit in the stages [1/s]."""
         rest = self.parts.slow + self.parts.after
@@ -161,22 +167,23 @@ class WaveProblem:
         norms = self.norms(dt)
         if norms is None:
             return False
-        # exp(t L) only raises the limit, so it is followed only where the lowest one is exceeded
-        for log_limit in (lowest_log_limit, self.log_limit):
-            decided = bounded(
-                norms,
-                self.parts.layout.size,
-                dt,
-                self.rate(tolerance),
-                log_limit(tolerance),
-                tolerance.horizon,
-            )
-            if decided:
-                break
+        decided = self._bounded(norms, dt, tolerance, lowest_log_limit(tolerance))
+        if decided is not True:
+            # exp(t L) only raises the limit: no need to follow it where growth is beyond doubt
+            beyond_doubt = lowest_log_limit(tolerance) + LOG_CONDITION
+            decided = self._bounded(norms, dt, tolerance, beyond_doubt)
+            if decided is not False:
+                decided = self._bounded(norms, dt, tolerance, self.log_limit(tolerance))
         self._forget(norms)
         if decided is not None:
             return decided
         return self.growth(dt) <= self.rate(tolerance) and not self.transient_broken(dt, tolerance)
+
+    def _bounded(
+        self, norms: PowerNorms, dt: float, tolerance: Tolerance, log_limit: float
+    ) -> bool | None:
+        size, rate = self.parts.layout.size, self.rate(tolerance)
+        return bounded(norms, size, dt, rate, log_limit, tolerance.horizon)
 
     def strict(self, dt: float) -> bool:
         """Whether the spectral radius is at most one, but for round-off."""

@@ -113,7 +113,9 @@ def _by_efolding(
     for efolding_s in STANDARD_EFOLDINGS_S:
         step = found.step_s
         if efolding_s != tolerance.efolding_s:
-            step = verdict.stable_step(replace(tolerance, efolding_s=efolding_s)).step_s
+            step = verdict.stable_step(
+                replace(tolerance, efolding_s=efolding_s), refine=False
+            ).step_s
         steps.append(StepAtTolerance(efolding_s=efolding_s, stable_step_s=step))
     return tuple(steps)
 
