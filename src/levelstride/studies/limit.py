@@ -14,6 +14,7 @@ from levelstride.results.dataset import Bites, Limit, OwnGrowth, StepAtTolerance
 from levelstride.results.wording import number
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.bites import anatomy, critical_state
+from levelstride.stability.blas import on_one_thread
 from levelstride.stability.courant import CourantLimit
 from levelstride.stability.own_growth import cause_of_growth
 from levelstride.stability.step_limit import SCAN_RATIO, Bracket
@@ -28,6 +29,7 @@ NO_WIND = "no wind was given, the limit is for air at rest"
 DEFAULT_SPLIT = "sound"
 
 
+@on_one_thread
 def limit(
     column: Column,
     *,
@@ -101,7 +103,7 @@ def limit(
         ),
         path=_path(verdict),
         couples_columns={"horizontal-pressure-gradient", "horizontal-divergence"}
-        <= splitting.implicit,
+        <= verdict.splitting.implicit,
         wind_note=None if column.wind_given else NO_WIND,
     )
 

@@ -15,6 +15,7 @@ from levelstride.operator.wave import Wave
 from levelstride.results.dataset import Limit
 from levelstride.results.wording import number, percent
 from levelstride.splitting.splitting import Splitting, resolve
+from levelstride.stability.blas import on_one_thread
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem
@@ -68,6 +69,7 @@ class Finding:
     current_stable: bool = False
 
 
+@on_one_thread
 def carry_out(item: WorkItem) -> Finding:
     """Find limit and step of one work item.
 
