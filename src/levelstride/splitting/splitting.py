@@ -41,6 +41,11 @@ class Splitting:
         mapping = {**self.treatment, term: treatment}
         return Splitting(f"{self.name}, {term} {treatment}", MappingProxyType(mapping))
 
+    def without_implicit(self) -> Splitting:
+        """Return it, under its own name, as an explicit tableau takes it: fast terms explicit."""
+        mapping = {**self.treatment, **dict.fromkeys(self.implicit, "explicit")}
+        return Splitting(self.name, MappingProxyType(mapping))
+
 
 def resolve(given: str | Mapping[str, str], *, where: str = "split") -> Splitting:
     """Turn what a user wrote into a splitting.

@@ -1,11 +1,11 @@
 """Frozen-coefficient limits of explicit one-way terms, row by row.
 
 One-way transport on a column is triangular: its eigenvalues know nothing of the Courant limit, and
-a few offending layers hide from power norms too. So every row of the advection and diffusion terms is
-frozen, its symbol taken over all vertical and horizontal phase angles (von Neumann analysis, Hirsch
-2007, Numerical Computation of Internal and External Flows, chapter 7), and the amplification factor
-of the explicit tableau, or of forward Euler for terms taken after the step, is held against the
-tolerated growth.
+a few offending layers hide from power norms too. So every row of the advection and diffusion terms
+is frozen, its symbol taken over all vertical and horizontal phase angles (von Neumann analysis,
+Hirsch 2007, Numerical Computation of Internal and External Flows, chapter 7), and the amplification
+factor of the explicit tableau, or of forward Euler for terms taken after the step, is held against
+the tolerated growth.
 """
 
 from __future__ import annotations
@@ -33,6 +33,7 @@ ANGLES = 33
 """Phase angles from 0 to pi in each direction of the first look; the binding row gets more."""
 
 FINE_ANGLES = 257
+VERTICAL = ("vertical-advection", "vertical-diffusion")
 SCAN_RATIO = 1.05
 BISECTION = 1.0005
 
@@ -73,6 +74,8 @@ class _Rows:
     ----------
     vertical : ndarray, shape (nrow, nstencil)
         Coefficients at vertical offsets ``offsets`` [1/s].
+    mixing : ndarray, shape (nrow, nstencil)
+        What of ``vertical`` is diffusion [1/s].
     wind : ndarray, shape (nrow,)
         Advecting wind, zero where horizontal advection is not in the set [m/s].
     diffuses : bool
@@ -82,19 +85,32 @@ class _Rows:
     index: NDArray[np.intp]
     offsets: NDArray[np.intp]
     vertical: NDArray[np.float64]
+    mixing: NDArray[np.float64]
     wind: NDArray[np.float64]
     diffuses: bool
 
     def symbol(self, column: Column, rows: NDArray[np.intp], angles: int) -> Complex:
         """Symbols, shape (nrow, nkappa, nphi) [1/s]."""
-        phi = np.linspace(-np.pi, np.pi, 2 * angles - 1)
-        if not np.any(self.vertical[rows]):
-            phi = np.zeros(1)
+        phi = self.phases(rows, angles)
         vertical = self.vertical[rows] @ np.exp(1j * np.outer(self.offsets, phi))
         kappas = self.kappas(column, rows, angles)
         horizontal = np.stack([self._horizontal(column, kappa, rows) for kappa in kappas], axis=1)
         total: Complex = horizontal[:, :, None] + vertical[:, None, :]
         return total
+
+    def phases(self, rows: NDArray[np.intp], angles: int) -> NDArray[np.float64]:
+        """Vertical phase angles of the symbol [rad]."""
+        if not np.any(self.vertical[rows]):
+            return np.zeros(1)
+        return np.linspace(-np.pi, np.pi, 2 * angles - 1)
+
+    def mixing_at(self, column: Column, row: int, kappa: float, phi: float) -> complex:
+        """What diffusion contributes to one symbol [1/s]."""
+        value = complex(self.mixing[row] @ np.exp(1j * self.offsets * phi))
+        if self.diffuses:
+            laplacian = Wave(kappa, column.horizontal).laplacian
+            value -= column.horizontal_diffusion * laplacian**column.horizontal_diffusion_order
+        return value
 
     def kappas(self, column: Column, rows: NDArray[np.intp], angles: int) -> NDArray[np.float64]:
         """Horizontal wavenumbers of the symbol [1/m]."""
@@ -158,16 +174,15 @@ def _frozen_rows(
     names = {n for n in splitting.terms(treatment) if CATALOGUE[n].one_way}
     layout = layout_of(column)
     setting = Setting(column, air, Wave(0.0, column.horizontal), layout)
-    vertical = [
-        CATALOGUE[n].build(setting)
-        for n in sorted(names & {"vertical-advection", "vertical-diffusion"})
-    ]
     reach = np.arange(-3, 4)
     every = np.arange(layout.size)
-    coefficients = np.zeros((layout.size, reach.size))
-    for matrix in vertical:
+    stencils = {name: np.zeros((layout.size, reach.size)) for name in VERTICAL}
+    for name in names & stencils.keys():
+        matrix = CATALOGUE[name].build(setting)
         for k, offset in enumerate(reach):
-            coefficients[:, k] += matrix.diagonal(int(offset) * layout.stride).real
+            stencils[name][:, k] = matrix.diagonal(int(offset) * layout.stride).real
+    mixing = stencils["vertical-diffusion"]
+    coefficients = stencils["vertical-advection"] + mixing
     wind = np.zeros(layout.size)
     if "horizontal-advection" in names:
         wind = layout.spread(air.wind_c, air.wind_f[1:-1])
@@ -177,7 +192,7 @@ def _frozen_rows(
     keys = np.round(np.column_stack([coefficients, wind]), 14)
     _, first = np.unique(keys, axis=0, return_index=True)
     kept = every[np.sort(first)]
-    return _Rows(kept, reach, coefficients[kept], wind[kept], diffuses)
+    return _Rows(kept, reach, coefficients[kept], mixing[kept], wind[kept], diffuses)
 
 
 def _limit_of(
@@ -227,17 +242,18 @@ def _describe(
     beyond = 1.001 * step
     growth = np.log(np.maximum(factor(beyond * symbols), 1e-300)) / beyond - own[:, None, None]
     row, i, j = (int(k) for k in np.unravel_index(np.argmax(growth), growth.shape))
-    angles = symbols.shape[1]
-    kappa = float(rows.kappas(column, chosen, angles)[i])
+    kappa = float(rows.kappas(column, chosen, symbols.shape[1])[i])
+    phi = float(rows.phases(chosen, (symbols.shape[2] + 1) // 2)[j])
+    mixing = rows.mixing_at(column, int(chosen[row]), kappa, phi)
     index = int(rows.index[chosen[row]])
     layout = layout_of(column)
-    worst = symbols[row, i, j]
+    transport = symbols[row, i, j] - mixing
     return CourantLimit(
         step_s=float(step),
         field=_field_of(layout, index),
         layer=int(layout.layer_of[index]),
         kappa=kappa,
-        kind="transport" if abs(worst.imag) > abs(worst.real) / 4 else "mixing",
+        kind="transport" if abs(transport) > abs(mixing) else "mixing",
         rate_per_s=float(growth[row, i, j]),
     )
 

@@ -88,6 +88,8 @@ class ColumnVerdict:
         tableau: Tableau,
         largest_s: float = LONGEST_STEP_S,
     ) -> None:
+        if tableau.kind == "explicit":
+            splitting = splitting.without_implicit()
         self.column, self.splitting, self.tableau = column, splitting, tableau
         self.largest_s = largest_s
         self._problems: dict[tuple[int, float], WaveProblem] = {}
