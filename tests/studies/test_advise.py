@@ -193,9 +193,9 @@ def test_pairs_are_named_once_and_an_explicit_method_comes_unsplit(column):
     pairs = pairs_of(column, ["ars232", "ARS(2,3,2)", "RK4"], ["sound", "buoyancy + sound"])
     names = [(tableau.name, splitting.name) for tableau, splitting in pairs]
     assert names == [
+        ("RK4", "all-explicit"),
         ("ARS(2,3,2)", "sound"),
         ("ARS(2,3,2)", "buoyancy+sound"),
-        ("RK4", "all-explicit"),
     ]
 
 

@@ -188,7 +188,17 @@ def _undivided(limit: Limit, ceiling: float, check: Check) -> Choice:
     while step > SHORTEST * ceiling:
         found = check(step)
         if found.failure is None:
-            return Choice(step, None, failure or limit_reason(limit), found)
+            break
         failure = found.failure
         step *= 1 - STRIDE
-    return Choice(None, None, f"no step will do: {failure}", None)
+    else:
+        return Choice(None, None, f"no step will do: {failure}", None)
+    if failure is None:
+        return Choice(step, None, limit_reason(limit), found)
+    for tenths in range(9, 0, -1):
+        closer = check(step * (1 + tenths * STRIDE / 10))
+        if closer.failure is None:
+            step, found = step * (1 + tenths * STRIDE / 10), closer
+            break
+        failure = closer.failure
+    return Choice(step, None, failure, found)

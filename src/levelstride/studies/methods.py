@@ -55,8 +55,9 @@ def pairs_of(
     Returns
     -------
     list of (Tableau, Splitting)
-        Tableau by tableau. An explicit method steps every term alike, so it comes once, with
-        ``all-explicit``.
+        Splitting by splitting: workers that start together then work on different tableaux, and
+        what they learn of one serves its other splittings. An explicit method steps every term
+        alike, so it comes once, with ``all-explicit``.
 
     Raises
     ------
@@ -83,8 +84,10 @@ def pairs_of(
     if not schemes or not splittings:
         raise InputError("advise: nothing to try; name at least one tableau and one splitting")
     unsplit = resolve("all-explicit")
-    return [
+    explicit = [(scheme, unsplit) for scheme in schemes.values() if scheme.kind == "explicit"]
+    return explicit + [
         (scheme, splitting)
+        for splitting in splittings.values()
         for scheme in schemes.values()
-        for splitting in ([unsplit] if scheme.kind == "explicit" else splittings.values())
+        if scheme.kind == "additive"
     ]
