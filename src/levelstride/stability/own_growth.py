@@ -43,9 +43,10 @@ class OperatorFacts:
     """
 
     def __init__(self, operator: Matrix, horizon: float) -> None:
-        self._operator, self._horizon = operator, horizon
+        self._operator: Matrix | None = None  # kept only where exp(t L) may have to be followed
+        self._horizon = horizon
         self._size = float(np.linalg.norm(operator, 2))
-        self.own_growth, self.largest_eigenvalue, self._shrinks = 0.0, self._size, True
+        self.own_growth, self.largest_eigenvalue = 0.0, self._size
         hermitian = (operator + operator.conj().T) / 2
         if np.linalg.norm(hermitian) <= ROUND_OFF * self._size:
             return
@@ -53,11 +54,11 @@ class OperatorFacts:
         self.largest_eigenvalue = float(np.abs(eigenvalues).max())
         if np.linalg.eigvalsh(hermitian)[-1] > ROUND_OFF * self._size:
             self.own_growth = max(0.0, float(eigenvalues.real.max()))
-            self._shrinks = False
+            self._operator = operator
 
     @cached_property
     def _exponential(self) -> tuple[tuple[float, float], ...]:
-        if self._shrinks:
+        if self._operator is None:
             return ()
         return _exponential_norms(self._operator, self._size, self._horizon)
 

@@ -37,11 +37,13 @@ class ScaledMatrix:
     @classmethod
     def of(cls, matrix: Matrix, log_scale: float = 0.0) -> ScaledMatrix:
         """Measure the Frobenius norm; bring it to one where it strays far from that."""
-        norm = float(np.linalg.norm(matrix))
-        if not np.isfinite(norm):
-            return cls(matrix, log_scale, np.inf)
-        if norm == 0.0:
-            return cls(matrix, log_scale, -np.inf)
+        with np.errstate(over="ignore"):
+            norm = float(np.linalg.norm(matrix))
+        if norm == 0.0 or not np.isfinite(norm):
+            largest = float(np.abs(matrix).max())
+            if largest == 0.0 or not np.isfinite(largest):
+                return cls(matrix, log_scale, np.inf if largest else -np.inf)
+            return cls.of(matrix / largest, log_scale + np.log(largest))
         log_frobenius = log_scale + np.log(norm)
         if SMALLEST_UNSCALED < norm < 1 / SMALLEST_UNSCALED:
             return cls(matrix, log_scale, log_frobenius)
@@ -135,6 +137,21 @@ def bounded(
             return None
         previous, k = excess, k + 1
     return None
+
+
+def peak_within(
+    norms: PowerNorms, dt: float, rate: float, log_limit: float, horizon: float
+) -> bool:
+    """Whether the norms prove that no power up to ``horizon`` exceeds the limit; see ``bounded``."""
+    previous, k = 0.0, 0
+    while (log_norm := norms.log_norm(k)) is not None:
+        excess = log_norm - 2.0**k * dt * rate
+        if max(excess, excess + previous if k else excess) > log_limit:
+            return False
+        if 2.0**k * dt >= horizon:
+            return True
+        previous, k = excess, k + 1
+    return False
 
 
 def radius_within(norms: PowerNorms, log_radius: float) -> bool | None:

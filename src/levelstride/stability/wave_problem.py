@@ -33,9 +33,6 @@ from levelstride.tableaux.tableau import Tableau
 
 Matrix = NDArray[Any]
 
-KEEP_POWERS_UP_TO = 220
-"""Unknowns beyond which the last power of each examined step is dropped to save memory."""
-
 
 @dataclass(frozen=True, eq=False)
 class WaveTerms:
@@ -59,7 +56,7 @@ class WaveTerms:
     weights: NDArray[np.float64]
 
 
-@lru_cache(maxsize=512)
+@lru_cache(maxsize=256)
 def wave_terms(column: Column, air: Background, kappa: float) -> WaveTerms:
     """Assemble the terms of one wave and examine the operator they add up to."""
     wave = Wave(kappa, column.horizontal)
@@ -174,10 +171,14 @@ class WaveProblem:
             decided = self._bounded(norms, dt, tolerance, beyond_doubt)
             if decided is not False:
                 decided = self._bounded(norms, dt, tolerance, self.log_limit(tolerance))
-        self._forget(norms)
-        if decided is not None:
-            return decided
-        return self.growth(dt) <= self.rate(tolerance) and not self.transient_broken(dt, tolerance)
+        rate, log_limit = self.rate(tolerance), lowest_log_limit(tolerance)
+        if decided is None:
+            decided = self.growth(dt) <= rate and (
+                peak_within(norms, dt, rate, log_limit, tolerance.horizon)
+                or not self.transient_broken(dt, tolerance)
+            )
+        norms.forget()
+        return decided
 
     def _bounded(
         self, norms: PowerNorms, dt: float, tolerance: Tolerance, log_limit: float
@@ -191,7 +192,7 @@ class WaveProblem:
         if norms is None:
             return False
         decided = radius_within(norms, LOG_STRICT)
-        self._forget(norms)
+        norms.forget()
         return decided if decided is not None else self.growth(dt) * dt <= LOG_STRICT
 
     def violated(self, dt: float, tolerance: Tolerance) -> tuple[str, ...]:
@@ -222,7 +223,3 @@ class WaveProblem:
         return total(
             self.parts.layout.size, (self.wave_terms.terms[name] for name in sorted(chosen))
         ).to_dense()
-
-    def _forget(self, norms: PowerNorms) -> None:
-        if self.parts.layout.size > KEEP_POWERS_UP_TO:
-            norms.forget()
