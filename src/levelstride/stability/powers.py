@@ -142,7 +142,7 @@ def bounded(
 def peak_within(
     norms: PowerNorms, dt: float, rate: float, log_limit: float, horizon: float
 ) -> bool:
-    """Whether the norms prove that no power up to ``horizon`` exceeds the limit; see ``bounded``."""
+    """Whether the norms prove that no power up to ``horizon`` exceeds the limit."""
     previous, k = 0.0, 0
     while (log_norm := norms.log_norm(k)) is not None:
         excess = log_norm - 2.0**k * dt * rate

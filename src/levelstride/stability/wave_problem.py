@@ -25,6 +25,7 @@ from levelstride.stability.powers import (
     LOG_CONDITION,
     PowerNorms,
     bounded,
+    peak_within,
     power_peak,
     radius_within,
 )
