@@ -1,5 +1,7 @@
 import json
 import re
+import subprocess
+import sys
 import tomllib
 from pathlib import Path
 
@@ -147,6 +149,16 @@ def test_a_tableau_of_the_users_own_is_shown_and_an_unknown_one_refused(run, tmp
     code, out, err = run("tableaux", "ars344")
     assert (code, out) == (2, "")
     assert "ARS(3,4,3)" in err
+
+
+def test_a_reader_that_leaves_gets_no_complaint():
+    code = "import sys; from levelstride.cli import main; sys.exit(main())"
+    command = [sys.executable, "-c", code, "schema"]
+    with subprocess.Popen(command, stdout=subprocess.PIPE, stderr=subprocess.PIPE) as process:
+        process.stdout.close()
+        complaint = process.stderr.read()
+    assert process.returncode == 1
+    assert complaint == b""
 
 
 class TestFaults:

@@ -1,6 +1,9 @@
 """The command ``levelstride``: one module per command, none imported before it is wanted."""
 
+import os
+import signal
 import sys
+import threading
 from collections.abc import Sequence
 
 from levelstride import __version__
@@ -34,18 +37,42 @@ def main(arguments: Sequence[str] | None = None) -> int:
     if words == ["--version"]:
         print(__version__)
         return 0
+    keyboard = _Keyboard()
     try:
-        return _run(words)
-    except KeyboardInterrupt:
-        print("levelstride: interrupted, nothing was written", file=sys.stderr)
-        return INTERRUPTED
+        with keyboard:
+            code = _run(words)
+            sys.stdout.flush()
+            return code
     except BrokenPipeError:
-        sys.stderr.close()
+        # Whoever read the output has left; nothing may be flushed to it at the end either.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 1
-    except Exception as error:
+    except (KeyboardInterrupt, Exception) as error:
+        if keyboard.interrupted or isinstance(error, KeyboardInterrupt):
+            print("levelstride: interrupted", file=sys.stderr)
+            return INTERRUPTED
         if debug:
             raise
         return _complain(error)
+
+
+class _Keyboard:
+    """Remembers an interruption, which a library being loaded may turn into another error."""
+
+    interrupted = False
+
+    def __enter__(self) -> None:
+        self._before = None
+        if threading.current_thread() is threading.main_thread():
+            self._before = signal.signal(signal.SIGINT, self._interrupt)
+
+    def __exit__(self, *_: object) -> None:
+        if self._before is not None:
+            signal.signal(signal.SIGINT, self._before)
+
+    def _interrupt(self, *_: object) -> None:
+        self.interrupted = True
+        raise KeyboardInterrupt
 
 
 def _run(words: list[str]) -> int:

@@ -3,6 +3,7 @@
 import multiprocessing
 import os
 import signal
+import threading
 from collections.abc import Iterator
 from concurrent.futures import Executor, ProcessPoolExecutor
 from contextlib import contextmanager
@@ -33,6 +34,9 @@ def processes(workers: int) -> Iterator[Executor]:
         workers, mp_context=multiprocessing.get_context("spawn"), initializer=_prepare
     )
     try:
+        with _deaf_to_the_keyboard():
+            for _ in range(workers):
+                executor.submit(int)
         yield executor
     except BaseException:
         executor.shutdown(wait=False, cancel_futures=True)
@@ -45,13 +49,29 @@ def processes(workers: int) -> Iterator[Executor]:
     executor.shutdown(wait=True)
 
 
+@contextmanager
+def _deaf_to_the_keyboard() -> Iterator[None]:
+    """Ignore interruptions for the moment in which workers are started.
+
+    Workers inherit it and stay deaf from their first instruction on: their parent ends them.
+    """
+    if threading.current_thread() is not threading.main_thread():
+        yield
+        return
+    before = signal.signal(signal.SIGINT, signal.SIG_IGN)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGINT, before)
+
+
 def _prepare() -> None:
-    """Make this worker single-threaded and deaf to the keyboard; its parent ends it."""
+    """Make this worker single-threaded and, where it is not yet, deaf to the keyboard."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     for variable in THREAD_VARIABLES:
         os.environ[variable] = "1"
     import scipy.linalg  # noqa: F401  so that its thread pools exist and can be limited
-    from threadpoolctl import threadpool_limits  # type: ignore[import-untyped]
+    from threadpoolctl import threadpool_limits
 
     threadpool_limits(1)
 
