@@ -32,6 +32,11 @@ def test_without_explicit_terms_nothing_is_evaluated():
     assert (found.evaluations, found.solves, found.exchanges) == (0, 2, 2)
 
 
+def test_with_a_reference_state_what_the_implicit_terms_miss_is_evaluated():
+    found = step_cost(find("ARS(2,3,2)"), resolve("all-implicit"), Advice(), reference=True)
+    assert (found.evaluations, found.solves, found.exchanges) == (3, 2, 5)
+
+
 def test_weights_are_the_users():
     found = cost("ars343", "sound", cost_explicit=2.0, cost_solve=3.0, cost_exchange=0.0)
     assert found.weighted == pytest.approx(4 * 2.0 + 3 * 3.0)

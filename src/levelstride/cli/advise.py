@@ -146,6 +146,8 @@ def _show(found: "Advice", written: tuple[Path, ...]) -> None:
     say(_best_sentence(found), strong=True)
     if found.current is not None:
         say(f"Today: {found.current.verdict}.")
+    for note in _notes(found):
+        say(note)
     if found.wind_note:
         say(f"Note: {found.wind_note}.")
     say(f"Written to {written[0].parent}: {', '.join(path.name for path in written)}")
@@ -208,6 +210,22 @@ def in_lines(split: str) -> str:
             lines.append("")
         lines[-1] += group
     return "\n".join(lines)
+
+
+def _notes(found: "Advice") -> list[str]:
+    """What a reader of the table must know besides: coupled columns and growth by itself."""
+    from levelstride.results.wording import own_growth
+
+    notes = []
+    coupled = [str(i + 1) for i, row in enumerate(found.rows) if row.couples_columns]
+    if coupled:
+        notes.append(
+            f"Beware: with both horizontal terms implicit the solve couples neighbouring columns "
+            f"(row {', '.join(coupled)}), which costs more than is counted here."
+        )
+    growths = [own for row in found.rows for own in row.own_growth]
+    worst = {own.air: own for own in sorted(growths, key=lambda own: own.growth_per_s)}
+    return notes + [own_growth(own) for own in worst.values()]
 
 
 def _best_sentence(found: "Advice") -> str:

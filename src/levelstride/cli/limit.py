@@ -52,7 +52,7 @@ def limit(
 
 
 def _show(title: str, found: "Limit") -> None:
-    from levelstride.results.wording import limit_reason, number, percent, step
+    from levelstride.results.wording import limit_reason, number, own_growth, percent, step
 
     say(f"{title}: {found.tableau} with {found.split}", strong=True)
     stable = f"{step(found.stable_step_s)} s"
@@ -81,10 +81,7 @@ def _show(title: str, found: "Limit") -> None:
     _show_bites(found)
     _show_tolerances(found)
     for own in found.own_growth:
-        say(
-            f"The air itself grows: {own.air}, wavenumber {number(own.wavenumber_per_m)} 1/m, "
-            f"{number(own.growth_per_s)} 1/s, cause: {own.cause}."
-        )
+        say(own_growth(own))
     for window in found.windows:
         say(f"Stable again, not recommended: {number(window.from_s)} to {number(window.to_s)} s.")
     if found.wind_note:

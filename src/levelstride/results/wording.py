@@ -2,7 +2,7 @@
 
 from math import floor, log10
 
-from .dataset import AdviceRow, Bites, Limit
+from .dataset import AdviceRow, Bites, Limit, OwnGrowth
 
 CAUTION = (
     "Linear theory on a single column: confirm the step in the full model and under your own "
@@ -121,6 +121,15 @@ def in_short(binding: str) -> str:
     if what.startswith(("frequency", "amplitude", "interval")):
         return what
     return binding.partition(" (")[0].replace("+", ", ").replace(" wave of ", " ")
+
+
+def own_growth(growth: OwnGrowth) -> str:
+    """Say how the semi-discrete column grows by itself."""
+    return (
+        f"The column itself grows, whatever the step: air {growth.air}, "
+        f"{number(growth.growth_per_s, 3)} 1/s at wavenumber "
+        f"{number(growth.wavenumber_per_m, 3)} 1/m, cause: {growth.cause}."
+    )
 
 
 def headroom(row: AdviceRow) -> str:

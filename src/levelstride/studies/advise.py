@@ -184,7 +184,8 @@ def _row(column: Column, tableau: Tableau, splitting: Splitting, finding: Findin
     if choice.step_s is None:
         return AdviceRow(**of_limit, binding=choice.binding)
     per_hour = HOUR_S / choice.step_s
-    cost = step_cost(tableau, splitting, column.advice)
+    referred = column.reference is not None
+    cost = step_cost(tableau, splitting, column.advice, reference=referred)
     check = choice.check
     return AdviceRow(
         **of_limit,

@@ -29,7 +29,9 @@ class StepCost:
     weighted: float
 
 
-def step_cost(tableau: Tableau, splitting: Splitting, weights: Advice) -> StepCost:
+def step_cost(
+    tableau: Tableau, splitting: Splitting, weights: Advice, *, reference: bool = False
+) -> StepCost:
     """Count what one step needs.
 
     Every explicit evaluation asks for one exchange with neighbours, every solve for one more where
@@ -43,6 +45,9 @@ def step_cost(tableau: Tableau, splitting: Splitting, weights: Advice) -> StepCo
         The splitting.
     weights : Advice
         Costs of an evaluation, a solve and an exchange.
+    reference : bool
+        Whether the implicit terms are built on a reference state: what they miss on the air itself
+        is then explicit.
 
     Returns
     -------
@@ -51,7 +56,8 @@ def step_cost(tableau: Tableau, splitting: Splitting, weights: Advice) -> StepCo
     """
     treatments = splitting.treatment
     solves = tableau.implicit_solves if "implicit" in treatments.values() else 0
-    evaluations = tableau.explicit_evaluations if "explicit" in treatments.values() else 0
+    evaluates = reference or "explicit" in treatments.values()
+    evaluations = tableau.explicit_evaluations if evaluates else 0
     sees_neighbours = any(treatments[term] == "implicit" for term in _NEEDS_NEIGHBOURS)
     exchanges = evaluations + (solves if sees_neighbours else 0)
     weighted = (
