@@ -10,7 +10,6 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.linalg import eig
 
-from levelstride.operator.wave_basis import WaveBasis, wave_basis
 from levelstride.column.air import Background
 from levelstride.column.column import Column
 from levelstride.operator.bands import Banded, total
@@ -19,6 +18,7 @@ from levelstride.operator.setting import layout_of
 from levelstride.operator.state import Index, Layout
 from levelstride.operator.terms import CATALOGUE, assemble
 from levelstride.operator.wave import Wave
+from levelstride.operator.wave_basis import WaveBasis, wave_basis
 
 Array = NDArray[np.float64]
 Matrix = NDArray[Any]

@@ -139,21 +139,6 @@ def bounded(
     return None
 
 
-def peak_within(
-    norms: PowerNorms, dt: float, rate: float, log_limit: float, horizon: float
-) -> bool:
-    """Whether the norms prove that no power up to ``horizon`` exceeds the limit."""
-    previous, k = 0.0, 0
-    while (log_norm := norms.log_norm(k)) is not None:
-        excess = log_norm - 2.0**k * dt * rate
-        if max(excess, excess + previous if k else excess) > log_limit:
-            return False
-        if 2.0**k * dt >= horizon:
-            return True
-        previous, k = excess, k + 1
-    return False
-
-
 def radius_within(norms: PowerNorms, log_radius: float) -> bool | None:
     """Decide whether ln(spectral radius) <= ``log_radius``; answers as in ``bounded``."""
     k = 0
@@ -179,6 +164,28 @@ def power_norms(matrix: Matrix, most: float) -> Iterator[tuple[int, float]]:
             yield steps + steps // 2, power.times(root).log_norm()
         if steps >= most or not np.any(power.matrix):
             return
+        root, power, steps = power, power.times(power), 2 * steps
+
+
+def peak_exceeds(matrix: Matrix, dt: float, rate: float, horizon: float, log_limit: float) -> bool:
+    """Whether ``power_peak`` is above a limit.
+
+    Most powers are told by their Frobenius norm, or by the product of those of their factors; the
+    spectral norm is taken only of the rest.
+    """
+    root = power = ScaledMatrix.of(matrix)
+    steps = 1
+    while True:
+        allowed = log_limit + steps * dt * rate
+        if power.log_frobenius > allowed and power.log_norm() > allowed:
+            return True
+        between = allowed + steps // 2 * dt * rate
+        if steps > 1 and power.log_frobenius + root.log_frobenius > between:
+            product = power.times(root)
+            if product.log_frobenius > between and product.log_norm() > between:
+                return True
+        if steps * dt >= horizon or not np.any(power.matrix):
+            return False
         root, power, steps = power, power.times(power), 2 * steps
 
 

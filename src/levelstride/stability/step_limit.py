@@ -198,17 +198,11 @@ class _Pass:
         return None
 
     def _close_in(self, problem: WaveProblem, low: float, high: float) -> Bracket:
-        """Find the first failure between a stable and an unstable step, then bisect."""
+        """Bisect between a stable and an unstable step."""
         if low == 0.0:
             low = high / SCAN_RATIO
             while not self._holds(problem, low):
                 low /= SCAN_RATIO
-        step = low * SCAN_RATIO
-        while step < high / np.sqrt(SCAN_RATIO):
-            if not self._holds(problem, step):
-                high = step
-                break
-            low, step = step, step * SCAN_RATIO
         while high / low > BISECTION:
             middle = float(np.sqrt(low * high))
             if self._holds(problem, middle):

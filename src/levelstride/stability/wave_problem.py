@@ -25,8 +25,7 @@ from levelstride.stability.powers import (
     LOG_CONDITION,
     PowerNorms,
     bounded,
-    peak_within,
-    power_peak,
+    peak_exceeds,
     radius_within,
 )
 from levelstride.stability.tolerance import LOG_STRICT, Tolerance
@@ -109,7 +108,7 @@ class WaveProblem:
         )
         self._norms: dict[float, PowerNorms | None] = {}
         self._growth: dict[float, float] = {}
-        self._peaks: dict[tuple[float, Tolerance], float] = {}
+        self._peaks: dict[tuple[float, Tolerance], bool] = {}
 
     @property
     def facts(self) -> OperatorFacts:
@@ -172,13 +171,10 @@ class WaveProblem:
             decided = self._bounded(norms, dt, tolerance, beyond_doubt)
             if decided is not False:
                 decided = self._bounded(norms, dt, tolerance, self.log_limit(tolerance))
-        rate, log_limit = self.rate(tolerance), lowest_log_limit(tolerance)
-        if decided is None:
-            decided = self.growth(dt) <= rate and (
-                peak_within(norms, dt, rate, log_limit, tolerance.horizon)
-                or not self.transient_broken(dt, tolerance)
-            )
         norms.forget()
+        if decided is None:
+            decided = self.growth(dt) <= self.rate(tolerance)
+            decided = decided and not self.transient_broken(dt, tolerance)
         return decided
 
     def _bounded(
@@ -211,9 +207,10 @@ class WaveProblem:
                 matrix = self.matrix(dt)
             except CalculationError:
                 return True
-            peak = power_peak(matrix, dt, self.rate(tolerance), tolerance.horizon)
-            self._peaks[key] = peak.log_value
-        return self._peaks[key] > self.log_limit(tolerance)
+            self._peaks[key] = peak_exceeds(
+                matrix, dt, self.rate(tolerance), tolerance.horizon, self.log_limit(tolerance)
+            )
+        return self._peaks[key]
 
     def explicit_pairs(self) -> Matrix:
         """The operator made of all partner pairs with an explicit member, dense."""

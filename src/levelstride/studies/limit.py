@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import replace
-from functools import lru_cache
 
 import numpy as np
 
@@ -13,6 +12,7 @@ from levelstride.errors import CalculationError
 from levelstride.results.dataset import Bites, Limit, OwnGrowth, StepAtTolerance, Window
 from levelstride.results.wording import number
 from levelstride.splitting.splitting import Splitting, resolve
+from levelstride.stability.amplification import explicit_polynomial
 from levelstride.stability.bites import anatomy, critical_state
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.courant import CourantLimit
@@ -27,6 +27,8 @@ from levelstride.tableaux.tableau import Tableau
 
 NO_WIND = "no wind was given, the limit is for air at rest"
 DEFAULT_SPLIT = "sound"
+
+_BASELINES: dict[tuple[Column, tuple[float, ...], Tolerance], float | None] = {}
 
 
 @on_one_thread
@@ -153,14 +155,20 @@ def _gain(
     return found.step_s / baseline if baseline else None
 
 
-@lru_cache(maxsize=256)
 def all_explicit_step(column: Column, tableau: Tableau, tolerance: Tolerance) -> float | None:
-    """Stable step of the tableau's explicit part on the whole operator [s]; None if none."""
-    verdict = ColumnVerdict(column, resolve("all-explicit"), tableau)
-    try:
-        return verdict.stable_step(tolerance).step_s
-    except CalculationError:
-        return None
+    """Stable step of the tableau's explicit part on the whole operator [s]; None if none.
+
+    Tableaux whose explicit parts share a stability polynomial take the same steps.
+    """
+    polynomial = tuple(float(c) for c in np.round(explicit_polynomial(tableau), 13))
+    key = (column, polynomial, tolerance)
+    if key not in _BASELINES:
+        verdict = ColumnVerdict(column, resolve("all-explicit"), tableau)
+        try:
+            _BASELINES[key] = verdict.stable_step(tolerance).step_s
+        except CalculationError:
+            _BASELINES[key] = None
+    return _BASELINES[key]
 
 
 def _binding_air(found: StableStep) -> str:
