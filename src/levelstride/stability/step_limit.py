@@ -19,7 +19,7 @@ FIRST_STEP = 1e-3
 """First step scanned, over the largest |eigenvalue| of the whole operator."""
 
 STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 12, 4
-"""Steps of the scan from one look to the next in the three regimes of ``_strides``."""
+"""Steps of the scan from one look to the next in the three regimes of ``_looks``."""
 
 SMALLEST_FIRST_STEP = 1e-12
 """First step [s] below which a tableau counts as unstable however short the step."""
@@ -189,9 +189,9 @@ class _Pass:
             self.best = bracket
 
     def _first_failure(self, problem: WaveProblem, cap: float) -> Bracket | None:
-        strides = _strides(problem, self._start, cap)
+        looks = _looks(problem, self._start, cap)
         low = 0.0
-        for high in strides:
+        for high in looks:
             if not self._holds(problem, high):
                 return self._close_in(problem, low, high)
             low = high
@@ -230,22 +230,21 @@ class _Pass:
                 self._note(problem, self._first_failure(problem, self.best.low))
 
 
-def _strides(problem: WaveProblem, start: float, cap: float) -> Iterable[float]:
+def _looks(problem: WaveProblem, start: float, cap: float) -> list[float]:
     """Steps at which one wave is looked at, ascending, ending with ``cap``.
 
     Where the step is short for every rate of the operator, growth is a power of the step and needs
     few looks; where it is short for all that is not implicit, growth varies over factors of the
-    step; elsewhere the scan is dense.
+    step; elsewhere the scan is dense. Steps at which a frozen layer grows by itself are added.
     """
-    step, slow = start, problem.slow_rate
-    fastest = problem.facts.largest_eigenvalue
+    step, looks = start, [float(dt) for dt in problem.suspects if start < dt < cap]
     while step < cap:
-        yield step
-        if step * fastest < 0.3:
+        looks.append(step)
+        if step * problem.facts.largest_eigenvalue < 0.3:
             stride = STRIDE_SHORT
-        elif step * slow < 0.15:
+        elif step * problem.slow_rate < 0.15:
             stride = STRIDE_STIFF
         else:
             stride = STRIDE_DENSE
         step *= SCAN_RATIO**stride
-    yield cap
+    return [*sorted(looks), cap]

@@ -20,6 +20,7 @@ from levelstride.operator.wave import Wave
 from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.amplification import growth_rate, step_matrix
+from levelstride.stability.local import LocalScreen
 from levelstride.stability.own_growth import OperatorFacts
 from levelstride.stability.powers import (
     LOG_CONDITION,
@@ -28,10 +29,17 @@ from levelstride.stability.powers import (
     peak_exceeds,
     radius_within,
 )
-from levelstride.stability.tolerance import LOG_STRICT, Tolerance
+from levelstride.stability.tolerance import LOG_STRICT, STANDARD_EFOLDINGS_S, Tolerance
 from levelstride.tableaux.tableau import Tableau
 
 Matrix = NDArray[Any]
+
+
+SCREEN_FROM, SCREEN_TO_S, SCREEN_RATIO = 0.1, 1.0e4, 1.1
+"""Steps at which layers are screened: from this share of the inverse of the fastest rate on."""
+
+SUSPICIOUS_SHARE = 0.5
+"""Share of the strictest tolerated growth above which a frozen layer is worth a dense look."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -123,6 +131,25 @@ class WaveProblem:
             return 0.0
         size = np.abs(rest.to_dense())
         return float(np.sqrt(size.sum(0).max() * size.sum(1).max()))
+
+    @cached_property
+    def suspects(self) -> NDArray[np.float64]:
+        """Steps at which frozen layers grow by themselves, ascending [s].
+
+        Of every run of such steps the first and the worst one. They say where to look, not what is
+        there.
+        """
+        if self.facts.largest_eigenvalue == 0.0:
+            return np.zeros(0)
+        first = SCREEN_FROM / self.facts.largest_eigenvalue
+        steps = np.geomspace(
+            first, SCREEN_TO_S, 1 + int(np.log(SCREEN_TO_S / first) / np.log(SCREEN_RATIO))
+        )
+        growth = LocalScreen(self.parts, self.tableau).growth(steps)
+        flagged = np.flatnonzero(growth > SUSPICIOUS_SHARE / STANDARD_EFOLDINGS_S[0])
+        runs = np.split(flagged, np.flatnonzero(np.diff(flagged) > 1) + 1)
+        chosen = {int(k) for run in runs if run.size for k in (run[0], run[np.argmax(growth[run])])}
+        return np.asarray(steps[sorted(chosen)])
 
     def matrix(self, dt: float) -> Matrix:
         """R(dt) in energy coordinates, shape (nstate, nstate)."""
