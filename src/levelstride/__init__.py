@@ -24,8 +24,9 @@ if TYPE_CHECKING:
     from levelstride.errors import CalculationError, InputError
     from levelstride.results.dataset import Advice, AdviceRow, Limit
     from levelstride.results.files import write_advice
-    from levelstride.studies.advise import CurrentConfiguration, advise
+    from levelstride.studies.advise import advise
     from levelstride.studies.limit import limit
+    from levelstride.studies.plan import CurrentConfiguration
 
 __version__ = "0.1.0"
 
@@ -50,7 +51,7 @@ _HOMES = {
     "AdviceRow": "results.dataset",
     "CalculationError": "errors",
     "Column": "column.column",
-    "CurrentConfiguration": "studies.advise",
+    "CurrentConfiguration": "studies.plan",
     "InputError": "errors",
     "Limit": "results.dataset",
     "advise": "studies.advise",

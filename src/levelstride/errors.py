@@ -33,3 +33,30 @@ class InternalError(LevelstrideError):
     """A promise of the program itself is broken; never the user's fault."""
 
     exit_code = 1
+
+
+def in_words(error: BaseException) -> tuple[list[str], int]:
+    """Say what went wrong.
+
+    Parameters
+    ----------
+    error : BaseException
+        The error.
+
+    Returns
+    -------
+    lines : list of str
+        One line per mistake.
+    code : int
+        Exit code: 2 bad input, 3 the calculation could not be finished, 1 a fault of the program.
+
+    Examples
+    --------
+    >>> in_words(CalculationError("no step is stable"))
+    (['no step is stable'], 3)
+    """
+    if isinstance(error, LevelstrideError) and not isinstance(error, InternalError):
+        return str(error).splitlines(), error.exit_code
+    if isinstance(error, MemoryError):
+        return ["there is too little memory for this column; use fewer layers or workers"], 3
+    return [f"fault of the program: {error!r}; run again with --debug and report it"], 1

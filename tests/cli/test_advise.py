@@ -10,8 +10,8 @@ import pytest
 import levelstride.studies.advise
 import levelstride.studies.limit
 from examples import records
-from levelstride.cli.advise import in_lines
-from levelstride.studies.advise import CurrentConfiguration
+from levelstride.cli.advice_table import in_lines
+from levelstride.studies.plan import CurrentConfiguration
 
 
 @pytest.fixture(name="asked")
@@ -19,14 +19,13 @@ def _asked(monkeypatch):
     """Make the study answer at once with a made-up record; returns what it was asked."""
     asked = {}
 
-    def advise(column, **options):
-        asked.update(options)
-        if options["progress"] is not None:
-            options["progress"](1, 1)
-        current = records.advice().current if options["current"] is not None else None
+    def advise_plan(plan, **options):
+        asked.update(options, plan=plan)
+        options["progress"](1, 1, "something")
+        current = records.advice().current if plan.current is not None else None
         return records.advice(current=current)
 
-    monkeypatch.setattr(levelstride.studies.advise, "advise", advise)
+    monkeypatch.setattr(levelstride.studies.advise, "advise_plan", advise_plan)
     return asked
 
 
@@ -49,7 +48,8 @@ class TestAdvise:
             "advice.json",
             "advice.txt",
         ]
-        assert (asked["tableaux"], asked["splits"], asked["current"]) == (None, None, None)
+        assert len(asked["plan"].pairs) == 4
+        assert asked["plan"].current is None
 
     def test_json_is_the_only_thing_on_standard_output(self, run, tiny, asked, tmp_path):
         code, out, _ = run("advise", tiny, "--json", "--workers", 1, "--out", tmp_path / "out")
@@ -62,14 +62,16 @@ class TestAdvise:
             "advise", tiny, "--workers", 1, "--tableaux", "ars232", "--tableaux", "ars343",
             "--splits", "sound",
         )  # fmt: skip
-        assert asked["tableaux"] == ["ars232", "ars343"]
-        assert asked["splits"] == ["sound"]
+        assert [planned.what for planned in asked["plan"].items] == [
+            "ARS(2,3,2) with sound",
+            "ARS(3,4,3) with sound",
+        ]
 
     def test_judges_the_current_step(self, run, tiny, asked):
         words = ("--current", "22.9", "--tableau", "ars232", "--split", "sound+buoyancy")
         code, out, _ = run("advise", tiny, "--workers", 1, *words)
         assert code == 0
-        assert asked["current"] == CurrentConfiguration(22.9, "ars232", "sound+buoyancy")
+        assert asked["plan"].current == CurrentConfiguration(22.9, "ars232", "sound+buoyancy")
         assert "Today: your step is at 83 % of the limit." in out
 
     @pytest.mark.parametrize(
@@ -198,4 +200,4 @@ def test_control_c_ends_all_processes_without_a_traceback(tiny, tmp_path, second
     assert process.returncode == 130, err
     assert "Traceback" not in err
     assert out == ""
-    assert not (tmp_path / "advice").exists()
+    assert not (tmp_path / "advice" / "advice.json").exists()

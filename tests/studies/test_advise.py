@@ -11,8 +11,9 @@ from levelstride.execution.processes import processes
 from levelstride.execution.serial import serial
 from levelstride.results.export import to_json
 from levelstride.studies import work_item
-from levelstride.studies.advise import CurrentConfiguration, advise, best_row
+from levelstride.studies.advise import CurrentConfiguration, advise
 from levelstride.studies.methods import pairs_of
+from levelstride.studies.rows import best_row
 from levelstride.studies.work_item import WorkItem, carry_out, smaller
 
 TINY = {
@@ -142,7 +143,9 @@ def test_progress_counts_every_pair(column, limits):
     seen = []
     with serial() as executor:
         advise(column, executor=executor, progress=lambda *counts: seen.append(counts))
-    assert seen == [(1, 4), (2, 4), (3, 4), (4, 4)]
+    assert [counts[:2] for counts in seen] == [(0, 4), (1, 4), (2, 4), (3, 4), (4, 4)]
+    assert seen[0][2] == "ARS(2,3,2) with sound"
+    assert seen[4][2] == ""
 
 
 def test_a_worker_that_dies_is_a_calculation_that_cannot_be_finished(column):

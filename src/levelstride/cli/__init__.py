@@ -8,7 +8,7 @@ from collections.abc import Sequence
 
 from levelstride import __version__
 from levelstride.cli.commands import top_help
-from levelstride.errors import InternalError, LevelstrideError
+from levelstride.errors import in_words
 
 INTERRUPTED = 130
 """Exit code after an interruption from the keyboard, as shells have it."""
@@ -49,7 +49,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return 1
     except (KeyboardInterrupt, Exception) as error:
         if keyboard.interrupted or isinstance(error, KeyboardInterrupt):
-            print("levelstride: interrupted", file=sys.stderr)
+            for line in ("interrupted", *getattr(error, "__notes__", ())):
+                print(f"levelstride: {line}", file=sys.stderr)
             return INTERRUPTED
         if debug:
             raise
@@ -82,15 +83,7 @@ def _run(words: list[str]) -> int:
 
 
 def _complain(error: Exception) -> int:
-    if isinstance(error, LevelstrideError) and not isinstance(error, InternalError):
-        lines = str(error).splitlines()
-        code = error.exit_code
-    elif isinstance(error, MemoryError):
-        lines = ["there is too little memory for this column; use fewer layers or workers"]
-        code = 3
-    else:
-        lines = [f"fault of the program: {error!r}; run again with --debug and report it"]
-        code = 1
-    for line in lines:
+    lines, code = in_words(error)
+    for line in (*lines, *getattr(error, "__notes__", ())):
         print(f"levelstride: {line}", file=sys.stderr)
     return code

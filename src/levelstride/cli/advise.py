@@ -1,39 +1,27 @@
 """``levelstride advise``: which step, with which tableau and splitting?"""
 
-import os
-import re
 import sys
-from contextlib import AbstractContextManager
+from collections.abc import Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
 from cyclopts import Parameter
 
-from levelstride.cli.console import Heading, progress, say, show_table, width
+from levelstride.cli.advice_table import show_advice, show_outcomes
+from levelstride.cli.executors import executor_for, usable_workers
 from levelstride.cli.kernels import prepare_kernels
-from levelstride.cli.options import ColumnFile, Json
-
-WIDTH_OF_SPLITTING = 18
-"""Characters in a line of the table's column of splittings."""
-
-WIDTH_FOR_COUNTS = 100
-"""Width of the terminal from which the table has a column of steps for every interval."""
-
-WIDTH_FOR_ACCURACY = 130
-"""Width from which it has columns of what the step does to resolved gravity waves."""
+from levelstride.cli.options import Json
+from levelstride.cli.resuming import Resumable
 
 if TYPE_CHECKING:
-    from concurrent.futures import Executor
-
-    from levelstride.column.column import Column
-    from levelstride.results.dataset import Advice, AdviceRow
-    from levelstride.studies.advise import CurrentConfiguration
+    from levelstride.results.dataset import ColumnOutcome
+    from levelstride.studies.plan import CurrentConfiguration, Plan
 
 
 def advise(
-    column: ColumnFile,
-    /,
-    *,
+    *columns: Annotated[
+        str, Parameter(help="Column files (TOML), or folders of them; at least one.")
+    ],
     tableaux: Annotated[
         list[str] | None,
         Parameter(help="Tableau to try, may be repeated; those of the column file by default."),
@@ -55,48 +43,169 @@ def advise(
     workers: Annotated[
         int | None, Parameter(help="Processes to share the work; one per core by default.")
     ] = None,
+    cluster: Annotated[
+        str | None,
+        Parameter(help="Address of a Dask scheduler whose workers do the work instead."),
+    ] = None,
     json: Json = False,
-) -> None:
+) -> int:
     """Try tableaux and splittings and advise a step for each, the cheapest first."""
-    from levelstride.column.read import load
-    from levelstride.results.atomic import check_folder
-    from levelstride.results.export import to_json
-    from levelstride.results.files import write_advice
-    from levelstride.studies.advise import advise as find_advice
-    from levelstride.studies.methods import pairs_of
+    from levelstride.column.many import column_files
+    from levelstride.errors import InputError
+    from levelstride.studies.plan import plan_advice
 
-    read = load(column)
-    judged = _current(read, column, current, tableau, split)
-    pairs = pairs_of(read, tableaux, splits)
-    number = _workers(workers, len(pairs) + (judged is not None))
-    check_folder(out)
-    prepare_kernels()
-    with progress("tableaux and splittings") as report, _executor(number) as executor:
-        found = find_advice(
-            read, tableaux=tableaux, splits=splits, executor=executor, current=judged,
-            progress=report,
-        )  # fmt: skip
-    written = write_advice(found, out)
-    if json:
-        sys.stdout.write(to_json(found))
-    else:
-        _show(found, written)
+    if not columns:
+        raise InputError("advise: no column file is given; name one, or a folder of them")
+    files = column_files(columns)
+    usable_workers(workers, cluster)
+    _check_options(current, tableau, split)
+
+    def plan(source: str) -> "Plan":
+        from levelstride.column.read import load
+
+        read = load(source)
+        judged = _current(read.split, source, current, tableau, split)
+        return plan_advice(read, tableaux, splits, judged)
+
+    work = _Work(out, workers, cluster, json)
+    if len(files) == 1 and not Path(columns[0]).is_dir():
+        return work.one(plan(next(iter(files.values()))))
+    plans, broken = {}, {}
+    for name, source in files.items():
+        try:
+            plans[name] = plan(source)
+        except InputError as error:
+            broken[name] = error
+    return work.many(files, plans, broken)
+
+
+class _Work:
+    """What is done with plans: carried out, written, shown."""
+
+    def __init__(self, out: Path, workers: int | None, cluster: str | None, json: bool) -> None:
+        self._out, self._workers, self._cluster, self._json = out, workers, cluster, json
+
+    def one(self, plan: "Plan") -> int:
+        """Advise one column into the folder itself."""
+        from levelstride.results.export import to_json
+        from levelstride.results.files import write_advice
+        from levelstride.studies.advise import advise_plan
+
+        with self._resumable() as resumable:
+            left = resumable.left([plan])
+            with executor_for(self._workers, self._cluster, left) as executor:
+                found = advise_plan(
+                    plan, executor=executor, kept=resumable.kept, progress=resumable.progress
+                )
+        written = write_advice(found, self._out)
+        if self._json:
+            sys.stdout.write(to_json(found))
+        else:
+            show_advice(found, written)
+        return 0
+
+    def many(
+        self,
+        files: Mapping[str, str],
+        plans: "Mapping[str, Plan]",
+        broken: Mapping[str, Exception],
+    ) -> int:
+        """Advise every column into a folder of its own; what is wrong with one stops no other."""
+        from levelstride.errors import InputError
+        from levelstride.results.atomic import make_folder, sweep
+        from levelstride.results.export import to_json
+        from levelstride.results.files import write_advice, write_summary
+        from levelstride.results.outcomes import outcome
+        from levelstride.studies.advise import advise_plans
+
+        if not plans:
+            lines = [line for error in broken.values() for line in str(error).splitlines()]
+            raise InputError(*dict.fromkeys(lines))
+        names = list(plans)
+        failed, outcomes = dict(broken), {}
+        with self._resumable() as resumable:
+            left = resumable.left(list(plans.values()))
+            with executor_for(self._workers, self._cluster, left) as executor:
+                for place, found in advise_plans(
+                    list(plans.values()),
+                    executor=executor,
+                    kept=resumable.kept,
+                    progress=resumable.progress,
+                ):
+                    name = names[place]
+                    if isinstance(found, Exception):
+                        failed[name] = found
+                        continue
+                    make_folder(self._out)
+                    sweep(self._out / name)
+                    write_advice(found, self._out / name)
+                    outcomes[name] = outcome(name, found)
+        rows = [
+            outcomes.get(name) or _failure(name, source, failed[name])
+            for name, source in files.items()
+        ]
+        written = write_summary(rows, self._out)
+        if self._json:
+            sys.stdout.write(to_json({"columns": rows}))
+        else:
+            show_outcomes(rows, written)
+        return _complain(failed, len(files))
+
+    def _resumable(self) -> Resumable:
+        from levelstride.results.atomic import check_folder
+
+        check_folder(self._out)
+        prepare_kernels()
+        return Resumable(self._out)
+
+
+def _failure(name: str, source: str, error: Exception) -> "ColumnOutcome":
+    from levelstride.errors import in_words
+    from levelstride.results.dataset import ColumnOutcome
+
+    return ColumnOutcome(name=name, source=source, problem="; ".join(in_words(error)[0]))
+
+
+def _complain(failed: Mapping[str, Exception], of: int) -> int:
+    """Say at the end which columns failed; returns the exit code."""
+    from levelstride.cli.console import say_errors
+    from levelstride.errors import in_words
+
+    codes = set()
+    for name, error in failed.items():
+        lines, code = in_words(error)
+        codes.add(code)
+        for line in lines:
+            say_errors(f"levelstride: {name}: {line}")
+    if failed:
+        say_errors(f"levelstride: {len(failed)} of {of} columns failed, the others are done")
+    return next((code for code in (1, 2, 3) if code in codes), 0)
+
+
+def _check_options(step_s: float | None, tableau: str | None, split: str | None) -> None:
+    """Refuse what is wrong whatever the column."""
+    from levelstride.errors import InputError
+
+    if step_s is None and (tableau is not None or split is not None):
+        raise InputError(
+            "--tableau and --split describe the step given by --current; to try only some, "
+            "write --tableaux and --splits"
+        )
 
 
 def _current(
-    read: "Column", source: str, step_s: float | None, tableau: str | None, split: str | None
+    of_column: "str | Mapping[str, str] | None",
+    source: str,
+    step_s: float | None,
+    tableau: str | None,
+    split: str | None,
 ) -> "CurrentConfiguration | None":
     from levelstride.errors import InputError
-    from levelstride.studies.advise import CurrentConfiguration
+    from levelstride.studies.plan import CurrentConfiguration
 
     if step_s is None:
-        if tableau is not None or split is not None:
-            raise InputError(
-                "--tableau and --split describe the step given by --current; to try only some, "
-                "write --tableaux and --splits"
-            )
         return None
-    named = read.split if split is None else split
+    named = of_column if split is None else split
     missing = []
     if tableau is None:
         missing.append("--tableau: name the tableau of the step given by --current")
@@ -107,135 +216,3 @@ def _current(
     if tableau is None or named is None:
         raise InputError(*missing)
     return CurrentConfiguration(step_s, tableau, named)
-
-
-def _workers(wanted: int | None, work: int) -> int:
-    from levelstride.errors import InputError
-
-    if wanted is None:
-        usable = getattr(os, "sched_getaffinity", None)
-        wanted = len(usable(0)) if usable else os.cpu_count() or 1
-    if wanted < 1:
-        raise InputError(f"--workers {wanted}: must be at least 1")
-    return min(wanted, work, 61)
-
-
-def _executor(workers: int) -> "AbstractContextManager[Executor]":
-    from levelstride.execution.processes import processes
-    from levelstride.execution.serial import serial
-
-    return serial() if workers == 1 else processes(workers)
-
-
-def _show(found: "Advice", written: tuple[Path, ...]) -> None:
-    from levelstride.results.wording import metres, number
-
-    column = found.column
-    say(found.title, strong=True)
-    say(
-        f"{column.layers} layers, lowest {metres(column.lowest_layer_m)}, thickest "
-        f"{metres(column.thickest_layer_m)}, largest ratio {number(column.largest_ratio)}, lid at "
-        f"{metres(column.top_m)}"
-    )
-    intervals_s = found.intervals_s if width() >= WIDTH_FOR_COUNTS else ()
-    show_table(
-        _headings(intervals_s),
-        [_cells(i + 1, row, intervals_s) for i, row in enumerate(found.rows)],
-        marked=found.best,
-    )
-    say(_best_sentence(found), strong=True)
-    if found.current is not None:
-        say(f"Today: {found.current.verdict}.")
-    for note in _notes(found):
-        say(note)
-    if found.wind_note:
-        say(f"Note: {found.wind_note}.")
-    say(f"Written to {written[0].parent}: {', '.join(path.name for path in written)}")
-    say(f"Caution: {found.caution}")
-
-
-_ACCURACY = (
-    Heading("frequency", "error [%]", number=True),
-    Heading("amplitude", "[%/period]", number=True),
-)
-
-
-def _headings(intervals_s: tuple[float, ...]) -> list[Heading]:
-    from levelstride.results.wording import number
-
-    return [
-        Heading("", number=True),
-        Heading("tableau", whole=True),
-        Heading("implicit", whole=True),
-        Heading("advised", "step [s]", number=True),
-        Heading("stable", "step [s]", number=True),
-        *(Heading("steps in", f"{number(i, 6)} s", number=True) for i in intervals_s),
-        Heading("cost", "[1/h]", number=True),
-        *(_ACCURACY if width() >= WIDTH_FOR_ACCURACY else ()),
-        Heading("what binds", "the advised step"),
-    ]
-
-
-def _cells(place: int, row: "AdviceRow", intervals_s: tuple[float, ...]) -> list[str]:
-    from levelstride.results.wording import in_short, number, step
-
-    errors = (row.frequency_error, row.amplitude_change_per_period)
-    accuracy = ["-" if error is None else number(100.0 * error, 2) for error in errors]
-    stable = "no limit" if row.unbounded else step(row.stable_step_s)
-    counts = [str(count) for count in row.steps_per_interval] or ["-"] * len(intervals_s)
-    return [
-        str(place),
-        row.tableau,
-        in_lines(row.split),
-        step(row.advised_step_s),
-        stable,
-        *counts[: len(intervals_s)],
-        number(row.cost_per_hour),
-        *(accuracy if width() >= WIDTH_FOR_ACCURACY else ()),
-        in_short(row.binding),
-    ]
-
-
-def in_lines(split: str) -> str:
-    """Break a splitting behind its groups into lines that leave room for the rest.
-
-    Examples
-    --------
-    >>> in_lines("sound+buoyancy+divergence").splitlines()
-    ['sound+buoyancy+', 'divergence']
-    """
-    lines = [""]
-    for group in re.findall(r"[^+]*\+?", split):
-        if len(lines[-1]) + len(group) > WIDTH_OF_SPLITTING and lines[-1]:
-            lines.append("")
-        lines[-1] += group
-    return "\n".join(lines)
-
-
-def _notes(found: "Advice") -> list[str]:
-    """What a reader of the table must know besides: coupled columns and growth by itself."""
-    from levelstride.results.wording import own_growth
-
-    notes = []
-    coupled = [str(i + 1) for i, row in enumerate(found.rows) if row.couples_columns]
-    if coupled:
-        notes.append(
-            f"Beware: with both horizontal terms implicit the solve couples neighbouring columns "
-            f"(row {', '.join(coupled)}), which costs more than is counted here."
-        )
-    growths = [own for row in found.rows for own in row.own_growth]
-    worst = {own.air: own for own in sorted(growths, key=lambda own: own.growth_per_s)}
-    return notes + [own_growth(own) for own in worst.values()]
-
-
-def _best_sentence(found: "Advice") -> str:
-    from levelstride.results.wording import headroom, step
-
-    if found.best is None:
-        return "No step can be advised; the table says why."
-    row = found.rows[found.best]
-    coupled = "; its solve couples neighbouring columns" if row.couples_columns else ""
-    return (
-        f"Most simulated time per cost: {row.tableau} with {row.split}, step "
-        f"{step(row.advised_step_s)} s, {headroom(row)}{coupled}. It is bound by {row.binding}."
-    )

@@ -5,15 +5,27 @@ import sys
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
+from threading import Timer
+from time import monotonic
 
 from rich import box
 from rich.console import Console, RenderableType
-from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn, TimeRemainingColumn
+from rich.progress import (
+    BarColumn,
+    MofNCompleteColumn,
+    Progress,
+    ProgressColumn,
+    Task,
+    TextColumn,
+)
 from rich.table import Table
 from rich.text import Text
 
 WIDTH_OF_A_FILE = 100
 """Width of the output where it does not go to a terminal and COLUMNS is not set."""
+
+SHOWN_AFTER_S = 2.0
+"""Time after which progress is shown [s]."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,26 +126,94 @@ def show_pairs(pairs: Sequence[tuple[str, str]]) -> None:
     _print(table)
 
 
+class _TimeLeft(ProgressColumn):
+    """Time left, by the time that the items done so far have taken; counted down in between."""
+
+    def render(self, task: Task) -> Text:
+        left_s, at = task.fields["left"]
+        if left_s is None:
+            return Text(f"{in_time(task.elapsed or 0.0)} so far")
+        return Text(f"about {in_time(max(0.0, left_s - (monotonic() - at)))} left")
+
+
+def in_time(seconds: float) -> str:
+    """Write a duration with two figures or so.
+
+    Examples
+    --------
+    >>> in_time(8.2), in_time(200.0), in_time(9000.0)
+    ('8 s', '3 min', '2.5 h')
+    """
+    if seconds < 100.0:
+        return f"{seconds:.0f} s"
+    return f"{seconds / 60:.0f} min" if seconds < 6000.0 else f"{seconds / 3600:.1f} h"
+
+
+def time_left(first: tuple[float, int], now: float, done: int, total: int) -> float | None:
+    """Estimate how long the rest takes.
+
+    Parameters
+    ----------
+    first : tuple of (float, int)
+        When counting began [s], and how many were done then already.
+    now : float
+        Time now [s].
+    done, total : int
+        Numbers of items.
+
+    Returns
+    -------
+    float or None
+        Time left [s]; None while nothing tells.
+
+    Examples
+    --------
+    >>> time_left((100.0, 30), 110.0, 35, 40), time_left((100.0, 30), 110.0, 30, 40)
+    (10.0, None)
+    """
+    begun, before = first
+    return (now - begun) / (done - before) * (total - done) if done > before else None
+
+
 @contextmanager
-def progress(what: str) -> Iterator[Callable[[int, int], None] | None]:
-    """Show how much is done on standard error, if that is a terminal.
+def progress(what: str) -> Iterator[Callable[[int, int, str], None]]:
+    """Show how much is done on standard error, if that is a terminal and it takes a while.
 
     Parameters
     ----------
     what : str
-        What is counted.
+        What is being worked on to begin with.
 
     Yields
     ------
-    callable or None
-        To be called with the numbers done and of all, from any thread.
+    callable
+        To be called with the numbers done and of all, and what is being worked on; the first call
+        says what was done before.
     """
     if not sys.stderr.isatty():
-        yield None
+        yield lambda done, total, on: None
         return
-    columns = (TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn())
-    with Progress(
-        *columns, TimeRemainingColumn(), console=_console(errors=True), transient=True
-    ) as bar:
-        task = bar.add_task(what, total=None)
-        yield lambda done, total: bar.update(task, completed=done, total=total)
+    bar = Progress(
+        TextColumn("{task.description}"), BarColumn(bar_width=20), MofNCompleteColumn(),
+        _TimeLeft(), console=_console(errors=True), transient=True, refresh_per_second=4,
+        redirect_stdout=False, redirect_stderr=False,
+    )  # fmt: skip
+    task = bar.add_task(what, total=None, left=(None, monotonic()))
+    first: tuple[float, int] | None = None
+
+    def report(done: int, total: int, on: str) -> None:
+        nonlocal first
+        now = monotonic()
+        first = first or (now, done)
+        left = (time_left(first, now, done, total), now)
+        bar.update(task, completed=done, total=total, description=on or what, left=left)
+
+    timer = Timer(SHOWN_AFTER_S, bar.start)
+    timer.daemon = True
+    timer.start()
+    try:
+        yield report
+    finally:
+        timer.cancel()
+        timer.join()
+        bar.stop()

@@ -2,11 +2,13 @@
 
 import errno
 import os
+import re
 import shutil
+import socket
 import tempfile
 from collections.abc import Mapping
 from pathlib import Path
-from typing import Final
+from typing import IO, Final
 
 from levelstride.errors import InputError
 
@@ -18,6 +20,10 @@ _MEND: Final[Mapping[int, str]] = {
     errno.EPERM: "writing there is not allowed; change its permissions or name another folder",
     errno.ENAMETOOLONG: "the name is too long; name another folder with --out",
 }
+
+
+_PREFIX: Final = ".levelstride-"
+"""How the names of temporary files and folders begin: then follow host and process."""
 
 
 def check_folder(folder: Path) -> None:
@@ -39,6 +45,96 @@ def check_folder(folder: Path) -> None:
             raise PermissionError(errno.EACCES, "not writable")
     except OSError as error:
         raise _problem(folder, error) from error
+
+
+def make_folder(folder: Path) -> None:
+    """Make a folder if it is missing.
+
+    Parameters
+    ----------
+    folder : Path
+        The folder; its parent must exist.
+
+    Raises
+    ------
+    InputError
+        If it cannot be made.
+    """
+    try:
+        _place_of(folder)
+        folder.mkdir(exist_ok=True)
+    except OSError as error:
+        raise _problem(folder, error) from error
+
+
+def write_file(path: Path, content: bytes) -> None:
+    """Write one file whole: under its name there is always the old or the new content.
+
+    Parameters
+    ----------
+    path : Path
+        The file; its folder must exist.
+    content : bytes
+        Its content.
+
+    Raises
+    ------
+    InputError
+        If it cannot be written.
+    """
+    try:
+        descriptor, name = tempfile.mkstemp(prefix=_own_prefix(), dir=path.parent)
+        temporary = Path(name)
+        try:
+            with os.fdopen(descriptor, "wb") as file:
+                _write_through(file, content)
+            temporary.chmod(0o666 & ~_umask())
+            temporary.replace(path)
+        finally:
+            temporary.unlink(missing_ok=True)
+        _sync_folder(path.parent)
+    except OSError as error:
+        raise _problem(path.parent, error) from error
+
+
+def sweep(folder: Path) -> None:
+    """Remove temporary files that processes left in a folder when they were killed.
+
+    Parameters
+    ----------
+    folder : Path
+        The folder; what is in it under other names, or belongs to a living process or another
+        host, stays.
+    """
+    try:
+        names = [entry.name for entry in os.scandir(folder) if entry.name.startswith(_PREFIX)]
+    except OSError:
+        return
+    ours = re.compile(rf"{re.escape(f'{_PREFIX}{socket.gethostname()}_')}(\d+)-")
+    for name in names:
+        owner = ours.match(name)
+        if owner and not _alive(int(owner[1])):
+            left = folder / name
+            if left.is_dir() and not left.is_symlink():
+                shutil.rmtree(left, ignore_errors=True)
+            else:
+                left.unlink(missing_ok=True)
+
+
+def _own_prefix() -> str:
+    return f"{_PREFIX}{socket.gethostname()}_{os.getpid()}-"
+
+
+def _alive(process: int) -> bool:
+    if os.name != "posix":
+        return True
+    try:
+        os.kill(process, 0)
+    except ProcessLookupError:
+        return False
+    except OSError:
+        pass
+    return True
 
 
 def write_folder(folder: Path, files: Mapping[str, bytes]) -> tuple[Path, ...]:
@@ -66,7 +162,7 @@ def write_folder(folder: Path, files: Mapping[str, bytes]) -> tuple[Path, ...]:
         If the folder cannot be made or written into, or the disk is full.
     """
     try:
-        staging = Path(tempfile.mkdtemp(prefix=".levelstride-", dir=_place_of(folder)))
+        staging = Path(tempfile.mkdtemp(prefix=_own_prefix(), dir=_place_of(folder)))
     except OSError as error:
         raise _problem(folder, error) from error
     try:
@@ -96,9 +192,13 @@ def _place_of(folder: Path) -> Path:
 
 def _write_synced(path: Path, content: bytes) -> None:
     with path.open("xb") as file:
-        file.write(content)
-        file.flush()
-        os.fsync(file.fileno())
+        _write_through(file, content)
+
+
+def _write_through(file: IO[bytes], content: bytes) -> None:
+    file.write(content)
+    file.flush()
+    os.fsync(file.fileno())
 
 
 def _publish(staging: Path, folder: Path, names: tuple[str, ...]) -> None:

@@ -340,3 +340,55 @@ class Advice:
     wind_note: str | None
     caution: str
     provenance: Provenance
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ColumnOutcome:
+    """One of many columns: the best row of its advice, or what is wrong with it.
+
+    Parameters
+    ----------
+    name : str
+        Name of the column among the others, and of its folder.
+    source : str
+        Its file.
+    title : str or None
+        Its title.
+    layers : int or None
+        Number of layers.
+    lowest_layer_m, top_m : float or None
+        Thickness of the lowest layer and height of the lid [m].
+    tableau, split : str or None
+        Those of the best row.
+    advised_step_s, stable_step_s : float or None
+        Its steps [s].
+    advised_step_fraction : str or None
+        The advised step as an exact fraction, where it divides intervals.
+    cost_per_hour : float or None
+        Its cost [1/h].
+    binding : str or None
+        What binds.
+    current_share_of_limit : float or None
+        Step in use today over its stable step [1], if it was given.
+    column_sha256 : str or None
+        Hash of the resolved column.
+    problem : str or None
+        What went wrong, if something did.
+    """
+
+    name: str
+    source: str
+    title: str | None = None
+    layers: int | None = None
+    lowest_layer_m: float | None = None
+    top_m: float | None = None
+    tableau: str | None = None
+    split: str | None = None
+    advised_step_s: float | None = None
+    advised_step_fraction: str | None = None
+    stable_step_s: float | None = None
+    cost_per_hour: float | None = None
+    binding: str | None = None
+    current_share_of_limit: float | None = None
+    column_sha256: str | None = None
+    problem: str | None = None

@@ -103,10 +103,11 @@ def _cells(row: AdviceRow, intervals_s: tuple[float, ...]) -> dict[str, str]:
         cells[f"stable_step_s_efolding_{at.efolding_s:.6g}_s"] = at.stable_step_s
     for interval, steps in zip(intervals_s, row.steps_per_interval, strict=False):
         cells[f"steps_per_{interval:.6g}_s"] = steps
-    return {name: _cell(value) for name, value in cells.items()}
+    return {name: cell(value) for name, value in cells.items()}
 
 
-def _cell(value: Any) -> str:
+def cell(value: Any) -> str:
+    """Write a value as a cell of CSV: nothing for None, every digit of a number."""
     if value is None:
         return ""
     if isinstance(value, bool):

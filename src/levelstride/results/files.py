@@ -1,10 +1,12 @@
 """The files of an advice."""
 
+from collections.abc import Sequence
 from pathlib import Path
 
 from .atomic import write_folder
-from .dataset import Advice
+from .dataset import Advice, ColumnOutcome
 from .export import to_csv, to_json, to_text
+from .outcomes import to_summary_csv
 from .store import to_hdf5
 
 
@@ -37,3 +39,26 @@ def write_advice(advice: Advice, folder: Path) -> tuple[Path, ...]:
             "advice.h5": to_hdf5(advice),
         },
     )
+
+
+def write_summary(outcomes: Sequence[ColumnOutcome], folder: Path) -> Path:
+    """Write ``summary.csv`` into a folder.
+
+    Parameters
+    ----------
+    outcomes : sequence of ColumnOutcome
+        One per column.
+    folder : Path
+        The folder; made if it is missing and its parent exists.
+
+    Returns
+    -------
+    Path
+        The file.
+
+    Raises
+    ------
+    InputError
+        If it cannot be written.
+    """
+    return write_folder(folder, {"summary.csv": to_summary_csv(outcomes).encode()})[0]

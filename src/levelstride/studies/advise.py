@@ -1,44 +1,18 @@
 """Which step, with which tableau and splitting: every pair tried, the cheapest hour first."""
 
-import pickle
-from collections.abc import Callable, Mapping, Sequence
-from concurrent.futures import BrokenExecutor, Executor, Future
-from dataclasses import dataclass, fields, replace
-from math import inf
+from collections.abc import Iterator, Sequence
+from concurrent.futures import Executor
+from dataclasses import replace
 
 from levelstride.column.column import Column
-from levelstride.errors import CalculationError, InputError
-from levelstride.results.dataset import Advice, AdviceRow, CurrentStep, Limit
-from levelstride.results.wording import CAUTION, limit_reason, number, percent, step
-from levelstride.splitting.splitting import Splitting, resolve
-from levelstride.studies.advised_step import whole_steps
-from levelstride.studies.cost import HOUR_S, step_cost
-from levelstride.studies.methods import pairs_of, tableau_of
-from levelstride.studies.summary import column_summary, provenance, wind_note
-from levelstride.studies.timing import step_time
-from levelstride.studies.work_item import Finding, WorkItem, carry_out
-from levelstride.tableaux.tableau import Tableau
+from levelstride.results.dataset import Advice
+from levelstride.studies.gather import Progress, gather
+from levelstride.studies.keys import Kept
+from levelstride.studies.plan import CurrentConfiguration, Plan, plan_advice
+from levelstride.studies.rows import answer
+from levelstride.studies.work_item import Finding
 
-Progress = Callable[[int, int], None]
-
-
-@dataclass(frozen=True, slots=True)
-class CurrentConfiguration:
-    """The step that a user runs today.
-
-    Parameters
-    ----------
-    step_s : float
-        The step [s].
-    tableau : str
-        Name.
-    split : str or mapping
-        Name, or term to treatment.
-    """
-
-    step_s: float
-    tableau: str
-    split: str | Mapping[str, str]
+__all__ = ["CurrentConfiguration", "advise", "advise_plan", "advise_plans"]
 
 
 def advise(
@@ -48,6 +22,7 @@ def advise(
     splits: Sequence[str] | None = None,
     executor: Executor | None = None,
     current: CurrentConfiguration | None = None,
+    kept: Kept | None = None,
     progress: Progress | None = None,
 ) -> Advice:
     """Try every tableau with every splitting and advise a step for each.
@@ -63,8 +38,11 @@ def advise(
         times, which are taken in this process.
     current : CurrentConfiguration, optional
         A step in use today, to be judged as well.
+    kept : Kept, optional
+        Where finished pairs are kept as they end and found again, for instance
+        ``levelstride.results.kept.KeptItems(folder)``.
     progress : callable, optional
-        Called with the number of pairs done and of all, from any thread.
+        Called with the number of pairs done, of all, and what is being worked on.
 
     Returns
     -------
@@ -74,9 +52,9 @@ def advise(
     Raises
     ------
     InputError
-        If a name is unknown or the current step is not positive.
+        If a name is unknown, the current step is not positive, or a pair cannot be kept.
     CalculationError
-        If a worker died.
+        If workers died over the same pair several times.
 
     Examples
     --------
@@ -94,150 +72,76 @@ def advise(
     >>> row.steps_per_interval[0] * row.advised_step_s
     60.0
     """
-    pairs = pairs_of(column, tableaux, splits)
-    judged = _judged_pair(column, current)
-    wanted = [*pairs] if judged is None or _key(judged) in map(_key, pairs) else [*pairs, judged]
-    packed = pickle.dumps(column)
-    items = [WorkItem(packed, *_key(pair)) for pair in wanted]
-    if current is not None and judged is not None:
-        place = [_key(pair) for pair in wanted].index(_key(judged))
-        split = current.split if judged[0].kind == "additive" else judged[1].name
-        items[place] = replace(items[place], split=split, current_s=current.step_s)
-    findings = _gather(items, executor, progress)
-    rows = [
-        _row(column, *pair, finding)
-        for pair, finding in zip(pairs, findings[: len(pairs)], strict=True)
-    ]
-    rows.sort(key=_order)
-    return Advice(
-        title=column.title,
-        column=column_summary(column),
-        intervals_s=tuple(column.advice.divides_s),
-        rows=tuple(rows),
-        best=best_row(rows),
-        current=None if current is None else _judge(current, findings),
-        wind_note=wind_note(column),
-        caution=CAUTION,
-        provenance=provenance(column, "; ".join(dict.fromkeys(row.certified for row in rows))),
-    )
+    plan = plan_advice(column, tableaux, splits, current)
+    return advise_plan(plan, executor=executor, kept=kept, progress=progress)
 
 
-def best_row(rows: Sequence[AdviceRow]) -> int | None:
-    """Find the first row with an advised step, one whose solve stays in the column if there is one.
+def advise_plan(
+    plan: Plan,
+    *,
+    executor: Executor | None = None,
+    kept: Kept | None = None,
+    progress: Progress | None = None,
+) -> Advice:
+    """Answer for one column; parameters, answer and errors are those of ``advise``."""
+    found = {}
+    for place, finding in gather(plan.items, executor, kept, progress):
+        if isinstance(finding, Exception):
+            raise finding
+        found[place] = finding
+    return answer(plan, [found[i] for i in range(len(plan.items))])
 
-    A solve that couples columns is no vertical solve any more: it costs more than is counted here.
+
+def advise_plans(
+    plans: Sequence[Plan],
+    *,
+    executor: Executor | None = None,
+    kept: Kept | None = None,
+    progress: Progress | None = None,
+) -> Iterator[tuple[int, Advice | Exception]]:
+    """Answer for many columns, whose work is shared out together.
+
+    Parameters
+    ----------
+    plans : sequence of Plan
+        One per column.
+    executor, kept, progress
+        As for ``advise``, over the items of all columns.
+
+    Yields
+    ------
+    place : int
+        Place of a column among the plans, as they are finished.
+    found : Advice or Exception
+        Its advice, or what went wrong with it and stops no other.
+
+    Raises
+    ------
+    InputError
+        If a pair cannot be kept.
     """
-    able = [i for i, row in enumerate(rows) if row.advised_step_s is not None]
-    vertical = [i for i in able if not rows[i].couples_columns]
-    return next(iter(vertical or able), None)
+    items, owner = [], []
+    for i, plan in enumerate(plans):
+        title = plan.column.title
+        items += [replace(planned, what=f"{title}: {planned.what}") for planned in plan.items]
+        owner += [(i, k) for k in range(len(plan.items))]
+    open_findings: dict[int, dict[int, Finding | Exception]] = {}
+    for place, finding in gather(items, executor, kept, progress):
+        i, k = owner[place]
+        found = open_findings.setdefault(i, {})
+        found[k] = finding
+        if len(found) == len(plans[i].items):
+            yield i, _answer_or_error(plans[i], open_findings.pop(i))
 
 
-def _judged_pair(
-    column: Column, current: CurrentConfiguration | None
-) -> tuple[Tableau, Splitting] | None:
-    if current is None:
-        return None
-    if not 0.0 < current.step_s < inf:
-        raise InputError(f"current step: received {current.step_s!r} s, it must be above 0")
-    tableau = tableau_of(column, current.tableau)
-    split = "all-explicit" if tableau.kind == "explicit" else current.split
-    return tableau, resolve(split)
-
-
-def _key(pair: tuple[Tableau, Splitting]) -> tuple[str, str]:
-    return pair[0].name, pair[1].name
-
-
-def _gather(
-    items: Sequence[WorkItem], executor: Executor | None, progress: Progress | None
-) -> list[Finding]:
-    """Have all items done and return what was found in their order."""
-    done = 0
-
-    def count(_: "Future[Finding] | None") -> None:
-        nonlocal done
-        done += 1
-        if progress is not None:
-            progress(done, len(items))
-
-    if executor is None:
-        findings = []
-        for item in items:
-            findings.append(carry_out(item))
-            count(None)
-        return findings
+def _answer_or_error(plan: Plan, found: dict[int, Finding | Exception]) -> Advice | Exception:
+    findings = []
+    for i in range(len(plan.items)):
+        finding = found[i]
+        if isinstance(finding, Exception):
+            return finding
+        findings.append(finding)
     try:
-        futures = [executor.submit(carry_out, item) for item in items]
-        for future in futures:
-            future.add_done_callback(count)
-        return [future.result() for future in futures]
-    except BrokenExecutor as error:
-        raise CalculationError(
-            f"a worker ended before its work was done ({error}); there may be too little memory: "
-            "try fewer workers"
-        ) from error
-
-
-def _row(column: Column, tableau: Tableau, splitting: Splitting, finding: Finding) -> AdviceRow:
-    choice = finding.choice
-    of_limit = {field.name: getattr(finding.limit, field.name) for field in fields(Limit)}
-    if choice.step_s is None:
-        return AdviceRow(**of_limit, binding=choice.binding)
-    per_hour = HOUR_S / choice.step_s
-    referred = column.reference is not None
-    cost = step_cost(tableau, splitting, column.advice, reference=referred)
-    check = choice.check
-    return AdviceRow(
-        **of_limit,
-        advised_step_s=choice.step_s,
-        advised_step_fraction=None if choice.fraction is None else str(choice.fraction),
-        steps_per_interval=whole_steps(column.advice.divides_s, choice.fraction),
-        steps_per_hour=per_hour,
-        cost_per_hour=cost.weighted * per_hour,
-        explicit_evaluations_per_hour=cost.evaluations * per_hour,
-        solves_per_hour=cost.solves * per_hour,
-        exchanges_per_hour=cost.exchanges * per_hour,
-        measured_s_per_hour=step_time(column, splitting, tableau, choice.step_s) * per_hour,
-        binding=choice.binding,
-        frequency_error=None if check is None else check.frequency_error,
-        amplitude_change_per_period=None if check is None else check.amplitude_change_per_period,
-    )
-
-
-def _order(row: AdviceRow) -> tuple[float, float, float]:
-    """Cheapest simulated hour first, then the longer step; what cannot be advised last."""
-    cost = inf if row.cost_per_hour is None else row.cost_per_hour
-    return cost, -(row.advised_step_s or 0.0), -(row.stable_step_s or 0.0)
-
-
-def _judge(current: CurrentConfiguration, findings: Sequence[Finding]) -> CurrentStep:
-    finding = next(f for f in findings if f.current is not None)
-    check, limit = finding.current, finding.limit
-    assert check is not None
-    share = None if limit.stable_step_s is None else current.step_s / limit.stable_step_s
-    within = limit.unbounded or (share is not None and share <= 1.0)
-    return CurrentStep(
-        step_s=current.step_s,
-        share_of_limit=share,
-        stable=within and finding.current_stable,
-        verdict=_verdict(current.step_s, share, within, check.failure, limit),
-        frequency_error=check.frequency_error,
-        amplitude_change_per_period=check.amplitude_change_per_period,
-        limit=limit,
-    )
-
-
-def _verdict(
-    step_s: float, share: float | None, within: bool, failure: str | None, limit: Limit
-) -> str:
-    if share is None:
-        state = "is unlimited" if limit.unbounded else "cannot be stable"
-        text = f"your step of {number(step_s)} s {state}: {limit_reason(limit)}"
-    else:
-        text = (
-            f"your step is at {percent(share, 3)} of the limit of {step(limit.stable_step_s)} s "
-            f"({limit_reason(limit)})"
-        )
-    if not within and share is not None:
-        return f"{text}: too long"
-    return text if failure is None else f"{text}; {failure}"
+        return answer(plan, findings)
+    except Exception as error:
+        return error

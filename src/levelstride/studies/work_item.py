@@ -39,12 +39,15 @@ class WorkItem:
         Name, or term to treatment.
     current_s : float or None
         A step to judge besides [s].
+    limit : Limit or None
+        The limit, if it is known already.
     """
 
     column: bytes
     tableau: str
     split: str | Mapping[str, str]
     current_s: float | None = None
+    limit: Limit | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,10 +90,7 @@ def carry_out(item: WorkItem) -> Finding:
     splitting = resolve(item.split)
     tableau = tableau_of(columns[0], item.tableau)
     asked = columns[0].advice
-    try:
-        found = smaller([limit(c, tableau=item.tableau, split=item.split) for c in columns])
-    except CalculationError as error:
-        found = _no_limit(item, str(error))
+    found = item.limit or _find_limit(item, columns)
     checker = _Checker(columns, splitting, tableau)
     choice = choose_step(
         found, safety=asked.safety, intervals_s=asked.divides_s, check=checker.examine
@@ -99,6 +99,13 @@ def carry_out(item: WorkItem) -> Finding:
         return Finding(found, choice)
     current = checker.examine(item.current_s)
     return Finding(found, choice, current, checker.stable(item.current_s))
+
+
+def _find_limit(item: WorkItem, columns: tuple[Column, ...]) -> Limit:
+    try:
+        return smaller([limit(c, tableau=item.tableau, split=item.split) for c in columns])
+    except CalculationError as error:
+        return _no_limit(item, str(error))
 
 
 def smaller(limits: list[Limit]) -> Limit:

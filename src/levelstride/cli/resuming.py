@@ -1,0 +1,55 @@
+"""A calculation that can be broken off and taken up again by the same command."""
+
+from collections.abc import Sequence
+from contextlib import ExitStack
+from pathlib import Path
+from typing import TYPE_CHECKING, Self
+
+from levelstride.cli.console import progress
+
+if TYPE_CHECKING:
+    from levelstride.studies.plan import Plan
+
+
+class Resumable:
+    """Keeps finished items beside the results, shows progress, and says how to go on.
+
+    Parameters
+    ----------
+    out : Path
+        Folder of the results.
+    """
+
+    def __init__(self, out: Path) -> None:
+        from levelstride.results.kept import KeptItems
+
+        self.kept: KeptItems = KeptItems(out)
+        self._done = self._total = 0
+        self._stack = ExitStack()
+
+    def __enter__(self) -> Self:
+        self._report = self._stack.enter_context(progress("starting"))
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, _: object
+    ) -> None:
+        self._stack.close()
+        if error is not None and self._done:
+            error.add_note(
+                f"{self._done} of {self._total} tableaux and splittings are kept in "
+                f"{self.kept.folder}; the same command goes on from there"
+            )
+
+    def left(self, plans: "Sequence[Plan]") -> int:
+        """Count the items of plans that are still to be done."""
+        from levelstride.studies.gather import count_kept
+
+        items = [planned for plan in plans for planned in plan.items]
+        self._total, self._done = len(items), count_kept(items, self.kept)
+        return self._total - self._done
+
+    def progress(self, done: int, total: int, on: str) -> None:
+        """Take note of progress and show it."""
+        self._done, self._total = done, total
+        self._report(done, total, on)

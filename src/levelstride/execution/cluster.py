@@ -1,0 +1,128 @@
+"""Work items on the workers of a Dask scheduler that is running already."""
+
+from collections.abc import Callable, Iterator
+from concurrent.futures import BrokenExecutor, CancelledError, Executor, Future
+from contextlib import contextmanager
+from threading import Lock
+from typing import Any, Final, ParamSpec, TypeVar
+
+from levelstride import __version__
+from levelstride.errors import InputError
+
+P = ParamSpec("P")
+T = TypeVar("T")
+
+ANSWER_WITHIN_S: Final = 10.0
+"""How long to wait for the scheduler [s]."""
+
+_ONE_AT_A_TIME = Lock()
+
+
+@contextmanager
+def cluster(address: str) -> Iterator[Executor]:
+    """Hand out an executor of the workers of a Dask cluster.
+
+    Items of a worker that is lost are run again by others; the scheduler gives up an item over
+    which several workers died.
+
+    Parameters
+    ----------
+    address : str
+        Address of the scheduler, for instance ``tcp://10.0.0.5:8786``.
+
+    Raises
+    ------
+    InputError
+        If dask and distributed are missing, nothing answers at the address, or a worker is missing
+        or has another version of this package.
+    """
+    client = _connected(address)
+    try:
+        _check_workers(client, address)
+        yield _ClusterExecutor(client.get_executor(pure=False))
+    finally:
+        client.close(timeout=ANSWER_WITHIN_S)
+
+
+def _connected(address: str) -> Any:
+    try:
+        import distributed
+    except ImportError:
+        raise InputError(
+            f"--cluster {address}: needs dask and distributed, which are not installed here; "
+            "install the extra: pip install 'levelstride[cluster]'"
+        ) from None
+    connect: Callable[..., Any] = distributed.Client
+    try:
+        return connect(address, timeout=ANSWER_WITHIN_S, set_as_default=False)
+    except (OSError, TimeoutError, ValueError) as error:
+        reason = str(error).split("\n")[0] or type(error).__name__
+        raise InputError(
+            f"--cluster {address}: no Dask scheduler answers there ({reason}); start one with "
+            "'dask scheduler' and give the address that it prints, as in tcp://10.0.0.5:8786"
+        ) from None
+
+
+def _check_workers(client: Any, address: str) -> None:
+    versions = client.run(worker_version, on_error="return")
+    if not versions:
+        raise InputError(
+            f"--cluster {address}: this scheduler has no workers; start some with "
+            f"'dask worker {address} --nthreads 1'"
+        )
+    problems = [
+        f"--cluster {address}: the worker {worker} "
+        + (f"has levelstride {found}" if isinstance(found, str) else f"cannot be used ({found})")
+        + f"; install levelstride {__version__}, as here, into its environment"
+        for worker, found in versions.items()
+        if found != __version__
+    ]
+    if problems:
+        raise InputError(*problems)
+
+
+def worker_version() -> str:
+    """Tell the version of this package; a work item for checking workers."""
+    return __version__
+
+
+def _alone(fn: Callable[..., Any], args: tuple[Any, ...], named: dict[str, Any]) -> Any:
+    """Run an item while this worker runs no other, however many threads it has.
+
+    Two items at once would set each other's number of threads of linear algebra, on which the last
+    digits of an answer may depend.
+    """
+    with _ONE_AT_A_TIME:
+        return fn(*args, **named)
+
+
+class _ClusterExecutor(Executor):
+    """The executor of a Dask client, with items alone in their worker and losses told plainly."""
+
+    def __init__(self, inner: Any) -> None:
+        self._inner = inner
+
+    def submit(self, fn: Callable[P, T], /, *args: P.args, **kwargs: P.kwargs) -> Future[T]:
+        """Have a work item done by a worker of the cluster."""
+        future: Future[T] = Future()
+        inner: Future[T] = self._inner.submit(_alone, fn, args, kwargs)
+        future.set_running_or_notify_cancel()
+        inner.add_done_callback(lambda ended: _hand_on(ended, future))
+        return future
+
+    def shutdown(self, wait: bool = True, *, cancel_futures: bool = False) -> None:
+        """Take no more work items."""
+        self._inner.shutdown(wait=wait and not cancel_futures)
+
+
+def _hand_on(ended: "Future[T]", future: "Future[T]") -> None:
+    from distributed import KilledWorker
+
+    try:
+        future.set_result(ended.result())
+    except CancelledError:
+        future.set_exception(BrokenExecutor("the connection to the Dask scheduler was lost"))
+    except KilledWorker as error:
+        future.set_exception(BrokenExecutor(str(error).split("\n")[0]))
+    except Exception as error:
+        future.set_exception(error)

@@ -1,0 +1,139 @@
+"""Which work items an advice needs."""
+
+import pickle
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from math import inf
+
+from levelstride.column.column import Column
+from levelstride.errors import InputError
+from levelstride.splitting.splitting import Splitting, resolve
+from levelstride.studies.keys import finding_key, limit_key
+from levelstride.studies.methods import pairs_of, tableau_of
+from levelstride.studies.work_item import WorkItem
+from levelstride.tableaux.tableau import Tableau
+
+
+@dataclass(frozen=True, slots=True)
+class CurrentConfiguration:
+    """The step that a user runs today.
+
+    Parameters
+    ----------
+    step_s : float
+        The step [s].
+    tableau : str
+        Name.
+    split : str or mapping
+        Name, or term to treatment.
+    """
+
+    step_s: float
+    tableau: str
+    split: str | Mapping[str, str]
+
+
+@dataclass(frozen=True, slots=True)
+class PlannedItem:
+    """A work item with what it is called and kept by.
+
+    Parameters
+    ----------
+    item : WorkItem
+        The item.
+    what : str
+        What it is, for people.
+    key, of_limit : str
+        Keys of its finding and of its limit.
+    """
+
+    item: WorkItem
+    what: str
+    key: str
+    of_limit: str
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Plan:
+    """What was asked about one column.
+
+    Parameters
+    ----------
+    column : Column
+        The column.
+    pairs : tuple of (Tableau, Splitting)
+        One per row.
+    items : tuple of PlannedItem
+        One per pair, in their order, and one more if the current step is of none of them.
+    current : CurrentConfiguration or None
+        A step to be judged as well.
+    """
+
+    column: Column
+    pairs: tuple[tuple[Tableau, Splitting], ...]
+    items: tuple[PlannedItem, ...]
+    current: CurrentConfiguration | None
+
+
+def plan_advice(
+    column: Column,
+    tableaux: Sequence[str] | None = None,
+    splits: Sequence[str] | None = None,
+    current: CurrentConfiguration | None = None,
+) -> Plan:
+    """Find out what is to be done for an advice.
+
+    Parameters
+    ----------
+    column : Column
+        The column.
+    tableaux, splits : sequence of str, optional
+        Names; those of the column file by default.
+    current : CurrentConfiguration, optional
+        A step in use today, to be judged as well.
+
+    Returns
+    -------
+    Plan
+        With one work item per pair.
+
+    Raises
+    ------
+    InputError
+        If a name is unknown or the current step is not positive.
+    """
+    pairs = pairs_of(column, tableaux, splits)
+    judged = _judged_pair(column, current)
+    names = [_names(pair) for pair in pairs]
+    wanted = list(pairs)
+    if judged is not None and _names(judged) not in names:
+        wanted.append(judged)
+    packed = pickle.dumps(column)
+    items = []
+    for tableau, splitting in wanted:
+        item = WorkItem(packed, tableau.name, splitting.name)
+        if current is not None and judged is not None and _names(judged) == (
+            tableau.name, splitting.name,
+        ):  # fmt: skip
+            split = current.split if tableau.kind == "additive" else splitting.name
+            item = replace(item, split=split, current_s=current.step_s)
+        of_limit = limit_key(column, tableau, splitting)
+        key = finding_key(of_limit, column, item.current_s)
+        items.append(PlannedItem(item, f"{tableau.name} with {splitting.name}", key, of_limit))
+    return Plan(column, tuple(pairs), tuple(items), current)
+
+
+def _judged_pair(
+    column: Column, current: CurrentConfiguration | None
+) -> tuple[Tableau, Splitting] | None:
+    if current is None:
+        return None
+    if not 0.0 < current.step_s < inf:
+        raise InputError(f"current step: received {current.step_s!r} s, it must be above 0")
+    tableau = tableau_of(column, current.tableau)
+    split = "all-explicit" if tableau.kind == "explicit" else current.split
+    return tableau, resolve(split)
+
+
+def _names(pair: tuple[Tableau, Splitting]) -> tuple[str, str]:
+    return pair[0].name, pair[1].name
