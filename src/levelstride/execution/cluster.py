@@ -33,8 +33,8 @@ def cluster(address: str) -> Iterator[Executor]:
     Raises
     ------
     InputError
-        If dask and distributed are missing, nothing answers at the address, or a worker is missing
-        or has another version of this package.
+        If dask and distributed are missing, nothing answers at the address, there are no
+        workers, or one of them or the scheduler has another version of this package or none.
     """
     client = _connected(address)
     try:
@@ -70,19 +70,29 @@ def _check_workers(client: Any, address: str) -> None:
             f"--cluster {address}: this scheduler has no workers; start some with "
             f"'dask worker {address} --nthreads 1'"
         )
+    places = {f"the worker {worker}": found for worker, found in versions.items()}
+    places["the scheduler"] = _scheduler_version(client)
     problems = [
-        f"--cluster {address}: the worker {worker} "
+        f"--cluster {address}: {place} "
         + (f"has levelstride {found}" if isinstance(found, str) else f"cannot be used ({found})")
         + f"; install levelstride {__version__}, as here, into its environment"
-        for worker, found in versions.items()
+        for place, found in places.items()
         if found != __version__
     ]
     if problems:
         raise InputError(*problems)
 
 
+def _scheduler_version(client: Any) -> str | Exception:
+    """The scheduler unpacks work items as well."""
+    try:
+        return str(client.run_on_scheduler(worker_version))
+    except Exception as error:
+        return error
+
+
 def worker_version() -> str:
-    """Tell the version of this package; a work item for checking workers."""
+    """Tell the version of this package where it is called."""
     return __version__
 
 

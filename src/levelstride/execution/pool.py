@@ -14,8 +14,8 @@ T = TypeVar("T")
 TRIES: Final = 3
 """How often an item is tried at most if workers die over it."""
 
-LOSSES: Final = 3
-"""Number of items given up one after the other at which all the rest is given up as well."""
+BREAKS: Final = 10
+"""How often the pool may break without an item having ended until everything is given up."""
 
 
 @dataclass(eq=False)
@@ -36,8 +36,8 @@ class SturdyPool(Executor):
     A worker may be killed by somebody or by the system for want of memory. What was being worked
     on then is tried again when everything else is done, one item at a time, so that an item over
     which workers die takes no other with it; after ``TRIES`` tries it fails with BrokenExecutor,
-    and only it. Where ``LOSSES`` items in a row fail so, no worker can live here, and all that is
-    left fails.
+    and only it. Where the pool breaks ``BREAKS`` times in a row, no worker can live here, and all
+    that is left fails.
 
     Parameters
     ----------
@@ -52,9 +52,9 @@ class SturdyPool(Executor):
         self._pool: ProcessPoolExecutor | None = make_pool()
         self._waiting: deque[_Task] = deque()
         self._suspects: deque[_Task] = deque()
-        self._running: dict[_Task, Future[Any]] = {}
+        self._running: dict[_Task, tuple[Future[Any], ProcessPoolExecutor]] = {}
         self._events: SimpleQueue[_Event] = SimpleQueue()
-        self._losses = 0
+        self._breaks = 0
         self._closed = False
         # One thread owns pool and queues; everybody else only tells it what happened.
         self._thread = Thread(target=self._serve, name="levelstride-pool", daemon=True)
@@ -130,40 +130,46 @@ class SturdyPool(Executor):
     def _begin(self, task: _Task) -> None:
         if not task.future.running() and not task.future.set_running_or_notify_cancel():
             return
+        if self._pool is None:
+            self._pool = self._make_pool()
+        pool = self._pool
         try:
-            if self._pool is None:
-                self._pool = self._make_pool()
-            inner = self._pool.submit(task.function, *task.arguments, **task.named)
+            inner = pool.submit(task.function, *task.arguments, **task.named)
         except BrokenExecutor as error:
             # A worker died before this item was begun.
-            self._try_again(task, error)
+            self._try_again(task, pool, error)
             return
-        self._running[task] = inner
+        self._running[task] = inner, pool
         inner.add_done_callback(lambda _: self._events.put(("ended", task)))
 
     def _end(self, task: _Task) -> None:
-        inner = self._running.pop(task)
+        inner, pool = self._running.pop(task)
         error = inner.exception()
         if isinstance(error, BrokenExecutor):
-            self._try_again(task, error)
+            self._try_again(task, pool, error)
             return
-        self._losses = 0
+        self._breaks = 0
         if error is None:
             task.future.set_result(inner.result())
         else:
             task.future.set_exception(error)
 
-    def _try_again(self, task: _Task, error: BrokenExecutor) -> None:
-        self._pool = None
+    def _try_again(self, task: _Task, pool: ProcessPoolExecutor, error: BrokenExecutor) -> None:
+        if self._pool is pool:
+            self._pool = None
+            self._breaks += 1
         task.tries += 1
         if task.tries < TRIES:
             self._suspects.append(task)
-            return
-        task.future.set_exception(BrokenExecutor(f"workers died over it {TRIES} times: {error}"))
-        self._losses += 1
-        if self._losses >= LOSSES:
+        else:
+            _give_up(task, f"workers died over it {TRIES} times: {error}")
+        if self._breaks >= BREAKS:
             for left in (*self._waiting, *self._suspects):
-                if left.future.running() or left.future.set_running_or_notify_cancel():
-                    left.future.set_exception(BrokenExecutor(f"workers keep dying: {error}"))
+                _give_up(left, f"workers keep dying: {error}")
             self._waiting.clear()
             self._suspects.clear()
+
+
+def _give_up(task: _Task, why: str) -> None:
+    if task.future.running() or task.future.set_running_or_notify_cancel():
+        task.future.set_exception(BrokenExecutor(why))
