@@ -35,11 +35,15 @@ class Resumable:
         self, kind: type[BaseException] | None, error: BaseException | None, _: object
     ) -> None:
         self._stack.close()
-        if error is not None and self._done:
+        if error is None or not self._total:
+            return
+        if self._done:
             error.add_note(
-                f"{self._done} of {self._total} tableaux and splittings are kept in "
+                f"{self._done} of {self._total} pairs of tableau and splitting are kept in "
                 f"{self.kept.folder}; the same command goes on from there"
             )
+        else:
+            error.add_note(f"none of {self._total} pairs of tableau and splitting was finished yet")
 
     def left(self, plans: "Sequence[Plan]") -> int:
         """Count the items of plans that are still to be done."""

@@ -45,8 +45,9 @@ class KeptItems:
         Any
             The plain data that were kept; None if there are none.
         """
+        path = self._path(key)
         try:
-            stored = json.loads(self._path(key).read_bytes())
+            stored = json.loads(path.read_bytes())
             sound = stored["key"] == key and stored["sha256"] == _hash(key, stored["item"])
         except (OSError, ValueError, KeyError, TypeError, RecursionError):
             return None
