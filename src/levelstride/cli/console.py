@@ -12,7 +12,6 @@ from rich import box
 from rich.console import Console, RenderableType
 from rich.progress import (
     BarColumn,
-    MofNCompleteColumn,
     Progress,
     ProgressColumn,
     Task,
@@ -136,6 +135,13 @@ class _TimeLeft(ProgressColumn):
         return Text(f"about {in_time(max(0.0, left_s - (monotonic() - at)))} left")
 
 
+class _Count(ProgressColumn):
+    """How many are done of how many, where that is known."""
+
+    def render(self, task: Task) -> Text:
+        return Text("" if task.total is None else f"{task.completed:.0f}/{task.total:.0f}")
+
+
 def in_time(seconds: float) -> str:
     """Write a duration with two figures or so.
 
@@ -194,7 +200,7 @@ def progress(what: str) -> Iterator[Callable[[int, int, str], None]]:
         yield lambda done, total, on: None
         return
     bar = Progress(
-        TextColumn("{task.description}"), BarColumn(bar_width=20), MofNCompleteColumn(),
+        TextColumn("{task.description}"), BarColumn(bar_width=20), _Count(),
         _TimeLeft(), console=_console(errors=True), transient=True, refresh_per_second=4,
         redirect_stdout=False, redirect_stderr=False,
     )  # fmt: skip

@@ -5,7 +5,7 @@ from typing import TYPE_CHECKING, Annotated
 
 from cyclopts import Parameter
 
-from levelstride.cli.console import Heading, say, show_pairs, show_table
+from levelstride.cli.console import Heading, progress, say, show_pairs, show_table
 from levelstride.cli.kernels import prepare_kernels
 from levelstride.cli.options import ColumnFile, Json
 
@@ -44,7 +44,8 @@ def limit(
     if efolding is not None and not 0.0 < efolding < 1e12:
         raise InputError(f"--efolding {efolding:g}: must be a time above 0 [s]")
     prepare_kernels()
-    found = find_limit(read, tableau=tableau, split=split, efolding_s=efolding)
+    with progress(f"{read.title}: {tableau} with {split or 'its [split]'}"):
+        found = find_limit(read, tableau=tableau, split=split, efolding_s=efolding)
     if json:
         sys.stdout.write(to_json(found))
     else:
