@@ -1,5 +1,6 @@
 """Work items on the workers of a Dask scheduler that is running already."""
 
+import logging
 from collections.abc import Callable, Iterator
 from concurrent.futures import BrokenExecutor, CancelledError, Executor, Future
 from contextlib import contextmanager
@@ -36,15 +37,31 @@ def cluster(address: str) -> Iterator[Executor]:
         If dask and distributed are missing, nothing answers at the address, there are no
         workers, or one of them or the scheduler has another version of this package or none.
     """
-    client = _connected(address)
+    connect = _connector(address)
+    with _without_its_log():
+        client = _connected(connect, address)
+        try:
+            _check_workers(client, address)
+            yield _ClusterExecutor(client.get_executor(pure=False))
+        finally:
+            client.close(timeout=ANSWER_WITHIN_S)
+
+
+@contextmanager
+def _without_its_log() -> Iterator[None]:
+    """Keep the tracebacks that the client logs about lost connections from the user."""
+    logs = [logging.getLogger(f"distributed{name}") for name in ("", ".client", ".core")]
+    before = [log.level for log in logs]
+    for log in logs:
+        log.setLevel(logging.CRITICAL + 1)
     try:
-        _check_workers(client, address)
-        yield _ClusterExecutor(client.get_executor(pure=False))
+        yield
     finally:
-        client.close(timeout=ANSWER_WITHIN_S)
+        for log, level in zip(logs, before, strict=True):
+            log.setLevel(level)
 
 
-def _connected(address: str) -> Any:
+def _connector(address: str) -> Callable[..., Any]:
     try:
         import distributed
     except ImportError:
@@ -52,7 +69,11 @@ def _connected(address: str) -> Any:
             f"--cluster {address}: needs dask and distributed, which are not installed here; "
             "install the extra: pip install 'levelstride[cluster]'"
         ) from None
-    connect: Callable[..., Any] = distributed.Client
+    client: Callable[..., Any] = distributed.Client
+    return client
+
+
+def _connected(connect: Callable[..., Any], address: str) -> Any:
     try:
         return connect(address, timeout=ANSWER_WITHIN_S, set_as_default=False)
     except (OSError, TimeoutError, ValueError) as error:

@@ -112,8 +112,8 @@ def _outcome(future: "Future[Finding]") -> Finding | Exception:
         return future.result()
     except BrokenExecutor as error:
         return CalculationError(
-            f"a worker ended before its work was done ({error}); there may be too little memory: "
-            "try fewer workers"
+            f"a worker ended before its work was done ({error}); if memory is short, "
+            "use fewer workers"
         )
     except Exception as error:
         return error
