@@ -21,6 +21,12 @@ FIRST_STEP = 1e-3
 STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 12, 4
 """Steps of the scan from one look to the next in the three regimes of ``_looks``."""
 
+NOT_SMALL = 0.15
+"""Step times rate above which a term is not small in one step."""
+
+FILL_REACH = 30.0
+"""How far below its limit, as a factor, the binding wave is looked at closely at most."""
+
 SMALLEST_FIRST_STEP = 1e-12
 """First step [s] below which a tableau counts as unstable however short the step."""
 
@@ -212,15 +218,21 @@ class _Pass:
         return Bracket(low, high, problem)
 
     def fill_below(self) -> None:
-        """Look at the binding wave at the full scan ratio over the factor two below its limit."""
+        """Look at the binding wave at the full scan ratio as far as its slow terms are not small.
+
+        At least over the factor two below the limit.
+        """
         assert self.best is not None
-        bracket = self.best
-        step = bracket.low / 2
-        while step < bracket.low:
-            if not self._holds(bracket.problem, step):
-                self._note(bracket.problem, self._close_in(bracket.problem, 0.0, step))
+        limit, problem = self.best.low, self.best.problem
+        first = limit / 2
+        if problem.slow_rate > 0:
+            first = min(first, max(NOT_SMALL / problem.slow_rate, limit / FILL_REACH))
+        k = int(np.ceil(np.log(first / self._start) / np.log(SCAN_RATIO)))
+        while (step := self._start * SCAN_RATIO**k) < limit:
+            if not self._holds(problem, step):
+                self._note(problem, self._close_in(problem, 0.0, step))
                 return
-            step *= SCAN_RATIO
+            k += 1
 
     def recheck(self, problems: Iterable[WaveProblem]) -> None:
         """Check every wave again at the answer."""
@@ -242,7 +254,7 @@ def _looks(problem: WaveProblem, start: float, cap: float) -> list[float]:
         looks.append(step)
         if step * problem.facts.largest_eigenvalue < 0.3:
             stride = STRIDE_SHORT
-        elif step * problem.slow_rate < 0.15:
+        elif step * problem.slow_rate < NOT_SMALL:
             stride = STRIDE_STIFF
         else:
             stride = STRIDE_DENSE

@@ -13,6 +13,7 @@ from levelstride.results.wording import CAUTION, limit_reason, number, percent, 
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.studies.advised_step import whole_steps
 from levelstride.studies.cost import HOUR_S, step_cost
+from levelstride.studies.limit import SCAN
 from levelstride.studies.methods import pairs_of, tableau_of
 from levelstride.studies.summary import column_summary, provenance, wind_note
 from levelstride.studies.timing import step_time
@@ -20,6 +21,11 @@ from levelstride.studies.work_item import Finding, WorkItem, carry_out
 from levelstride.tableaux.tableau import Tableau
 
 Progress = Callable[[int, int], None]
+
+CERTIFIED = (
+    "every row on both sides of its limit, by dense eigenvalues or energy norms of powers of R at "
+    "the binding wave, or by the symbols of frozen rows; see each row"
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -118,7 +124,7 @@ def advise(
         current=None if current is None else _judge(current, findings),
         wind_note=wind_note(column),
         caution=CAUTION,
-        provenance=provenance(column, "; ".join(dict.fromkeys(row.certified for row in rows))),
+        provenance=provenance(column, f"{CERTIFIED}; {SCAN}"),
     )
 
 
