@@ -21,6 +21,9 @@ FIRST_STEP = 1e-3
 STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 12, 4
 """Steps of the scan from one look to the next in the three regimes of ``_looks``."""
 
+MANY_UNKNOWNS, THINNING = 300, 3
+"""Beyond so many unknowns strides are so many times longer and frozen layers say where to look."""
+
 NOT_SMALL = 0.15
 """Step times rate above which a term is not small in one step."""
 
@@ -218,14 +221,14 @@ class _Pass:
         return Bracket(low, high, problem)
 
     def fill_below(self) -> None:
-        """Look at the binding wave at the full scan ratio as far as its slow terms are not small.
+        """Look at the binding wave at the full scan ratio over the factor two below the limit.
 
-        At least over the factor two below the limit.
+        With few unknowns, as far below it as slow terms are not small.
         """
         assert self.best is not None
         limit, problem = self.best.low, self.best.problem
         first = limit / 2
-        if problem.slow_rate > 0:
+        if problem.slow_rate > 0 and problem.size <= MANY_UNKNOWNS:
             first = min(first, max(NOT_SMALL / problem.slow_rate, limit / FILL_REACH))
         k = int(np.ceil(np.log(first / self._start) / np.log(SCAN_RATIO)))
         while (step := self._start * SCAN_RATIO**k) < limit:
@@ -250,13 +253,14 @@ def _looks(problem: WaveProblem, start: float, cap: float) -> list[float]:
     step; elsewhere the scan is dense. Steps at which a frozen layer grows by itself are added.
     """
     step, looks = start, [float(dt) for dt in problem.suspects if start < dt < cap]
+    thinning = THINNING if problem.size > MANY_UNKNOWNS else 1
     while step < cap:
         looks.append(step)
         if step * problem.facts.largest_eigenvalue < 0.3:
             stride = STRIDE_SHORT
         elif step * problem.slow_rate < NOT_SMALL:
-            stride = STRIDE_STIFF
+            stride = STRIDE_STIFF * thinning
         else:
-            stride = STRIDE_DENSE
+            stride = STRIDE_DENSE * thinning
         step *= SCAN_RATIO**stride
     return [*sorted(looks), cap]

@@ -119,6 +119,11 @@ class WaveProblem:
         self._peaks: dict[tuple[float, Tolerance], bool] = {}
 
     @property
+    def size(self) -> int:
+        """Number of unknowns, nstate."""
+        return self.parts.layout.size
+
+    @property
     def facts(self) -> OperatorFacts:
         """Growth and size of the semi-discrete operator."""
         return self.wave_terms.facts
@@ -207,7 +212,7 @@ class WaveProblem:
     def _bounded(
         self, norms: PowerNorms, dt: float, tolerance: Tolerance, log_limit: float
     ) -> bool | None:
-        size, rate = self.parts.layout.size, self.rate(tolerance)
+        size, rate = self.size, self.rate(tolerance)
         return bounded(norms, size, dt, rate, log_limit, tolerance.horizon)
 
     def strict(self, dt: float) -> bool:

@@ -28,9 +28,9 @@ from levelstride.tableaux.tableau import Tableau
 NO_WIND = "no wind was given, the limit is for air at rest"
 DEFAULT_SPLIT = "sound"
 SCAN = (
-    f"scan ratio {SCAN_RATIO} at the binding wave as far below the limit as slow terms are not "
-    "small, wider ones elsewhere but where frozen layers grow, every sampled wave again at the "
-    "limit; narrower windows of instability can be missed"
+    f"scan ratio {SCAN_RATIO} at the binding wave at least over the factor two below the limit, "
+    "wider ones elsewhere but where frozen layers grow, every sampled wave again at the limit; "
+    "narrower windows of instability can be missed"
 )
 """How the steps of a scan were chosen, for the reader of an answer."""
 
