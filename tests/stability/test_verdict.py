@@ -130,15 +130,18 @@ def test_the_explicit_rate_of_sound_is_sound_across_the_grid():
     assert verdict.explicit_rate() == pytest.approx(sound_m_per_s * steepest, rel=1e-9)
 
 
-def test_an_implicit_pole_is_a_limit_and_not_a_failure():
-    """IMKG343a has a negative diagonal entry: damping meets its pole."""
-    damping = np.array([0.0, 0.0, 0.0, 0.5, 0.0])
-    verdict = verdict_of("IMKG343a", "all-implicit", slope=0.0, upper_damping_f=damping)
-    undamped = verdict_of("IMKG343a", "all-implicit", slope=0.0)
+def test_damping_meets_the_pole_of_a_negative_diagonal_entry():
+    """IMKG254b has one: mixing of the computational mode, which stands still, is met by it."""
+    undamped = verdict_of("IMKG254b", "all-implicit", slope=0.0)
     assert undamped.stable_step(TOLERANCE).step_s is None
-    problem = verdict.search.problems()[0]
-    negative = min(find("IMKG343a").a_implicit.diagonal())
-    fast = problem.parts.fast.to_dense()
-    most_damped = np.linalg.eigvals(fast)[np.argmin(np.linalg.eigvals(fast).real)].real
-    pole_s = 1 / (negative * most_damped)
-    assert not problem.stable(pole_s, TOLERANCE)
+    mixing = {"diffusivity_c": np.full(4, 1e3), "diffusivity_f": np.full(5, 1e3)}
+    verdict = verdict_of("IMKG254b", "all-implicit", "lorenz", slope=0.0, **mixing)
+    found = verdict.stable_step(TOLERANCE)
+    poles_s = [
+        1 / (-0.5 * rate.real)
+        for problem in verdict.search.problems()
+        for rate in np.linalg.eigvals(problem.parts.fast.to_dense())
+        if rate.real < 0 and abs(rate.imag) < 1e-9 * abs(rate)
+    ]
+    # unstable from somewhat below the first pole on
+    assert 0.9 * min(poles_s) < found.step_s < min(poles_s)

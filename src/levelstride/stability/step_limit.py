@@ -30,6 +30,9 @@ NOT_SMALL = 0.15
 FILL_REACH = 30.0
 """How far below its limit, as a factor, the binding wave is looked at closely at most."""
 
+SPREAD = 2.23
+"""Turns of the looks per unit of ln(wavenumber): the golden ratio from wave to wave sampled."""
+
 SMALLEST_FIRST_STEP = 1e-12
 """First step [s] below which a tableau counts as unstable however short the step."""
 
@@ -250,10 +253,14 @@ def _looks(problem: WaveProblem, start: float, cap: float) -> list[float]:
 
     Where the step is short for every rate of the operator, growth is a power of the step and needs
     few looks; where it is short for all that is not implicit, growth varies over factors of the
-    step; elsewhere the scan is dense. Steps at which a frozen layer grows by itself are added.
+    step; elsewhere the scan is dense. Every wave looks at steps of its own, so that those of
+    neighbouring waves, which lose stability at nearly the same steps, lie between. Steps at which
+    a frozen layer grows by itself are added.
     """
-    step, looks = start, [float(dt) for dt in problem.suspects if start < dt < cap]
+    looks = [float(dt) for dt in problem.suspects if start < dt < cap]
     thinning = THINNING if problem.size > MANY_UNKNOWNS else 1
+    turn = (SPREAD * np.log(problem.kappa)) % 1.0
+    step = start * SCAN_RATIO ** (turn * STRIDE_DENSE * thinning)
     while step < cap:
         looks.append(step)
         if step * problem.facts.largest_eigenvalue < 0.3:
