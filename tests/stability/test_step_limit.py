@@ -192,10 +192,10 @@ class FakeFacts:
 class FakeProblem:
     """A wave whose unstable steps are written down."""
 
-    facts, slow_rate = FakeFacts(), 1.0
+    facts, slow_rate, size = FakeFacts(), 1.0, 30
 
-    def __init__(self, kappa, *unstable):
-        self.kappa, self.unstable = kappa, unstable
+    def __init__(self, kappa, *unstable, suspects=()):
+        self.kappa, self.unstable, self.suspects = kappa, unstable, suspects
 
     def holds(self, dt):
         return not any(low <= dt < high for low, high in self.unstable)
@@ -213,14 +213,27 @@ def fake_search(*problems, largest_s=100.0):
 
 
 def test_the_first_loss_counts_and_not_the_last_return():
-    found = fake_search(FakeProblem(1.0, (2.0, 2.3), (5.0, 1e9)))
-    assert found.low < 2.0 <= found.high <= 2.0 * 1.001
+    found = fake_search(FakeProblem(1.0, (2.0, 2.5), (5.0, 1e9)))
+    assert found.low < 2.0 <= found.high <= 2.0 * 1.0011
 
 
-def test_a_narrow_window_of_the_binding_wave_is_found_below_its_limit():
+def test_a_short_window_is_found_where_a_frozen_layer_grows():
+    """Strides step over it; the local screen announces it."""
+    found = fake_search(FakeProblem(1.0, (2.0, 2.02), (5.0, 1e9), suspects=(1.7, 2.01)))
+    assert found.low == pytest.approx(2.0, rel=2e-3)
+
+
+def test_a_short_window_of_the_binding_wave_is_found_below_its_limit():
     """Strides step over it; the second look at the full scan ratio does not."""
     found = fake_search(FakeProblem(1.0, (3.0, 3.16), (5.0, 1e9)))
     assert found.low == pytest.approx(3.0, rel=2e-3)
+
+
+def test_every_wave_is_asked_again_at_the_answer():
+    """The second wave is stable at the first limit, but not at the one that refinement finds."""
+    first, second = FakeProblem(1.0, (4.0, 1e9)), FakeProblem(2.0, (3.9, 1e9))
+    third = FakeProblem(np.sqrt(2.0), (3.5, 1e9))
+    assert fake_search(first, second, third).low == pytest.approx(3.5, rel=2e-3)
 
 
 def test_nothing_bites():

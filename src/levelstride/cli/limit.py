@@ -108,7 +108,10 @@ def _show_bites(found: "Limit") -> None:
         ("what bites", wave(bites)),
         ("wavenumber", f"{number(bites.wavenumber_per_m)} 1/m along one axis"),
         ("growth", f"{number(bites.growth_per_s)} 1/s just beyond the limit"),
-        ("period", "" if bites.period_s is None else f"{number(bites.period_s)} s"),
+        (
+            "period seen by the step",
+            "" if bites.period_s is None else f"{number(bites.period_s)} s",
+        ),
         ("vertical wavelength", vertical),
         ("energy by field", shares(bites.energy_share)),
         ("energy by kind", shares(bites.kind_share)),

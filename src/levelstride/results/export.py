@@ -134,7 +134,7 @@ def to_text(advice: Advice) -> str:
         ("column", _one_line(advice.title)),
         *_best_lines(advice),
         ("hash", f"sha256 {provenance.column_sha256}"),
-        ("caution", " ".join(filter(None, (advice.caution, advice.wind_note)))),
+        ("caution", " Note: ".join(filter(None, (advice.caution, advice.wind_note)))),
     ]
     return "".join(f"{name + ':':<11}{text}\n" for name, text in lines)
 

@@ -97,7 +97,7 @@ def cause_of_growth(terms: Mapping[str, Banded], column: Column, air: Background
     """
     whole = _growth(terms, ())
     candidates = [
-        ("convection", ("buoyancy", "stratification"), bool(np.any(air.n_squared_c < 0))),
+        ("convection", ("buoyancy", "stratification"), _turns_over(air)),
         ("shear", ("shear",), _richardson_below_quarter(column, air)),
         ("formulation (frozen updraft)", ("vertical-advection",), True),
         (
@@ -123,3 +123,7 @@ def _growth(terms: Mapping[str, Banded], without: tuple[str, ...]) -> float:
 def _richardson_below_quarter(column: Column, air: Background) -> bool:
     shear = np.diff(air.wind_f) / column.levels.thickness_m
     return bool(np.any(air.n_squared_c < 0.25 * shear**2))
+
+
+def _turns_over(air: Background) -> bool:
+    return bool(np.any(air.n_squared_c < 0) or np.any(air.n_squared_f < 0))

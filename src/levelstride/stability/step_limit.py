@@ -21,6 +21,18 @@ FIRST_STEP = 1e-3
 STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 12, 4
 """Steps of the scan from one look to the next in the three regimes of ``_looks``."""
 
+MANY_UNKNOWNS, THINNING = 300, 3
+"""Beyond so many unknowns strides are so many times longer and frozen layers say where to look."""
+
+NOT_SMALL = 0.15
+"""Step times rate above which a term is not small in one step."""
+
+FILL_REACH = 30.0
+"""How far below its limit, as a factor, the binding wave is looked at closely at most."""
+
+SPREAD = 2.23
+"""Turns of the looks per unit of ln(wavenumber): the golden ratio from wave to wave sampled."""
+
 SMALLEST_FIRST_STEP = 1e-12
 """First step [s] below which a tableau counts as unstable however short the step."""
 
@@ -212,15 +224,21 @@ class _Pass:
         return Bracket(low, high, problem)
 
     def fill_below(self) -> None:
-        """Look at the binding wave at the full scan ratio over the factor two below its limit."""
+        """Look at the binding wave at the full scan ratio over the factor two below the limit.
+
+        With few unknowns, as far below it as slow terms are not small.
+        """
         assert self.best is not None
-        bracket = self.best
-        step = bracket.low / 2
-        while step < bracket.low:
-            if not self._holds(bracket.problem, step):
-                self._note(bracket.problem, self._close_in(bracket.problem, 0.0, step))
+        limit, problem = self.best.low, self.best.problem
+        first = limit / 2
+        if problem.slow_rate > 0 and problem.size <= MANY_UNKNOWNS:
+            first = min(first, max(NOT_SMALL / problem.slow_rate, limit / FILL_REACH))
+        k = int(np.ceil(np.log(first / self._start) / np.log(SCAN_RATIO)))
+        while (step := self._start * SCAN_RATIO**k) < limit:
+            if not self._holds(problem, step):
+                self._note(problem, self._close_in(problem, 0.0, step))
                 return
-            step *= SCAN_RATIO
+            k += 1
 
     def recheck(self, problems: Iterable[WaveProblem]) -> None:
         """Check every wave again at the answer."""
@@ -235,16 +253,21 @@ def _looks(problem: WaveProblem, start: float, cap: float) -> list[float]:
 
     Where the step is short for every rate of the operator, growth is a power of the step and needs
     few looks; where it is short for all that is not implicit, growth varies over factors of the
-    step; elsewhere the scan is dense. Steps at which a frozen layer grows by itself are added.
+    step; elsewhere the scan is dense. Every wave looks at steps of its own, so that those of
+    neighbouring waves, which lose stability at nearly the same steps, lie between. Steps at which
+    a frozen layer grows by itself are added.
     """
-    step, looks = start, [float(dt) for dt in problem.suspects if start < dt < cap]
+    looks = [float(dt) for dt in problem.suspects if start < dt < cap]
+    thinning = THINNING if problem.size > MANY_UNKNOWNS else 1
+    turn = (SPREAD * np.log(problem.kappa)) % 1.0
+    step = start * SCAN_RATIO ** (turn * STRIDE_DENSE * thinning)
     while step < cap:
         looks.append(step)
         if step * problem.facts.largest_eigenvalue < 0.3:
             stride = STRIDE_SHORT
-        elif step * problem.slow_rate < 0.15:
-            stride = STRIDE_STIFF
+        elif step * problem.slow_rate < NOT_SMALL:
+            stride = STRIDE_STIFF * thinning
         else:
-            stride = STRIDE_DENSE
+            stride = STRIDE_DENSE * thinning
         step *= SCAN_RATIO**stride
     return [*sorted(looks), cap]

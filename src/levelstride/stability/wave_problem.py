@@ -22,6 +22,7 @@ from levelstride.splitting.splitting import Splitting
 from levelstride.stability.amplification import growth_rate, step_matrix
 from levelstride.stability.local import LocalScreen
 from levelstride.stability.own_growth import OperatorFacts
+from levelstride.stability.poles import is_skew, pole_steps
 from levelstride.stability.powers import (
     LOG_CONDITION,
     PowerNorms,
@@ -37,6 +38,9 @@ Matrix = NDArray[Any]
 
 SCREEN_FROM, SCREEN_TO_S, SCREEN_RATIO = 0.1, 1.0e4, 1.1
 """Steps at which layers are screened: from this share of the inverse of the fastest rate on."""
+
+SHORT_RUN, CLOSE = 3, 0.02
+"""Steps of the screen in a run that counts as short; ln of the ratio of looks around it."""
 
 SUSPICIOUS_SHARE = 0.5
 """Share of the strictest tolerated growth above which a frozen layer is worth a dense look."""
@@ -82,6 +86,16 @@ def wave_terms(column: Column, air: Background, kappa: float) -> WaveTerms:
     return WaveTerms(kappa, scaled, on_reference, facts, weights)
 
 
+@lru_cache(maxsize=256)
+def fast_eigenvalues(found: WaveTerms, implicit: frozenset[str]) -> NDArray[np.complex128]:
+    """Eigenvalues of the fast part of one wave; none where all are imaginary [1/s]."""
+    names = sorted(implicit & found.on_reference.keys())
+    matrix = total(found.weights.size, (found.on_reference[name] for name in names)).to_dense()
+    if is_skew(matrix):
+        return np.zeros(0, dtype=complex)
+    return np.linalg.eigvals(matrix).astype(complex)
+
+
 def lowest_log_limit(tolerance: Tolerance) -> float:
     """Logarithm of the power norm tolerated where exp(t L) does not grow."""
     return float(np.log(tolerance.transient_limit))
@@ -119,6 +133,11 @@ class WaveProblem:
         self._peaks: dict[tuple[float, Tolerance], bool] = {}
 
     @property
+    def size(self) -> int:
+        """Number of unknowns, nstate."""
+        return self.parts.layout.size
+
+    @property
     def facts(self) -> OperatorFacts:
         """Growth and size of the semi-discrete operator."""
         return self.wave_terms.facts
@@ -134,11 +153,16 @@ class WaveProblem:
 
     @cached_property
     def suspects(self) -> NDArray[np.float64]:
-        """Steps at which frozen layers grow by themselves, ascending [s].
+        """Steps at which frozen layers grow by themselves or a stage is singular, ascending [s].
 
-        Of every run of such steps the first and the worst one. They say where to look, not what is
-        there.
+        Of every run of steps that grow the first and the worst one, and of short runs what lies
+        closely around: the column's own window is elsewhere than that of the frozen layer. They
+        say where to look, not what is there.
         """
+        poles = pole_steps(fast_eigenvalues(self.wave_terms, self.splitting.implicit), self.tableau)
+        return np.union1d(self._grows_frozen(), poles[poles < SCREEN_TO_S])
+
+    def _grows_frozen(self) -> NDArray[np.float64]:
         if self.facts.largest_eigenvalue == 0.0:
             return np.zeros(0)
         first = SCREEN_FROM / self.facts.largest_eigenvalue
@@ -148,8 +172,13 @@ class WaveProblem:
         growth = LocalScreen(self.parts, self.tableau).growth(steps)
         flagged = np.flatnonzero(growth > SUSPICIOUS_SHARE / STANDARD_EFOLDINGS_S[0])
         runs = np.split(flagged, np.flatnonzero(np.diff(flagged) > 1) + 1)
-        chosen = {int(k) for run in runs if run.size for k in (run[0], run[np.argmax(growth[run])])}
-        return np.asarray(steps[sorted(chosen)])
+        looks = []
+        for run in runs if flagged.size else ():
+            looks += [steps[run[0]], steps[run[np.argmax(growth[run])]]]
+            if run.size <= SHORT_RUN:
+                low, high = steps[run[0]] / SCREEN_RATIO, steps[run[-1]] * SCREEN_RATIO
+                looks += np.geomspace(low, high, 1 + round(np.log(high / low) / CLOSE)).tolist()
+        return np.unique(looks)
 
     def matrix(self, dt: float) -> Matrix:
         """R(dt) in energy coordinates, shape (nstate, nstate)."""
@@ -207,7 +236,7 @@ class WaveProblem:
     def _bounded(
         self, norms: PowerNorms, dt: float, tolerance: Tolerance, log_limit: float
     ) -> bool | None:
-        size, rate = self.parts.layout.size, self.rate(tolerance)
+        size, rate = self.size, self.rate(tolerance)
         return bounded(norms, size, dt, rate, log_limit, tolerance.horizon)
 
     def strict(self, dt: float) -> bool:

@@ -27,6 +27,12 @@ from levelstride.tableaux.tableau import Tableau
 
 NO_WIND = "no wind was given, the limit is for air at rest"
 DEFAULT_SPLIT = "sound"
+SCAN = (
+    f"scan ratio {SCAN_RATIO} at the binding wave at least over the factor two below the limit, "
+    "wider ones elsewhere but where frozen layers grow, every sampled wave again at the limit; "
+    "narrower windows of instability can be missed"
+)
+"""How the steps of a scan were chosen, for the reader of an answer."""
 
 _BASELINES: dict[tuple[Column, tuple[float, ...], Tolerance], float | None] = {}
 
@@ -226,27 +232,19 @@ def _row_bites(column: Column, courant: CourantLimit) -> Bites:
 
 
 def _certified(found: StableStep, tolerance: Tolerance, verdict: ColumnVerdict) -> str:
-    scan = (
-        f"every sampled wave scanned from {number(1e-3)} of the fastest rate upward and checked "
-        f"again at the limit, the binding one at ratio {SCAN_RATIO} below it; narrower windows of "
-        "instability can be missed"
-    )
     if found.step_s is None:
-        return f"power norms up to {number(verdict.largest_s)} s; {scan}"
+        return f"power norms at every sampled wave up to {number(verdict.largest_s)} s; {SCAN}"
     if not found.waves_bind or found.bracket is None:
-        return f"symbols of every frozen row on both sides of the limit; {scan}"
+        return f"symbols of every frozen row on both sides of the limit; {SCAN}"
     low, high, problem = found.bracket.low, found.bracket.high, found.bracket.problem
-    rate = problem.rate(tolerance)
+    rate, wave = problem.rate(tolerance), f"at wavenumber {problem.kappa:.4g} 1/m"
     below, above = problem.growth(low), problem.growth(high)
     if below <= rate < above:
         return (
-            f"dense eigenvalues at wavenumber {problem.kappa:.4g} 1/m: growth {below:.3g} 1/s at "
-            f"{low:.6g} s, {above:.3g} 1/s at {high:.6g} s, {rate:.3g} 1/s tolerated; {scan}"
+            f"dense eigenvalues {wave}: growth {below:.3g} 1/s at {low:.6g} s, {above:.3g} 1/s at "
+            f"{high:.6g} s, {rate:.3g} 1/s tolerated; {SCAN}"
         )
-    return (
-        f"energy norms of powers of the step matrix at wavenumber {problem.kappa:.4g} 1/m on both "
-        f"sides of the limit, {low:.6g} s and {high:.6g} s; {scan}"
-    )
+    return f"energy norms of powers of R {wave}, at {low:.6g} s and {high:.6g} s; {SCAN}"
 
 
 def _own_growth(verdict: ColumnVerdict) -> tuple[OwnGrowth, ...]:
