@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import replace
+from functools import lru_cache
 
 import numpy as np
 
@@ -23,6 +24,7 @@ from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import WaveProblem
 from levelstride.stepper.imex import Stepper
 from levelstride.studies.methods import tableau_of
+from levelstride.tableaux.library import find, names
 from levelstride.tableaux.tableau import Tableau
 
 NO_WIND = "no wind was given, the limit is for air at rest"
@@ -33,8 +35,6 @@ SCAN = (
     "narrower windows of instability can be missed"
 )
 """How the steps of a scan were chosen, for the reader of an answer."""
-
-_BASELINES: dict[tuple[Column, tuple[float, ...], Tolerance], float | None] = {}
 
 
 @on_one_thread
@@ -168,17 +168,30 @@ def _gain(
 def all_explicit_step(column: Column, tableau: Tableau, tolerance: Tolerance) -> float | None:
     """Stable step of the tableau's explicit part on the whole operator [s]; None if none.
 
-    Tableaux whose explicit parts share a stability polynomial take the same steps.
+    Explicit parts that share a stability polynomial take the same steps, so one stands for all.
     """
-    polynomial = tuple(float(c) for c in np.round(explicit_polynomial(tableau), 13))
-    key = (column, polynomial, tolerance)
-    if key not in _BASELINES:
+    return _baseline(column, _representative(tableau), tolerance)
+
+
+@lru_cache(maxsize=64)
+def _baseline(column: Column, tableau: Tableau, tolerance: Tolerance) -> float | None:
+    try:
         verdict = ColumnVerdict(column, resolve("all-explicit"), tableau)
-        try:
-            _BASELINES[key] = verdict.stable_step(tolerance).step_s
-        except CalculationError:
-            _BASELINES[key] = None
-    return _BASELINES[key]
+        return verdict.stable_step(tolerance).step_s
+    except CalculationError:
+        return None
+
+
+@lru_cache(maxsize=256)
+def _representative(tableau: Tableau) -> Tableau:
+    """The first tableau of the library with the same explicit polynomial, else the given one."""
+    wanted = explicit_polynomial(tableau)
+    for name in names():
+        other = find(name)
+        difference = np.polynomial.polynomial.polysub(explicit_polynomial(other), wanted)
+        if np.abs(difference).max() < 1e-13:
+            return other
+    return tableau
 
 
 def _binding_air(found: StableStep) -> str:
