@@ -192,7 +192,7 @@ class FakeFacts:
 class FakeProblem:
     """A wave whose unstable steps are written down."""
 
-    facts, slow_rate, size = FakeFacts(), 1.0, 30
+    facts, slow_rate, size = FakeFacts(), 1.0, 130
 
     def __init__(self, kappa, *unstable, suspects=()):
         self.kappa, self.unstable, self.suspects = kappa, unstable, suspects

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from levelstride.errors import CalculationError
-from levelstride.stability.wave_problem import WaveProblem
+from levelstride.stability.wave_problem import FEW_UNKNOWNS, WaveProblem
 
 Criterion = Callable[[WaveProblem, float], bool]
 Maker = Callable[[int, float], WaveProblem]
@@ -21,7 +21,7 @@ FIRST_STEP = 1e-3
 STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 12, 4
 """Steps of the scan from one look to the next in the three regimes of ``_looks``."""
 
-MANY_UNKNOWNS, THINNING = 300, 3
+MANY_UNKNOWNS, THINNING = 300, 3.0
 """Beyond so many unknowns strides are so many times longer and frozen layers say where to look."""
 
 NOT_SMALL = 0.15
@@ -258,16 +258,23 @@ def _looks(problem: WaveProblem, start: float, cap: float) -> list[float]:
     a frozen layer grows by itself are added.
     """
     looks = [float(dt) for dt in problem.suspects if start < dt < cap]
-    thinning = THINNING if problem.size > MANY_UNKNOWNS else 1
+    thinning = _thinning(problem.size)
     turn = (SPREAD * np.log(problem.kappa)) % 1.0
     step = start * SCAN_RATIO ** (turn * STRIDE_DENSE * thinning)
     while step < cap:
         looks.append(step)
         if step * problem.facts.largest_eigenvalue < 0.3:
-            stride = STRIDE_SHORT
+            stride = float(STRIDE_SHORT)
         elif step * problem.slow_rate < NOT_SMALL:
             stride = STRIDE_STIFF * thinning
         else:
             stride = STRIDE_DENSE * thinning
         step *= SCAN_RATIO**stride
     return [*sorted(looks), cap]
+
+
+def _thinning(size: int) -> float:
+    """How many times longer the strides are with so many unknowns; half where looks cost little."""
+    if size <= FEW_UNKNOWNS:
+        return 0.5
+    return THINNING if size > MANY_UNKNOWNS else 1.0

@@ -39,6 +39,9 @@ Matrix = NDArray[Any]
 SCREEN_FROM, SCREEN_TO_S, SCREEN_RATIO = 0.1, 1.0e4, 1.1
 """Steps at which layers are screened: from this share of the inverse of the fastest rate on."""
 
+FEW_UNKNOWNS = 100
+"""Up to so many unknowns a dense look costs less than asking the frozen layers."""
+
 SHORT_RUN, CLOSE = 3, 0.02
 """Steps of the screen in a run that counts as short; ln of the ratio of looks around it."""
 
@@ -160,7 +163,8 @@ class WaveProblem:
         say where to look, not what is there.
         """
         poles = pole_steps(fast_eigenvalues(self.wave_terms, self.splitting.implicit), self.tableau)
-        return np.union1d(self._grows_frozen(), poles[poles < SCREEN_TO_S])
+        poles = poles[poles < SCREEN_TO_S]
+        return poles if self.size <= FEW_UNKNOWNS else np.union1d(self._grows_frozen(), poles)
 
     def _grows_frozen(self) -> NDArray[np.float64]:
         if self.facts.largest_eigenvalue == 0.0:
