@@ -70,9 +70,9 @@ def test_the_peak_is_the_largest_of_the_asked_powers(seed, horizon):
         if m <= 1.5 * last
     }
     peak = power_peak(matrix, dt, rate, horizon)
-    assert peak.log_value == pytest.approx(max(values.values()), abs=1e-9)
-    assert values[peak.steps] == pytest.approx(peak.log_value, abs=1e-9)
-    assert peak.log_norm == pytest.approx(peak.log_value + peak.steps * dt * rate, abs=1e-9)
+    assert peak.log_value == pytest.approx(max(values.values()), abs=1e-6)
+    assert values[peak.steps] == pytest.approx(peak.log_value, abs=1e-6)
+    assert peak.log_norm == pytest.approx(peak.log_value + peak.steps * dt * rate, abs=1e-6)
 
 
 @given(seeds, st.floats(0.9, 1.1), st.floats(-2.0, 6.0))

@@ -18,13 +18,13 @@ BISECTION = 1.001
 FIRST_STEP = 1e-3
 """First step scanned, over the largest |eigenvalue| of the whole operator."""
 
-STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 12, 4
+STRIDE_SHORT, STRIDE_STIFF, STRIDE_DENSE = 94, 24, 4
 """Steps of the scan from one look to the next in the three regimes of ``_looks``."""
 
 MANY_UNKNOWNS, THINNING = 300, 3.0
 """Beyond so many unknowns strides are so many times longer and frozen layers say where to look."""
 
-NOT_SMALL = 0.15
+SHORT, NOT_SMALL = 0.3, 0.15
 """Step times rate above which a term is not small in one step."""
 
 FILL_REACH = 30.0
@@ -260,17 +260,26 @@ def _looks(problem: WaveProblem, start: float, cap: float) -> list[float]:
     looks = [float(dt) for dt in problem.suspects if start < dt < cap]
     thinning = _thinning(problem.size)
     turn = (SPREAD * np.log(problem.kappa)) % 1.0
-    step = start * SCAN_RATIO ** (turn * STRIDE_DENSE * thinning)
+    short, small = _ends(problem)
+    step = start * SCAN_RATIO ** (turn * STRIDE_DENSE)
     while step < cap:
         looks.append(step)
-        if step * problem.facts.largest_eigenvalue < 0.3:
-            stride = float(STRIDE_SHORT)
-        elif step * problem.slow_rate < NOT_SMALL:
-            stride = STRIDE_STIFF * thinning
+        # a stride ends where the next regime begins
+        if step < short:
+            first = short * SCAN_RATIO ** (turn * STRIDE_STIFF * thinning)
+            step = min(step * SCAN_RATIO**STRIDE_SHORT, first)
+        elif step < small:
+            first = small * SCAN_RATIO ** (turn * STRIDE_DENSE * thinning)
+            step = min(step * SCAN_RATIO ** (STRIDE_STIFF * thinning), first)
         else:
-            stride = STRIDE_DENSE * thinning
-        step *= SCAN_RATIO**stride
+            step *= SCAN_RATIO ** (STRIDE_DENSE * thinning)
     return [*sorted(looks), cap]
+
+
+def _ends(problem: WaveProblem) -> tuple[float, float]:
+    """Steps up to which all rates, and those of slow terms, are small in one step [s]."""
+    fastest, slow = problem.facts.largest_eigenvalue, problem.slow_rate
+    return SHORT / fastest if fastest else np.inf, NOT_SMALL / slow if slow else np.inf
 
 
 def _thinning(size: int) -> float:
