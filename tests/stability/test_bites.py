@@ -14,7 +14,7 @@ from levelstride.stability.bites import anatomy, critical_state, layers_holding
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
 from levelstride.stability.wave_problem import WaveProblem
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 from oracles.columns import STAGGERINGS, isothermal_column
 
 TOLERANCE = Tolerance(86400.0, 1000.0)

@@ -8,7 +8,7 @@ from levelstride.splitting import resolve
 from levelstride.stability.courant import courant_limit
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 
 RATE, LONGEST_S = 1 / 86400.0, 1e4
 

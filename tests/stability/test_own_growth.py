@@ -11,7 +11,7 @@ from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
 from levelstride.stability.wave_problem import wave_terms
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 
 TOLERANCE = Tolerance(86400.0, 1000.0)
 

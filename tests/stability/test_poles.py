@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from levelstride.stability.poles import is_skew, pole_steps
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 
 
 def test_a_negative_diagonal_entry_meets_damping():

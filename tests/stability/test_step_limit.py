@@ -10,7 +10,7 @@ from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.step_limit import StepSearch
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 from oracles.plain_search import PlainWave, plain_stable_step
 
 HORIZONTAL_PAIR = "horizontal-pressure-gradient+horizontal-divergence"

@@ -10,7 +10,7 @@ from levelstride.splitting import resolve
 from levelstride.stability.step_limit import Bracket
 from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 from oracles.columns import STAGGERINGS, isothermal_column
 
 TOLERANCE = Tolerance(86400.0, 1000.0)

@@ -3,7 +3,7 @@ import pytest
 from levelstride.column.column import Advice
 from levelstride.splitting.splitting import resolve
 from levelstride.studies.cost import step_cost
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 
 
 def cost(tableau, split, **weights):

@@ -14,7 +14,7 @@ from levelstride.results.dataset import Limit
 from levelstride.results.export import to_json
 from levelstride.stability.tolerance import Tolerance
 from levelstride.studies.limit import NO_WIND, all_explicit_step, limit
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 
 PLAIN = {
     "title": "Test",

@@ -27,7 +27,7 @@ from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
 from levelstride.stability.wave_problem import WaveProblem, wave_terms
 from levelstride.studies.limit import limit
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 from oracles.columns import isothermal_column
 
 TEMPERATURE_K = 250.0

@@ -35,7 +35,7 @@ def tableaux(
 ) -> None:
     """List the IMEX tableaux, or show one with its audit."""
     from levelstride.results.export import to_json
-    from levelstride.tableaux.library import find, names
+    from levelstride.tableaux.lookup import find, names
     from levelstride.tableaux.user_file import read_file
 
     own = read_file(file) if file is not None else ()

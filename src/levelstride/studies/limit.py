@@ -24,7 +24,7 @@ from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import WaveProblem
 from levelstride.stepper.imex import Stepper
 from levelstride.studies.methods import tableau_of
-from levelstride.tableaux.library import find, names
+from levelstride.tableaux.lookup import find, names
 from levelstride.tableaux.tableau import Tableau
 
 NO_WIND = "no wind was given, the limit is for air at rest"

@@ -6,7 +6,7 @@ from functools import lru_cache
 from levelstride.column.column import Column
 from levelstride.errors import InputError
 from levelstride.splitting.splitting import Splitting, resolve
-from levelstride.tableaux.library import find
+from levelstride.tableaux.lookup import find
 from levelstride.tableaux.tableau import Tableau
 from levelstride.tableaux.user_file import read_file
 

@@ -8,7 +8,7 @@ from typing import Any, Final
 from levelstride.errors import InputError
 from levelstride.tableaux.audit import audit
 from levelstride.tableaux.entry import DecimalText, Kind, build, nearest
-from levelstride.tableaux.library import bare, find, names
+from levelstride.tableaux.lookup import bare, find, names
 from levelstride.tableaux.tableau import Tableau
 
 _TABLES: Final[Mapping[str, Kind]] = {"tableau": "additive", "explicit": "explicit"}

@@ -10,7 +10,7 @@ from hypothesis import strategies as st
 
 from levelstride.errors import InputError
 from levelstride.tableaux import find, names
-from levelstride.tableaux.library import bare
+from levelstride.tableaux.lookup import bare
 
 
 def test_library_is_complete():
