@@ -29,7 +29,7 @@ def cluster(address: str) -> Iterator[Executor]:
     Parameters
     ----------
     address : str
-        Address of the scheduler, for instance ``tcp://10.0.0.5:8786``.
+        Address of the scheduler, for instance ``tcp://scheduler.example:8786``.
 
     Raises
     ------
@@ -80,7 +80,7 @@ def _connected(connect: Callable[..., Any], address: str) -> Any:
         reason = str(error).split("\n")[0] or type(error).__name__
         raise InputError(
             f"--cluster {address}: no Dask scheduler answers there ({reason}); start one with "
-            "'dask scheduler' and give the address that it prints, as in tcp://10.0.0.5:8786"
+            "'dask scheduler' and give the address that it prints, as in tcp://scheduler.example:8786"
         ) from None
 
 
