@@ -13,12 +13,12 @@ def die(_=None):
 
 
 def die_once(mark):
-    """Kill the worker at the first try, leave a mark for the second."""
-    path = Path(mark)
-    if not path.exists():
-        path.touch()
-        die()
-    return "survived"
+    """Kill the worker that is first to leave the mark, and no other."""
+    try:
+        Path(mark).touch(exist_ok=False)
+    except FileExistsError:
+        return "survived"
+    return die()
 
 
 def count_and_die(folder):
