@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from levelstride.stability.poles import is_skew, pole_steps
+from levelstride.stability.poles import pole_steps
 from levelstride.tableaux.lookup import find
 
 
@@ -30,10 +30,3 @@ def test_positive_entries_meet_growth_alone():
 
 def test_explicit_tableaux_have_none():
     assert pole_steps(np.array([0.01 + 0j]), find("RK4")).size == 0
-
-
-def test_what_is_skew():
-    matrix = np.array([[0, 1, 2j], [-1, 3j, 0], [2j, 0, 0]])
-    assert is_skew(matrix)
-    assert not is_skew(matrix + 1e-9 * np.eye(3))
-    assert is_skew(np.zeros((2, 2), dtype=complex))

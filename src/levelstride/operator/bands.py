@@ -142,6 +142,30 @@ class Banded:
             y[low:high] += weights * x[low + offset : high + offset]
         return y
 
+    def adjoint(self) -> Banded:
+        """Return the conjugate transpose."""
+        n = self.size
+        turned = np.zeros_like(self.diagonals)
+        for k, offset in enumerate(self.offsets):
+            low, high = max(0, -offset), min(n, n - offset)
+            turned[k, low + offset : high + offset] = self.diagonals[k, low:high].conj()
+        order = np.argsort([-offset for offset in self.offsets], kind="stable")
+        return Banded(tuple(-self.offsets[k] for k in order), turned[order])
+
+    @property
+    def frobenius(self) -> float:
+        """Frobenius norm."""
+        return float(np.linalg.norm(self.diagonals))
+
+    @property
+    def norm_bound(self) -> float:
+        """Upper bound of the spectral norm: root of the largest row sum times column sum."""
+        rows, columns = (
+            float(np.abs(one.diagonals).sum(axis=0).max(initial=0.0))
+            for one in (self, self.adjoint())
+        )
+        return float(np.sqrt(rows * columns))
+
     def to_dense(self) -> Matrix:
         """Return the full matrix, shape (nstate, nstate)."""
         n = self.size

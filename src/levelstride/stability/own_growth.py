@@ -13,6 +13,7 @@ from scipy.linalg import expm
 from levelstride.column.air import Background
 from levelstride.column.column import Column
 from levelstride.operator.bands import Banded, total
+from levelstride.stability.extremes import is_skew, largest_modulus, only_damps, spectral_norm
 from levelstride.stability.powers import power_norms
 
 Matrix = NDArray[Any]
@@ -29,38 +30,40 @@ class OperatorFacts:
 
     Parameters
     ----------
-    operator : ndarray, shape (nstate, nstate)
+    operator : Banded
         L in energy coordinates.
     horizon : float
         Time up to which exp(t L) is followed [s].
 
     Attributes
     ----------
-    own_growth : float
-        Largest real part of the eigenvalues of L, zero if negative [1/s].
     largest_eigenvalue : float
         Largest modulus of the eigenvalues of L [1/s].
+    gains_energy : bool
+        Whether any state gains energy, for however short a time.
     """
 
-    def __init__(self, operator: Matrix, horizon: float) -> None:
-        self._operator: Matrix | None = None  # kept only where exp(t L) may have to be followed
-        self._horizon = horizon
-        self._size = float(np.linalg.norm(operator, 2))
-        self.own_growth, self.largest_eigenvalue = 0.0, self._size
-        hermitian = (operator + operator.conj().T) / 2
-        if np.linalg.norm(hermitian) <= ROUND_OFF * self._size:
-            return
-        eigenvalues = np.linalg.eigvals(operator)
-        self.largest_eigenvalue = float(np.abs(eigenvalues).max())
-        if np.linalg.eigvalsh(hermitian)[-1] > ROUND_OFF * self._size:
-            self.own_growth = max(0.0, float(eigenvalues.real.max()))
-            self._operator = operator
+    def __init__(self, operator: Banded, horizon: float) -> None:
+        self._operator, self._horizon = operator, horizon
+        self._size = spectral_norm(operator)
+        self.largest_eigenvalue, self.gains_energy = self._size, False
+        if not is_skew(operator, ROUND_OFF):
+            self.largest_eigenvalue = largest_modulus(operator)
+            self.gains_energy = not only_damps(operator, ROUND_OFF * self._size)
+
+    @cached_property
+    def own_growth(self) -> float:
+        """Largest real part of the eigenvalues of L, zero if negative [1/s]."""
+        if not self.gains_energy:
+            return 0.0
+        eigenvalues = np.linalg.eigvals(self._operator.to_dense())
+        return max(0.0, float(eigenvalues.real.max()))
 
     @cached_property
     def _exponential(self) -> tuple[tuple[float, float], ...]:
-        if self._operator is None:
+        if not self.gains_energy:
             return ()
-        return _exponential_norms(self._operator, self._size, self._horizon)
+        return _exponential_norms(self._operator.to_dense(), self._size, self._horizon)
 
     def log_exponential_peak(self, rate: float) -> float:
         """Logarithm of the largest ||exp(t L)|| exp(-t rate) over t >= 0, at least zero."""

@@ -42,8 +42,3 @@ def pole_steps(eigenvalues: NDArray[np.complex128], tableau: Tableau) -> Array:
         # where |1 - dt met| is smallest
         steps.append(met.real / np.abs(met) ** 2)
     return np.unique(np.concatenate(steps)) if steps else np.zeros(0)
-
-
-def is_skew(matrix: NDArray[np.complex128]) -> bool:
-    """Whether a matrix is skew-Hermitian but for round-off, all eigenvalues imaginary."""
-    return bool(np.linalg.norm(matrix + matrix.conj().T) <= 1e-12 * np.linalg.norm(matrix))

@@ -4,11 +4,11 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-import numpy as np
-
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
 from levelstride.splitting.splitting import Splitting
+from levelstride.stability.extremes import is_skew, largest_modulus, spectral_norm
+from levelstride.stability.own_growth import ROUND_OFF
 from levelstride.stability.courant import CourantLimit, courant_limit
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.step_limit import SCAN_RATIO, Bracket, StepSearch
@@ -168,14 +168,10 @@ class ColumnVerdict:
 
     def explicit_rate(self) -> float:
         """Largest |eigenvalue| of the partner pairs with an explicit member [1/s]."""
-        largest = 0.0
-        for problem in self.search.problems():
-            pairs = problem.explicit_pairs()
-            size = float(np.linalg.norm(pairs, 2)) if np.any(pairs) else 0.0
-            if size > 0 and np.linalg.norm(pairs + pairs.conj().T) > 1e-12 * size:
-                size = float(np.abs(np.linalg.eigvals(pairs)).max())
-            largest = max(largest, size)
-        return largest
+        return max(
+            spectral_norm(pairs) if is_skew(pairs, ROUND_OFF) else largest_modulus(pairs)
+            for pairs in (problem.explicit_pairs() for problem in self.search.problems())
+        )
 
     def _courant(self, tolerance: Tolerance) -> tuple[CourantLimit | None, str]:
         best: tuple[CourantLimit | None, str] = (None, "")

@@ -21,8 +21,9 @@ from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.amplification import growth_rate, step_matrix
 from levelstride.stability.local import LocalScreen
-from levelstride.stability.own_growth import OperatorFacts
-from levelstride.stability.poles import is_skew, pole_steps
+from levelstride.stability.extremes import is_skew, only_damps
+from levelstride.stability.own_growth import ROUND_OFF, OperatorFacts
+from levelstride.stability.poles import pole_steps
 from levelstride.stability.powers import (
     LOG_CONDITION,
     PowerNorms,
@@ -85,18 +86,27 @@ def wave_terms(column: Column, air: Background, kappa: float) -> WaveTerms:
         built = assemble(column, column.reference, wave)
         on_reference = {name: matrix.similar(scale) for name, matrix in built.items()}
     longest = 10 * max(column.advice.efolding_s, Tolerance.LONGEST_EFOLDING_S)
-    facts = OperatorFacts(total(layout.size, scaled.values()).to_dense(), longest)
+    facts = OperatorFacts(total(layout.size, scaled.values()), longest)
     return WaveTerms(kappa, scaled, on_reference, facts, weights)
 
 
 @lru_cache(maxsize=256)
-def fast_eigenvalues(found: WaveTerms, implicit: frozenset[str]) -> NDArray[np.complex128]:
-    """Eigenvalues of the fast part of one wave; none where all are imaginary [1/s]."""
+def fast_eigenvalues(
+    found: WaveTerms, implicit: frozenset[str], *, damped: bool
+) -> NDArray[np.complex128]:
+    """Eigenvalues of the fast part of one wave that a stage can meet [1/s].
+
+    None where all are imaginary, and where all that are not are damped unless ``damped`` ones are
+    asked for.
+    """
     names = sorted(implicit & found.on_reference.keys())
-    matrix = total(found.weights.size, (found.on_reference[name] for name in names)).to_dense()
-    if is_skew(matrix):
+    fast = total(found.weights.size, (found.on_reference[name] for name in names))
+    if is_skew(fast, ROUND_OFF):
         return np.zeros(0, dtype=complex)
-    return np.linalg.eigvals(matrix).astype(complex)
+    if not damped and only_damps(fast, ROUND_OFF * fast.norm_bound):
+        return np.zeros(0, dtype=complex)
+    return np.linalg.eigvals(fast.to_dense()).astype(complex)
+
 
 
 def lowest_log_limit(tolerance: Tolerance) -> float:
@@ -148,11 +158,7 @@ class WaveProblem:
     @cached_property
     def slow_rate(self) -> float:
         """Bound on the rates of what is not implicit in the stages [1/s]."""
-        rest = self.parts.slow + self.parts.after
-        if not rest.offsets:
-            return 0.0
-        size = np.abs(rest.to_dense())
-        return float(np.sqrt(size.sum(0).max() * size.sum(1).max()))
+        return (self.parts.slow + self.parts.after).norm_bound
 
     @cached_property
     def suspects(self) -> NDArray[np.float64]:
@@ -162,7 +168,11 @@ class WaveProblem:
         closely around: the column's own window is elsewhere than that of the frozen layer. They
         say where to look, not what is there.
         """
-        poles = pole_steps(fast_eigenvalues(self.wave_terms, self.splitting.implicit), self.tableau)
+        diagonals = self.tableau.distinct_diagonals
+        met = fast_eigenvalues(
+            self.wave_terms, self.splitting.implicit, damped=min(diagonals, default=0.0) < 0
+        )
+        poles = pole_steps(met, self.tableau)
         poles = poles[poles < SCREEN_TO_S]
         return poles if self.size <= FEW_UNKNOWNS else np.union1d(self._grows_frozen(), poles)
 
@@ -272,12 +282,12 @@ class WaveProblem:
             )
         return self._peaks[key]
 
-    def explicit_pairs(self) -> Matrix:
-        """The operator made of all partner pairs with an explicit member, dense."""
+    def explicit_pairs(self) -> Banded:
+        """The operator made of all partner pairs with an explicit member."""
         chosen = set()
         for name, term in CATALOGUE.items():
             if term.partner and self.splitting.treatment[name] == "explicit":
                 chosen |= {name, term.partner}
         return total(
             self.parts.layout.size, (self.wave_terms.terms[name] for name in sorted(chosen))
-        ).to_dense()
+        )
