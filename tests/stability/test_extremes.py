@@ -4,7 +4,13 @@ import numpy as np
 import pytest
 
 from levelstride.operator.bands import Banded
-from levelstride.stability.extremes import is_skew, largest_modulus, only_damps, spectral_norm
+from levelstride.stability.extremes import (
+    full_spectral_norm,
+    is_skew,
+    largest_modulus,
+    only_damps,
+    spectral_norm,
+)
 
 OFFSETS = (-3, -1, 0, 2)
 
@@ -30,6 +36,7 @@ def test_as_full_matrices_say(n, dtype):
     assert matrix.frobenius == pytest.approx(np.linalg.norm(dense))
     norm = np.linalg.norm(dense, 2)
     assert spectral_norm(matrix) == pytest.approx(norm, rel=1e-5)
+    assert full_spectral_norm(dense) == pytest.approx(norm, rel=1e-5)
     assert norm <= matrix.norm_bound
     largest = np.abs(np.linalg.eigvals(dense)).max()
     assert largest_modulus(matrix) == pytest.approx(largest, rel=1e-5)

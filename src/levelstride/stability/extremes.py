@@ -32,12 +32,27 @@ def spectral_norm(matrix: Banded) -> float:
         return 0.0
     adjoint = matrix.adjoint()
     squared = _operator(matrix, lambda x: adjoint.apply(matrix.apply(x)))
+    found = _largest_singular(squared)
+    return matrix.norm_bound if found is None else found
+
+
+def full_spectral_norm(matrix: NDArray[Any]) -> float:
+    """Largest singular value of a full matrix; see ``spectral_norm`` for how."""
+    if matrix.shape[0] <= FEW_UNKNOWNS or not np.any(matrix):
+        return float(np.linalg.norm(matrix, 2))
+    turned = matrix.conj().T
+    squared = LinearOperator(matrix.shape, lambda x: turned @ (matrix @ x), dtype=matrix.dtype)
+    found = _largest_singular(squared)
+    return float(np.linalg.norm(matrix, 2)) if found is None else found
+
+
+def _largest_singular(squared: LinearOperator) -> float | None:
     try:
-        (largest,) = eigsh(squared, 1, which="LM", v0=_start(matrix.size), tol=PRECISION,
+        (largest,) = eigsh(squared, 1, which="LM", v0=_start(squared.shape[0]), tol=PRECISION,
                            return_eigenvectors=False)  # fmt: skip
     except ArpackError:
-        return matrix.norm_bound
-    return float(np.sqrt(largest))
+        return None
+    return float(np.sqrt(max(largest, 0.0)))
 
 
 def largest_modulus(matrix: Banded) -> float:

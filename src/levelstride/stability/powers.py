@@ -14,6 +14,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from levelstride.stability.extremes import full_spectral_norm
+
 Matrix = NDArray[Any]
 
 LARGEST_EXPONENT = 44
@@ -57,7 +59,7 @@ class ScaledMatrix:
         """Logarithm of the spectral norm."""
         if not np.all(np.isfinite(self.matrix)):
             return np.inf
-        norm = float(np.linalg.norm(self.matrix, 2))
+        norm = full_spectral_norm(self.matrix)
         return self.log_scale + np.log(norm) if norm > 0 else -np.inf
 
 

@@ -78,12 +78,12 @@ class StepSearch:
     """
 
     def __init__(self, make: Maker, nair: int, kappas: Sequence[float], largest_s: float) -> None:
-        self._make, self._nair, self.largest_s = make, nair, largest_s
+        self.problem, self.nair, self.largest_s = make, nair, largest_s
         self.kappas = [list(kappas) for _ in range(nair)]
 
     def problems(self) -> list[WaveProblem]:
         """All problems looked at so far, steepest gradient first."""
-        every = [self._make(air, k) for air in range(self._nair) for k in self.kappas[air]]
+        every = [self.problem(air, k) for air in range(self.nair) for k in self.kappas[air]]
         return sorted(every, key=lambda problem: -problem.slow_rate)
 
     def run(self, holds: Criterion, *, refine: bool = True) -> Bracket | None:
@@ -110,7 +110,7 @@ class StepSearch:
         pass_.cover(self.problems())
         if pass_.best is None:
             return None
-        for air in range(self._nair) if refine else ():
+        for air in range(self.nair) if refine else ():
             self._add_longer(pass_, air)
             self._refine(pass_, air)
         pass_.fill_below()
@@ -120,13 +120,13 @@ class StepSearch:
     def _add_longer(self, pass_: _Pass, air: int) -> None:
         """Go on to longer waves while the longest one is the worst and the limit still falls."""
         for _ in range(24):
-            longest = self._make(air, self.kappas[air][0])
+            longest = self.problem(air, self.kappas[air][0])
             assert pass_.best is not None
             if pass_.best.problem is not longest:
                 return
             before = pass_.best.low
             self.kappas[air].insert(0, longest.kappa / 2)
-            pass_.cover([self._make(air, longest.kappa / 2)])
+            pass_.cover([self.problem(air, longest.kappa / 2)])
             if before / pass_.best.low < RESOLVED:
                 return
 
@@ -138,25 +138,48 @@ class StepSearch:
             if not added:
                 return
             self.kappas[air] = sorted({*self.kappas[air], *added})
-            pass_.cover([self._make(air, kappa) for kappa in added])
+            pass_.cover([self.problem(air, kappa) for kappa in added])
             if before / pass_.best.low < 1 + (RESOLVED - 1) / 4:
                 return
 
     def _between(self, pass_: _Pass, air: int) -> list[float]:
         kappas = self.kappas[air]
-        limits = [pass_.limit(self._make(air, kappa)) for kappa in kappas]
+        limits = [pass_.limit(self.problem(air, kappa)) for kappa in kappas]
         assert pass_.best is not None
-        added = []
-        for i, limit in enumerate(limits):
-            left = limits[i - 1] if i else np.inf
-            right = limits[i + 1] if i + 1 < len(limits) else np.inf
-            flat = max(left, right) <= FLAT * limit
-            if limit <= min(left, right, NEAR_MINIMUM * pass_.best.low) and not flat:
-                if i:
-                    added.append(float(np.sqrt(kappas[i - 1] * kappas[i])))
-                if i + 1 < len(kappas):
-                    added.append(float(np.sqrt(kappas[i] * kappas[i + 1])))
-        return added
+        return between(kappas, limits, pass_.best.low)
+
+
+def between(kappas: Sequence[float], limits: Sequence[float], smallest: float) -> list[float]:
+    """Wavenumbers half-way to the neighbours of every local minimum near the smallest limit.
+
+    Parameters
+    ----------
+    kappas : sequence of float, length nwave
+        Ascending [1/m].
+    limits : sequence of float, length nwave
+        Longest stable step of each, inf where it is beyond all that matters [s].
+    smallest : float
+        The smallest limit [s].
+    """
+    added = []
+    for i, limit in enumerate(limits):
+        left = limits[i - 1] if i else np.inf
+        right = limits[i + 1] if i + 1 < len(limits) else np.inf
+        flat = max(left, right) <= FLAT * limit
+        if limit <= min(left, right, NEAR_MINIMUM * smallest) and not flat:
+            if i:
+                added.append(float(np.sqrt(kappas[i - 1] * kappas[i])))
+            if i + 1 < len(kappas):
+                added.append(float(np.sqrt(kappas[i] * kappas[i + 1])))
+    return added
+
+
+def no_step(kappa: float) -> CalculationError:
+    """Say that no step is stable, however short."""
+    return CalculationError(
+        f"no step down to {SMALLEST_FIRST_STEP:g} s keeps the tolerated growth at "
+        f"wavenumber {kappa:.4g} 1/m; allow a shorter e-folding time"
+    )
 
 
 class _Pass:
@@ -179,10 +202,7 @@ class _Pass:
             while not self._holds(problem, start):
                 start /= 10
                 if start < SMALLEST_FIRST_STEP:
-                    raise CalculationError(
-                        f"no step down to {SMALLEST_FIRST_STEP:g} s keeps the tolerated growth at "
-                        f"wavenumber {problem.kappa:.4g} 1/m; allow a shorter e-folding time"
-                    )
+                    raise no_step(problem.kappa)
         return start
 
     def cover(self, problems: Iterable[WaveProblem]) -> None:

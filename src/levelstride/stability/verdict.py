@@ -2,18 +2,22 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
 from levelstride.splitting.splitting import Splitting
-from levelstride.stability.extremes import is_skew, largest_modulus, spectral_norm
-from levelstride.stability.own_growth import ROUND_OFF
+from levelstride.stability.certificate import Certificate, settle
 from levelstride.stability.courant import CourantLimit, courant_limit
+from levelstride.stability.extremes import is_skew, largest_modulus, spectral_norm
+from levelstride.stability.march_search import MarchSearch
+from levelstride.stability.own_growth import ROUND_OFF
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.step_limit import SCAN_RATIO, Bracket, StepSearch
+from levelstride.stability.strict import strict_step
 from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
-from levelstride.stability.wave_problem import WaveProblem
+from levelstride.stability.wave_problem import FEW_UNKNOWNS, WaveProblem
 from levelstride.tableaux.tableau import Tableau
 
 LONGEST_STEP_S = 1.0e4
@@ -105,7 +109,14 @@ class ColumnVerdict:
             )
         return self._problems[key]
 
-    def stable_step(self, tolerance: Tolerance, *, refine: bool = True) -> StableStep:
+    @property
+    def marches(self) -> bool:
+        """Whether waves are marched, unknowns being too many to ask full matrices at every step."""
+        return self.problem(0, self.search.kappas[0][0]).size > FEW_UNKNOWNS
+
+    def stable_step(
+        self, tolerance: Tolerance, *, refine: bool = True, known_s: float = 0.0
+    ) -> StableStep:
         """Longest step that keeps all three criteria.
 
         Parameters
@@ -113,6 +124,8 @@ class ColumnVerdict:
         tolerance : Tolerance
         refine : bool
             Whether to add wavenumbers around the worst ones.
+        known_s : float
+            A step up to which all is known to be stable, from a stricter tolerance [s].
 
         Raises
         ------
@@ -124,22 +137,71 @@ class ColumnVerdict:
         if courant is not None:
             largest = min(largest, SAME * courant.step_s)
         self.search.largest_s = largest
-        bracket = self.search.run(lambda problem, dt: problem.stable(dt, tolerance), refine=refine)
+        if self.marches:
+            bracket = MarchSearch(self.search, tolerance).run(refine=refine, known_s=known_s)
+        else:
+            bracket = self.search.run(
+                lambda problem, dt: problem.stable(dt, tolerance), refine=refine
+            )
         steps = [limit.step_s for limit in [courant] if limit is not None]
         steps += [found.low for found in [bracket] if found is not None]
         return StableStep(min(steps, default=None), bracket, courant, courant_air)
+
+    def certified_step(
+        self, found: StableStep, tolerance: Tolerance
+    ) -> tuple[StableStep, Certificate]:
+        """Ask every sampled wave about both sides of a limit; find it again where one refutes it.
+
+        Without a wave that binds, every wave is asked about the Courant limit or the longest step.
+
+        Parameters
+        ----------
+        found : StableStep
+        tolerance : Tolerance
+
+        Returns
+        -------
+        StableStep
+            The same, or the shorter one that holds.
+        Certificate
+            Of that step.
+
+        Raises
+        ------
+        CalculationError
+            If no step holds, however short.
+        """
+        sampled = [float(kappa) for kappa in sampled_wavenumbers(self.column.horizontal)]
+        for air, kappas in enumerate(self.search.kappas):
+            self.search.kappas[air] = sorted({*kappas, *sampled})
+        bracket = found.bracket if found.waves_bind else None
+        low = (found.step_s or self.largest_s) if bracket is None else bracket.low
+        certificate = settle(self.search.problems(), low, tolerance, bracket)
+        if certificate.refuted:
+            low = certificate.low
+            step = low if found.courant is None else min(low, found.courant.step_s)
+            found = replace(found, step_s=step, bracket=certificate.bracket)
+        return found, certificate
 
     @staticmethod
     def grows_by_itself(problem: WaveProblem) -> bool:
         """Whether the semi-discrete operator grows at this wave, round-off aside."""
         return problem.facts.own_growth * STANDARD_EFOLDINGS_S[0] > GROWTH_SHARE
 
-    def strict_step(self) -> float | None:
-        """Longest step with no radius beyond one but for round-off; None if none or no limit."""
+    def strict_step(self, found: StableStep) -> float | None:
+        """Longest step with no radius beyond one but for round-off; None if none or no limit.
+
+        Parameters
+        ----------
+        found : StableStep
+            The stable step for any tolerance.
+        """
         if any(self.grows_by_itself(problem) for problem in self.search.problems()):
             return None
+        self.search.largest_s = self.largest_s
         try:
-            self.search.largest_s = self.largest_s
+            if self.marches:
+                return strict_step(self.search, found.bracket)
             bracket = self.search.run(lambda problem, dt: problem.strict(dt), refine=False)
         except CalculationError:
             return None
@@ -149,15 +211,14 @@ class ColumnVerdict:
         """Runs of steps beyond the first loss at which every wave is stable again."""
         if limit.bracket is None or limit.step_s is None or limit.courant_binds:
             return []
-        worst = limit.bracket.problem
-        others = sorted(self.search.problems(), key=lambda problem: problem is not worst)
         most = min(WINDOW_REACH * limit.step_s, self.largest_s)
         if limit.courant is not None:
             most = min(most, limit.courant.step_s)
         found: list[tuple[float, float]] = []
+        keeps = self._keeper(limit.bracket.problem, tolerance)
         dt, last = limit.bracket.high * SCAN_RATIO, 0.0
         while dt <= most:
-            if all(problem.stable(dt, tolerance) for problem in others):
+            if keeps(dt):
                 start = found.pop()[0] if found and last == found[-1][1] else dt
                 found.append((start, dt))
                 last = dt
@@ -165,6 +226,14 @@ class ColumnVerdict:
                 last = 0.0
             dt *= SCAN_RATIO
         return found
+
+    def _keeper(self, worst: WaveProblem, tolerance: Tolerance) -> Callable[[float], bool]:
+        """Return what tells whether a step keeps every wave stable, the worst asked first."""
+        others = sorted(self.search.problems(), key=lambda problem: problem is not worst)
+        if self.marches:
+            march = MarchSearch(self.search, tolerance)
+            return lambda dt: march.keeps([worst], dt) and march.keeps(others[1:], dt)
+        return lambda dt: all(problem.stable(dt, tolerance) for problem in others)
 
     def explicit_rate(self) -> float:
         """Largest |eigenvalue| of the partner pairs with an explicit member [1/s]."""

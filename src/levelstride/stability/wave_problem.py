@@ -20,8 +20,8 @@ from levelstride.operator.wave import Wave
 from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.amplification import growth_rate, step_matrix
-from levelstride.stability.local import LocalScreen
 from levelstride.stability.extremes import is_skew, only_damps
+from levelstride.stability.local import LocalScreen
 from levelstride.stability.own_growth import ROUND_OFF, OperatorFacts
 from levelstride.stability.poles import pole_steps
 from levelstride.stability.powers import (
@@ -108,7 +108,6 @@ def fast_eigenvalues(
     return np.linalg.eigvals(fast.to_dense()).astype(complex)
 
 
-
 def lowest_log_limit(tolerance: Tolerance) -> float:
     """Logarithm of the power norm tolerated where exp(t L) does not grow."""
     return float(np.log(tolerance.transient_limit))
@@ -143,6 +142,7 @@ class WaveProblem:
         )
         self._norms: dict[float, PowerNorms | None] = {}
         self._growth: dict[float, float] = {}
+        self._stable: dict[tuple[float, Tolerance], bool] = {}
         self._peaks: dict[tuple[float, Tolerance], bool] = {}
 
     @property
@@ -183,7 +183,7 @@ class WaveProblem:
         steps = np.geomspace(
             first, SCREEN_TO_S, 1 + int(np.log(SCREEN_TO_S / first) / np.log(SCREEN_RATIO))
         )
-        growth = LocalScreen(self.parts, self.tableau).growth(steps)
+        growth = self.local_screen.growth(steps)
         flagged = np.flatnonzero(growth > SUSPICIOUS_SHARE / STANDARD_EFOLDINGS_S[0])
         runs = np.split(flagged, np.flatnonzero(np.diff(flagged) > 1) + 1)
         looks = []
@@ -193,6 +193,11 @@ class WaveProblem:
                 low, high = steps[run[0]] / SCREEN_RATIO, steps[run[-1]] * SCREEN_RATIO
                 looks += np.geomspace(low, high, 1 + round(np.log(high / low) / CLOSE)).tolist()
         return np.unique(looks)
+
+    @cached_property
+    def local_screen(self) -> LocalScreen:
+        """Growth of the frozen layers of this wave."""
+        return LocalScreen(self.parts, self.tableau)
 
     def matrix(self, dt: float) -> Matrix:
         """R(dt) in energy coordinates, shape (nstate, nstate)."""
@@ -231,6 +236,12 @@ class WaveProblem:
         Power norms decide where they can, being rigorous; dense eigenvalues and exact power norms
         where they cannot.
         """
+        key = (dt, tolerance)
+        if key not in self._stable:
+            self._stable[key] = self._decide(dt, tolerance)
+        return self._stable[key]
+
+    def _decide(self, dt: float, tolerance: Tolerance) -> bool:
         norms = self.norms(dt)
         if norms is None:
             return False

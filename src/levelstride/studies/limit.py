@@ -90,7 +90,6 @@ def limit(
     method = tableau_of(column, tableau)
     tolerance = Tolerance(efolding_s or column.advice.efolding_s, column.advice.transient_limit)
     verdict = ColumnVerdict(column, splitting, method)
-    strict = verdict.strict_step()
     found = verdict.stable_step(tolerance)
     return Limit(
         tableau=method.name,
@@ -98,7 +97,7 @@ def limit(
         stable_step_s=found.step_s,
         unbounded=found.step_s is None,
         scanned_to_s=verdict.largest_s,
-        strict_step_s=strict,
+        strict_step_s=verdict.strict_step(found),
         stable_step_by_efolding=_by_efolding(verdict, tolerance, found),
         criterion=_criterion(found, tolerance),
         explicit_share=_explicit_share(verdict, found),
@@ -127,9 +126,10 @@ def _by_efolding(
     for efolding_s in STANDARD_EFOLDINGS_S:
         step = found.step_s
         if efolding_s != tolerance.efolding_s:
-            step = verdict.stable_step(
-                replace(tolerance, efolding_s=efolding_s), refine=False
-            ).step_s
+            looser = replace(tolerance, efolding_s=efolding_s)
+            longest = found.step_s or verdict.largest_s
+            known_s = longest if efolding_s < tolerance.efolding_s else 0.0
+            step = verdict.stable_step(looser, refine=False, known_s=known_s).step_s
         steps.append(StepAtTolerance(efolding_s=efolding_s, stable_step_s=step))
     return tuple(steps)
 

@@ -1,0 +1,350 @@
+"""The search for the longest stable step of large columns: marching finds, dense matrices judge.
+
+The scan of ``step_limit`` asks full matrices about every step it looks at. Here groups of waves
+march side by side instead, at a cost that grows with the number of unknowns alone, from where every
+rate of the operator is short in a step; below, and for growth too slow to show in a march, frozen
+layers say where to look. Full matrices are asked where a march leaves it open, and at the answer.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+
+import numpy as np
+
+from levelstride.stability.by_growth import first_failure
+from levelstride.stability.march import EFOLDINGS, March, Seen
+from levelstride.stability.step_limit import (
+    BISECTION,
+    NEAR_MINIMUM,
+    RESOLVED,
+    SCAN_RATIO,
+    SMALLEST_FIRST_STEP,
+    Bracket,
+    StepSearch,
+    between,
+    no_step,
+)
+from levelstride.stability.tolerance import Tolerance
+from levelstride.stability.wave_problem import WaveProblem
+
+GROUPS = 4
+"""Groups of waves that march together, each at steps between those of the others."""
+
+STRIDE, STRIDE_STIFF = 4, 24
+"""Steps of the scan from one look of a group to the next, and where slow terms are short."""
+
+SHORT, NOT_SMALL = 0.3, 0.15
+"""Step times rate up to which a term is short in one step."""
+
+CERTAIN_UNKNOWNS = 250
+"""Up to so many unknowns full matrices are asked about every wave at the answer."""
+
+DENSE_UNKNOWNS = 1300
+"""Up to so many unknowns full matrices judge the answer at the binding wave."""
+
+DOUBTFUL = 0.5
+"""Share of the tolerated rate from which growth of a wave that is not quiet is looked into."""
+
+SLOW_STRIDE = 1.8
+"""Factor between steps that are asked about slow growth."""
+
+MOST_STEPS = 20000
+"""Longest march that costs less than full matrices do."""
+
+FILL = 2.0
+"""How far below the limit, as a factor, the binding wave is looked at closely."""
+
+TOGETHER = 16
+"""Waves that march together where they may all look at the same step."""
+
+MOST_LONGER, MOST_HALVINGS = 24, 6
+"""How often longer waves are added, and how often the spacing is halved."""
+
+
+class MarchSearch:
+    """Longest step that keeps spectrum and transient criterion at every wave of every air state.
+
+    Parameters
+    ----------
+    waves : StepSearch
+        Holds the waves, and the step up to which is scanned.
+    tolerance : Tolerance
+    """
+
+    def __init__(self, waves: StepSearch, tolerance: Tolerance) -> None:
+        self._waves, self._tolerance = waves, tolerance
+        self._march = March(tolerance)
+        self._limits: dict[int, float] = {}
+        self._largest_s = waves.largest_s
+        self._known_s = 0.0
+        self.best: Bracket | None = None
+
+    def run(self, *, refine: bool = True, known_s: float = 0.0) -> Bracket | None:
+        """Find the limit.
+
+        Parameters
+        ----------
+        refine : bool
+            Whether to add wavenumbers around the worst ones.
+        known_s : float
+            A step up to which every wave is known to be stable [s].
+
+        Returns
+        -------
+        Bracket or None
+            None if nothing bites up to the longest step scanned.
+
+        Raises
+        ------
+        CalculationError
+            If no step is stable, however short.
+        """
+        self._known_s = known_s
+        problems = self._waves.problems()
+        for group in range(GROUPS):
+            self._scan(problems[group::GROUPS], group / GROUPS, known_s)
+        self._settle(refine=refine)
+        return self.best
+
+    def keeps(self, problems: Sequence[WaveProblem], dt: float) -> bool:
+        """Whether a step keeps waves stable, as far as marching tells."""
+        return not any(self._fails(group, dt) for group in _groups(problems))
+
+    def _fails(
+        self, problems: Sequence[WaveProblem], dt: float, *, long: bool = False
+    ) -> list[WaveProblem]:
+        """Waves that a step does not keep stable; of those that only full matrices tell, one."""
+        looks = self._march.look(problems, dt, long=long)
+        failing = [p for p, look in zip(problems, looks, strict=True) if look.seen is Seen.GROWS]
+        if failing:
+            return failing
+        unclear = [(look.rate, i) for i, look in enumerate(looks) if look.seen is Seen.UNCLEAR]
+        for _, i in sorted(unclear, reverse=True):
+            if not problems[i].stable(dt, self._tolerance):
+                return [problems[i]]
+        return []
+
+    def _grows_slowly(self, problems: Sequence[WaveProblem], dt: float) -> WaveProblem | None:
+        """A wave whose growth is too slow for a glance, told by full matrices; the worst of them.
+
+        All waves are asked about where full matrices cost little; elsewhere those that a march as
+        long as needed leaves unclear or, where that takes too many steps, those whose frozen layers
+        grow, the fastest first, until one is found.
+        """
+        tolerance = self._tolerance
+        if problems[0].size <= CERTAIN_UNKNOWNS:
+            slow = [problem for problem in problems if not problem.stable(dt, tolerance)]
+            worst = sorted(slow, key=lambda problem: problem.growth(dt))
+            return worst[-1] if worst else None
+        if EFOLDINGS * tolerance.efolding_s / dt <= MOST_STEPS:
+            rates = [
+                -np.inf if look.seen is Seen.QUIET else look.rate
+                for look in self._march.look(problems, dt, long=True)
+            ]
+        else:
+            steps_s = np.array([dt])
+            rates = [float(problem.local_screen.growth(steps_s)[0]) for problem in problems]
+        order: list[int] = np.argsort(rates)[::-1].tolist()
+        for i in order:
+            if rates[i] < DOUBTFUL * tolerance.rate:
+                return None
+            if problems[i].growth(dt) > problems[i].rate(tolerance):
+                return problems[i]
+        return None
+
+    # -- the scan ------------------------------------------------------------------------------
+
+    def _scan(self, problems: Sequence[WaveProblem], turn: float, first: float = 0.0) -> None:
+        """Look at ever longer steps until one fails or the smallest limit known is passed."""
+        if not problems:
+            return
+        low = 0.0
+        for high in self._looks(problems, turn):
+            if high < first:
+                continue
+            failing = self._fails(problems, high)
+            failing = failing or self._fails_by_layers(problems, high)
+            if failing:
+                self._close_in(failing, low, high)
+                return
+            low = high
+
+    def _fails_by_layers(self, problems: Sequence[WaveProblem], dt: float) -> list[WaveProblem]:
+        """Ask full matrices about waves whose frozen layers grow at this step."""
+        return [
+            problem
+            for problem in problems
+            if dt in problem.suspects and not problem.stable(dt, self._tolerance)
+        ]
+
+    def _looks(self, problems: Sequence[WaveProblem], turn: float) -> list[float]:
+        fastest = max(problem.facts.largest_eigenvalue for problem in problems)
+        slow = max(problem.slow_rate for problem in problems)
+        short = SHORT / fastest if fastest else self._largest_s
+        small = NOT_SMALL / slow if slow else np.inf
+        cap = self._cap()
+        asked = {id(problem): problem for problem in (problems[0], problems[-1])}
+        looks = [float(dt) for problem in asked.values() for dt in problem.suspects if dt < cap]
+        step = short * SCAN_RATIO ** (turn * STRIDE)
+        while step < cap:
+            looks.append(step)
+            if step < small:
+                first = small * SCAN_RATIO ** (turn * STRIDE)
+                step = min(step * SCAN_RATIO**STRIDE_STIFF, first)
+            else:
+                step *= SCAN_RATIO**STRIDE
+        return [*sorted(looks), cap]
+
+    def _cap(self) -> float:
+        return float(min(self._largest_s, NEAR_MINIMUM * self._smallest()))
+
+    def _close_in(self, failing: Sequence[WaveProblem], low: float, high: float) -> None:
+        """Bisect between a stable and an unstable step of some waves; keep the first to fail."""
+        if low == 0.0:
+            low = high / SCAN_RATIO
+            while still := self._fails(failing, low):
+                failing, high, low = still, low, low / 2
+                if low < SMALLEST_FIRST_STEP:
+                    raise no_step(failing[0].kappa)
+        while high / low > BISECTION:
+            middle = float(np.sqrt(low * high))
+            still = self._fails(failing, middle)
+            if still:
+                failing, high = still, middle
+            else:
+                low = middle
+        for problem in failing:
+            self._note(Bracket(low, high, problem))
+
+    def _note(self, bracket: Bracket) -> None:
+        self._limits[id(bracket.problem)] = bracket.low
+        if self.best is None or bracket.low < self.best.low:
+            self.best = bracket
+
+    # -- the answer ----------------------------------------------------------------------------
+
+    def _settle(self, *, refine: bool) -> None:
+        """Refine the waves, look closely below the limit, ask every wave again, judge."""
+        while self.best is not None:
+            before = self.best
+            if refine:
+                for air in range(self._waves.nair):
+                    self._add_longer(air)
+                    self._refine(air)
+            self._fill_below()
+            self._look_for_slow_growth()
+            self._recheck()
+            self._judge()
+            if self.best is before:
+                return
+
+    def _add_longer(self, air: int) -> None:
+        """Go on to longer waves while the longest one is the worst and the limit still falls."""
+        for _ in range(MOST_LONGER):
+            longest = self._waves.problem(air, self._waves.kappas[air][0])
+            best = self.best
+            if best is None or best.problem is not longest:
+                return
+            self._try_waves(air, [longest.kappa / 2])
+            if best.low / self._smallest() < RESOLVED:
+                return
+
+    def _refine(self, air: int) -> None:
+        """Halve the spacing of the waves around every local minimum near the smallest limit."""
+        for _ in range(MOST_HALVINGS):
+            best = self.best
+            assert best is not None
+            kappas = self._waves.kappas[air]
+            self._find_limits([self._waves.problem(air, kappa) for kappa in kappas])
+            limits = [self._limit(self._waves.problem(air, kappa)) for kappa in kappas]
+            added = between(kappas, limits, self._smallest())
+            if not added:
+                return
+            self._try_waves(air, added)
+            if best.low / self._smallest() < 1 + (RESOLVED - 1) / 4:
+                return
+
+    def _smallest(self) -> float:
+        return np.inf if self.best is None else self.best.low
+
+    def _limit(self, problem: WaveProblem) -> float:
+        """Limit of one wave; inf if it is beyond all that matters."""
+        return self._limits.get(id(problem), np.inf)
+
+    def _find_limits(self, problems: list[WaveProblem]) -> None:
+        """Find the limit of every wave that fails within what matters for refinement."""
+        waiting = [problem for problem in problems if id(problem) not in self._limits]
+        cap = self._cap()
+        for group in _groups(waiting):
+            for problem in self._all_failing(group, cap):
+                self._close_in([problem], cap / NEAR_MINIMUM, cap)
+
+    def _all_failing(self, problems: Sequence[WaveProblem], dt: float) -> list[WaveProblem]:
+        """All waves that a step does not keep stable, those told by dense matrices included."""
+        found: list[WaveProblem] = []
+        while waiting := [problem for problem in problems if problem not in found]:
+            failing = self._fails(waiting, dt)
+            if not failing:
+                return found
+            found += failing
+        return found
+
+    def _try_waves(self, air: int, kappas: list[float]) -> None:
+        self._waves.kappas[air] = sorted({*self._waves.kappas[air], *kappas})
+        for group in _groups([self._waves.problem(air, kappa) for kappa in kappas]):
+            assert self.best is not None
+            self._scan(group, 0.0, self.best.low / FILL)
+
+    def _fill_below(self) -> None:
+        """Look at the binding wave at the full scan ratio over the factor two below the limit."""
+        assert self.best is not None
+        limit, problem = self.best.low, self.best.problem
+        step = limit / FILL
+        low = 0.0
+        while step < limit:
+            if failing := self._fails([problem], step):
+                self._close_in(failing, low, step)
+                return
+            low, step = step, step * SCAN_RATIO
+
+    def _look_for_slow_growth(self) -> None:
+        """Ask every wave about growth too slow for a glance, at a few steps below the limit.
+
+        Such growth comes and goes over factors of the step, not over percents.
+        """
+        assert self.best is not None
+        problems = self._waves.problems()
+        slow = max(problem.slow_rate for problem in problems)
+        first = max(NOT_SMALL / slow if slow else np.inf, self._known_s)
+        step = self._smallest() / SLOW_STRIDE
+        while step > first:
+            for group in _groups(problems):
+                if worst := self._grows_slowly(group, step):
+                    self._note(first_failure(worst, step, self._tolerance))
+                    step = min(step, self._smallest())
+            step /= SLOW_STRIDE
+
+    def _recheck(self) -> None:
+        """Ask every wave again at the answer."""
+        for group in _groups(self._waves.problems()):
+            assert self.best is not None
+            step = self.best.low
+            if failing := self._fails(group, step):
+                self._close_in(failing, 0.0, step)
+            elif worst := self._grows_slowly(group, step):
+                self._note(first_failure(worst, step, self._tolerance))
+
+    def _judge(self) -> None:
+        """Ask full matrices about the binding wave on the stable side of its limit."""
+        assert self.best is not None
+        problem, low = self.best.problem, self.best.low
+        if problem.size > DENSE_UNKNOWNS:
+            return
+        if not problem.stable(low, self._tolerance):
+            self._note(first_failure(problem, low, self._tolerance))
+
+
+def _groups(problems: Sequence[WaveProblem]) -> Iterator[Sequence[WaveProblem]]:
+    for first in range(0, len(problems), TOGETHER):
+        yield problems[first : first + TOGETHER]
