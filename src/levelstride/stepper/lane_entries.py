@@ -94,7 +94,7 @@ class Entry:
     """A column of a row: its offset in `Order`, and the coefficient.
 
     ``shared`` (nlev,) holds for all lanes, times the factor with the number ``factor`` if there is
-    one; otherwise ``lanes`` (nlev, nlane) holds. ``imaginary``: the imaginary unit times that.
+    one; otherwise ``lanes`` (nlev, nlane) holds, times the imaginary unit if ``imaginary``.
     """
 
     offset: int
@@ -114,7 +114,7 @@ class Entry:
 
 @dataclass(slots=True, eq=False)
 class Factors:
-    """The factors that tell lanes apart, each (nlane,), the largest entry of each one being 1."""
+    """The factors that tell lanes apart, each (nlane,), the largest modulus of each one being 1."""
 
     known: list[Array] = field(default_factory=list)
 
@@ -128,26 +128,35 @@ class Factors:
 
     def entries(self, offset: int, values: Array) -> list[Entry]:
         """Write the entries of one diagonal, (nlev, nlane), by what the lanes have in common."""
-        parts = [(values.real, False)]
-        if np.iscomplexobj(values):
-            parts.append((values.imag, True))
-        return [
-            self._entry(offset, np.ascontiguousarray(part), imaginary)
-            for part, imaginary in parts
-            if np.any(part)
-        ]
+        found = self._in_common(offset, values)
+        if found is not None:
+            return [found]
+        parts = [values.real, values.imag] if np.iscomplexobj(values) else [values]
+        if len(parts) == 1 or not all(np.any(part) for part in parts):
+            return [
+                Entry(offset, None, np.ascontiguousarray(part), NO_FACTOR, imaginary)
+                for part, imaginary in zip(parts, (False, True), strict=False)
+                if np.any(part)
+            ]
+        return self.entries(offset, values.real) + self.entries(offset, 1j * values.imag)
 
-    def _entry(self, offset: int, values: Array, imaginary: bool) -> Entry:
-        first = values[:, :1]
-        if np.all(np.abs(values - first) <= SAME * np.abs(first)):
-            factor = self.number(np.ones(values.shape[1])) if imaginary else NO_FACTOR
-            return Entry(offset, values[:, 0].copy(), None, factor, imaginary)
+    def _in_common(self, offset: int, values: Array) -> Entry | None:
+        """Write entries as one real number for each layer times one factor for each lane."""
         layer, lane = np.unravel_index(np.argmax(np.abs(values)), values.shape)
-        factors, shared = values[layer] / values[layer, lane], values[:, lane].copy()
-        close = np.abs(values - shared[:, None] * factors) <= PROPORTIONAL * np.abs(values)
-        if np.all(close):
-            return Entry(offset, shared, None, self.number(factors), imaginary)
-        return Entry(offset, None, values, NO_FACTOR, imaginary)
+        largest = values[layer, lane]
+        shared = values[:, lane] / (largest / np.abs(largest))
+        if np.any(np.abs(shared.imag) > SAME * np.abs(shared)):
+            return None
+        shared = np.ascontiguousarray(shared.real)
+        factor = values[layer] / np.abs(largest)
+        close = np.abs(values - shared[:, None] * factor) <= PROPORTIONAL * np.abs(values)
+        if not np.all(close):
+            return None
+        if factor[lane].real < 0.0 or (factor[lane].real == 0.0 and factor[lane].imag < 0.0):
+            shared, factor = -shared, -factor
+        if np.all(np.abs(factor - 1.0) <= SAME):
+            return Entry(offset, shared)
+        return Entry(offset, shared, None, self.number(factor))
 
     def rows(self, stencil: Stencil, stride: int) -> list[list[Entry]]:
         """Write a matrix field by field."""

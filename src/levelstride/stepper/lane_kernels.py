@@ -12,13 +12,12 @@ exchanged and has the sign of the first half turned.
 
 from __future__ import annotations
 
-from typing import Any, NamedTuple
+from typing import Any, Final, NamedTuple
 
-import numpy as np
 from llvmlite import ir
 from numba import types
 from numba.core import cgutils
-from numba.extending import intrinsic, models, overload, register_model
+from numba.extending import intrinsic, models, register_model
 
 from levelstride.stepper.kernels import DONE, WRONG_SHAPE, Places, Vector, compiled, inlined
 
@@ -32,14 +31,15 @@ _function_of: Any = cgutils.get_or_insert_function
 class Program(NamedTuple):
     """One step as sweeps over the layers.
 
-    ``sweep`` (nsweep, 5): first and last+1 row set, +1 from the ground up or -1 from the top down,
-    layers in a block, largest lag. ``rows`` (nrows, 8), one set of rows, one a layer: place
-    written, layers it lags behind the sweep, first and number of ``entry``, of ``group``, of
-    ``lane_entry``. ``entry`` (nentry, 3): place read, place of the coefficient, its stride from
-    layer to layer.
-    ``group`` (ngroup, 4): place of a factor for every lane, whether halves are exchanged, first and
-    number of the entries summed before. ``lane_entry`` (nlane_entry, 3): place read, place of the
-    coefficients, whether halves are exchanged. Places are those of layer 0.
+    ``sweep`` (nsweep, 5): first and last+1 set of rows, +1 from the ground up or -1 from the top
+    down, layers in a block, largest lag.
+    ``rows`` (nrows, 9), sets of rows, one a layer: place written, layers it lags behind the sweep,
+    first and number of ``entry``, of ``group``, of ``lane_entry``, position in `SHAPES` from 1.
+    ``entry`` (nentry, 3): place read, place of the coefficient, its stride from layer to layer.
+    ``group`` (ngroup, 4): places of the real and of the imaginary part of a factor for every lane,
+    the latter -1 if it is zero, first and number of the entries summed before.
+    ``lane_entry`` (nlane_entry, 3): place read, place of the coefficients, whether halves are
+    exchanged. Places are those of layer 0.
     """
 
     sweep: Places
@@ -61,8 +61,23 @@ class _LaneRow(types.Type):
 @register_model(_LaneRow)
 class _LaneRowModel(models.PrimitiveModel):
     def __init__(self, manager: Any, kind: Any) -> None:
-        number = manager.lookup(kind.dtype).get_value_type()
-        super().__init__(manager, kind, ir.VectorType(number, kind.count))  # type: ignore[no-untyped-call]
+        value = manager.lookup(kind.dtype).get_value_type()
+        super().__init__(manager, kind, ir.VectorType(value, kind.count))  # type: ignore[no-untyped-call]
+
+
+class _Room(types.Type):
+    """The numbers of an array, without its reference count: handing it on costs nothing."""
+
+    def __init__(self, dtype: Any) -> None:
+        self.dtype = dtype
+        super().__init__(name=f"LaneRoom({dtype})")
+
+
+@register_model(_Room)
+class _RoomModel(models.PrimitiveModel):
+    def __init__(self, manager: Any, kind: Any) -> None:
+        value = manager.lookup(kind.dtype).get_data_type()
+        super().__init__(manager, kind, value.as_pointer())  # type: ignore[no-untyped-call]
 
 
 def _spread(builder: Any, scalar: Any, kind: Any) -> Any:
@@ -80,46 +95,75 @@ def _muladd(builder: Any, a: Any, b: Any, c: Any) -> Any:
     return builder.call(function, [a, b, c])
 
 
-def _address(context: Any, builder: Any, array_type: Any, array: Any, index: Any, kind: Any) -> Any:
-    data = context.make_array(array_type)(context, builder, array).data
-    return builder.bitcast(builder.gep(data, [index]), kind.as_pointer())
+def _address(builder: Any, room: Any, index: Any, kind: Any) -> Any:
+    return builder.bitcast(builder.gep(room, [index]), kind.as_pointer())
 
 
 @_generated
-def _load(_, array, index, span):  # type: ignore[no-untyped-def]
-    row = _LaneRow(array.dtype, span.count)
+def bare(_, array):  # type: ignore[no-untyped-def]
+    """Return the numbers of an array for `load`, `number` and `store`."""
 
     def generate(context, builder, signature, arguments):  # type: ignore[no-untyped-def]
-        kind = context.get_value_type(row)
-        place = _address(context, builder, array, arguments[0], arguments[1], kind)
-        return builder.load(place, align=array.dtype.bitwidth // 8)
+        return context.make_array(array)(context, builder, arguments[0]).data
 
-    return row(array, types.int64, span), generate
+    return _Room(array.dtype)(array), generate
 
 
 @_generated
-def _store(_, array, index, row):  # type: ignore[no-untyped-def]
+def fixed(_, value):  # type: ignore[no-untyped-def]
+    """Hand a number to the machine-code compiler, not to numba: it would compile one each."""
+    return types.int64(types.int64), lambda context, builder, signature, arguments: arguments[0]
+
+
+@_generated
+def load(_, room, index, span):  # type: ignore[no-untyped-def]
+    """Read a row of lanes."""
+    row = _LaneRow(room.dtype, span.count)
+
     def generate(context, builder, signature, arguments):  # type: ignore[no-untyped-def]
-        kind = arguments[2].type
-        place = _address(context, builder, array, arguments[0], arguments[1], kind)
-        builder.store(arguments[2], place, align=array.dtype.bitwidth // 8)
+        place = _address(builder, arguments[0], arguments[1], context.get_value_type(row))
+        return builder.load(place, align=room.dtype.bitwidth // 8)
+
+    return row(room, types.int64, span), generate
+
+
+@_generated
+def number(_, room, index):  # type: ignore[no-untyped-def]
+    """Read a number, which must be there."""
+
+    def generate(context, builder, signature, arguments):  # type: ignore[no-untyped-def]
+        return builder.load(builder.gep(arguments[0], [arguments[1]]))
+
+    return room.dtype(room, types.int64), generate
+
+
+@_generated
+def store(_, room, index, row):  # type: ignore[no-untyped-def]
+    """Write a row of lanes."""
+
+    def generate(context, builder, signature, arguments):  # type: ignore[no-untyped-def]
+        place = _address(builder, arguments[0], arguments[1], arguments[2].type)
+        builder.store(arguments[2], place, align=room.dtype.bitwidth // 8)
         return context.get_dummy_value()
 
-    return types.void(array, types.int64, row), generate
+    return types.void(room, types.int64, row), generate
 
 
 @_generated
-def _nothing(_, array, span):  # type: ignore[no-untyped-def]
-    row = _LaneRow(array.dtype, span.count)
+def nothing(_, room, span):  # type: ignore[no-untyped-def]
+    """Return a row of zeros."""
+    row = _LaneRow(room.dtype, span.count)
 
     def generate(context, builder, signature, arguments):  # type: ignore[no-untyped-def]
         return ir.Constant(context.get_value_type(row), None)
 
-    return row(array, span), generate
+    return row(room, span), generate
 
 
 @_generated
-def _add_scaled(_, total, factor, row):  # type: ignore[no-untyped-def]
+def add_scaled(_, total, factor, row):  # type: ignore[no-untyped-def]
+    """Return total + factor * row, the factor being a number or one for every lane."""
+
     def generate(context, builder, signature, arguments):  # type: ignore[no-untyped-def]
         total, factor, row = arguments
         if not isinstance(factor.type, ir.VectorType):
@@ -130,7 +174,9 @@ def _add_scaled(_, total, factor, row):  # type: ignore[no-untyped-def]
 
 
 @_generated
-def _exchanged(_, row):  # type: ignore[no-untyped-def]
+def exchanged(_, row):  # type: ignore[no-untyped-def]
+    """Exchange the halves of a row."""
+
     def generate(context, builder, signature, arguments):  # type: ignore[no-untyped-def]
         count = row.count
         order = [(i + count // 2) % count for i in range(count)]
@@ -141,146 +187,233 @@ def _exchanged(_, row):  # type: ignore[no-untyped-def]
     return row(row), generate
 
 
-def load(array: Vector, index: int, span: Span) -> Any:
-    """Read a row of lanes."""
-    return array[index : index + len(span)].copy()
+SHAPES: Final = (
+    (1, 0, 0, 0),
+    (2, 0, 0, 0),
+    (3, 0, 0, 0),
+    (4, 0, 0, 0),
+    (5, 0, 0, 0),
+    (6, 0, 0, 0),
+    (2, 1, 0, 0),
+    (3, 1, 0, 0),
+    (4, 1, 0, 0),
+    (5, 1, 0, 0),
+    (6, 1, 0, 0),
+    (0, 0, 1, 0),
+    (1, 0, 1, 0),
+    (2, 0, 1, 0),
+    (0, 0, 2, 0),
+    (1, 0, 2, 0),
+    (0, 0, 1, 1),
+    (1, 0, 1, 1),
+    (0, 0, 2, 1),
+    (1, 0, 2, 1),
+)
+"""Numbers of entries, carried, in the group, turned: sums for which there is a loop of its own.
+
+Their order is that of the numbers in `write_rows`, where 0 stands for all others.
+"""
 
 
-def store(array: Vector, index: int, row: Any) -> None:
-    """Write a row of lanes."""
-    array[index : index + row.shape[0]] = row
+class Bare(NamedTuple):
+    """A workspace and a program, all flat and without reference counts."""
 
-
-def nothing(array: Vector, span: Span) -> Any:
-    """Return a row of zeros."""
-    return np.zeros(len(span), array.dtype)
-
-
-def add_scaled(total: Any, factor: Any, row: Any) -> Any:
-    """Add a row times a number, or times a factor for every lane."""
-    return total + factor * row
-
-
-def exchanged(row: Any) -> Any:
-    """Exchange the halves of a row."""
-    return np.roll(row, row.shape[0] // 2)
-
-
-@overload(load, inline="always")
-def _load_compiled(array, index, span):  # type: ignore[no-untyped-def]
-    return lambda array, index, span: _load(array, index, span)
-
-
-@overload(store, inline="always")
-def _store_compiled(array, index, row):  # type: ignore[no-untyped-def]
-    return lambda array, index, row: _store(array, index, row)
-
-
-@overload(nothing, inline="always")
-def _nothing_compiled(array, span):  # type: ignore[no-untyped-def]
-    return lambda array, span: _nothing(array, span)
-
-
-@overload(add_scaled, inline="always")
-def _add_scaled_compiled(total, factor, row):  # type: ignore[no-untyped-def]
-    return lambda total, factor, row: _add_scaled(total, factor, row)
-
-
-@overload(exchanged, inline="always")
-def _exchanged_compiled(row):  # type: ignore[no-untyped-def]
-    return lambda row: _exchanged(row)
+    work: Any
+    lanes: Any
+    coefficient: Any
+    sweep: Any
+    rows: Any
+    entry: Any
+    group: Any
+    lane_entry: Any
 
 
 @inlined
-def plain_rows(work: Vector, coefficient: Vector, entry: Places, out: int, n: int, first: int,
-               layers: int, move: int, row: int, span: Span) -> None:  # fmt: skip
-    """Write rows that are sums of up to four entries with one coefficient for all lanes."""
-    target, here = out + first * row, first * row
-    p0, c0, s0 = entry[0, 0] + here, entry[0, 1] + first * entry[0, 2], move * entry[0, 2]
-    k1, k2, k3 = min(1, n - 1), min(2, n - 1), min(3, n - 1)
-    p1, c1, s1 = entry[k1, 0] + here, entry[k1, 1] + first * entry[k1, 2], move * entry[k1, 2]
-    p2, c2, s2 = entry[k2, 0] + here, entry[k2, 1] + first * entry[k2, 2], move * entry[k2, 2]
-    p3, c3, s3 = entry[k3, 0] + here, entry[k3, 1] + first * entry[k3, 2], move * entry[k3, 2]
-    none = nothing(work, span)
+def simple_rows(b: Bare, k: int, n: int, carry: int, m: int, turned: int, first: int, layers: int,
+                move: int, row: int, span: Span) -> None:  # fmt: skip
+    """Write rows that are sums of ``n`` entries, six at the most, and of one group of ``m`` <= 2.
+
+    With ``carry`` the last of the ``n`` is the row written just before: it stays in registers.
+    ``turned``: the factor of the group has an imaginary part. All four are known to the compiler.
+    """
+    here, up = first * row, move * row
+    target, k0 = number(b.rows, 9 * k) + here, 3 * number(b.rows, 9 * k + 2)
+    k1, k2, k3 = k0 + 3 * min(1, n - 1), k0 + 3 * min(2, n - 1), k0 + 3 * min(3, n - 1)
+    k4, k5 = k0 + 3 * min(4, n - 1), k0 + 3 * min(5, n - 1)
+    p0, c0, s0 = number(b.entry, k0) + here, number(b.entry, k0 + 1), number(b.entry, k0 + 2)
+    p1, c1, s1 = number(b.entry, k1) + here, number(b.entry, k1 + 1), number(b.entry, k1 + 2)
+    p2, c2, s2 = number(b.entry, k2) + here, number(b.entry, k2 + 1), number(b.entry, k2 + 2)
+    p3, c3, s3 = number(b.entry, k3) + here, number(b.entry, k3 + 1), number(b.entry, k3 + 2)
+    p4, c4, s4 = number(b.entry, k4) + here, number(b.entry, k4 + 1), number(b.entry, k4 + 2)
+    p5, c5, s5 = number(b.entry, k5) + here, number(b.entry, k5 + 1), number(b.entry, k5 + 2)
+    g, ka = 0, 0
+    if m > 0:
+        g = 4 * number(b.rows, 9 * k + 4)
+        ka = 3 * number(b.group, g + 2)
+    kb = ka + 3 * min(1, m - 1)
+    pa, ca, sa = number(b.entry, ka) + here, number(b.entry, ka + 1), number(b.entry, ka + 2)
+    pb, cb, sb = number(b.entry, kb) + here, number(b.entry, kb + 1), number(b.entry, kb + 2)
+    none = nothing(b.work, span)
+    real, imaginary, before = none, none, none
+    if m > 0:
+        real = load(b.lanes, number(b.group, g), span)
+        if turned:
+            imaginary = load(b.lanes, number(b.group, g + 1), span)
+    if carry:
+        before = load(b.work, p5, span)
     for i in range(layers):
-        r = i * move * row
-        total = add_scaled(none, coefficient[c0 + i * s0], load(work, p0 + r, span))
-        if n > 1:
-            total = add_scaled(total, coefficient[c1 + i * s1], load(work, p1 + r, span))
-        if n > 2:
-            total = add_scaled(total, coefficient[c2 + i * s2], load(work, p2 + r, span))
-        if n > 3:
-            total = add_scaled(total, coefficient[c3 + i * s3], load(work, p3 + r, span))
-        store(work, target + r, total)
+        r, j = i * up, first + i * move
+        total = none
+        if n - carry > 0:
+            total = add_scaled(none, number(b.coefficient, c0 + j * s0), load(b.work, p0 + r, span))
+        if n - carry > 1:
+            total = add_scaled(
+                total, number(b.coefficient, c1 + j * s1), load(b.work, p1 + r, span)
+            )
+        if n - carry > 2:
+            total = add_scaled(
+                total, number(b.coefficient, c2 + j * s2), load(b.work, p2 + r, span)
+            )
+        if n - carry > 3:
+            total = add_scaled(
+                total, number(b.coefficient, c3 + j * s3), load(b.work, p3 + r, span)
+            )
+        if n - carry > 4:
+            total = add_scaled(
+                total, number(b.coefficient, c4 + j * s4), load(b.work, p4 + r, span)
+            )
+        if n - carry > 5:
+            total = add_scaled(
+                total, number(b.coefficient, c5 + j * s5), load(b.work, p5 + r, span)
+            )
+        if m > 0:
+            part = add_scaled(none, number(b.coefficient, ca + j * sa), load(b.work, pa + r, span))
+            if m > 1:
+                part = add_scaled(
+                    part, number(b.coefficient, cb + j * sb), load(b.work, pb + r, span)
+                )
+            total = add_scaled(total, real, part)
+            if turned:
+                total = add_scaled(total, imaginary, exchanged(part))
+        if carry:
+            total = add_scaled(total, number(b.coefficient, c5 + j * s5), before)
+            before = total
+        store(b.work, target + r, total)
 
 
 @inlined
-def any_rows(work: Vector, lanes: Vector, p: Program, k: int, first: int, layers: int, move: int,
-             row: int, span: Span) -> None:  # fmt: skip
+def any_rows(b: Bare, k: int, first: int, layers: int, move: int, row: int,
+             span: Span) -> None:  # fmt: skip
     """Write rows with entries of every kind."""
-    out, n = p.rows[k, 0], len(span)
-    first_entry, last_entry = p.rows[k, 2], p.rows[k, 2] + p.rows[k, 3]
-    first_group, last_group = p.rows[k, 4], p.rows[k, 4] + p.rows[k, 5]
-    first_lane, last_lane = p.rows[k, 6], p.rows[k, 6] + p.rows[k, 7]
+    out, n, k9 = number(b.rows, 9 * k), len(span), 9 * k
+    first_entry = number(b.rows, k9 + 2)
+    last_entry = first_entry + number(b.rows, k9 + 3)
+    first_group = number(b.rows, k9 + 4)
+    last_group = first_group + number(b.rows, k9 + 5)
+    first_lane = number(b.rows, k9 + 6)
+    last_lane = first_lane + number(b.rows, k9 + 7)
     for i in range(layers):
         j = first + i * move
-        total = nothing(work, span)
-        for e in range(first_entry, last_entry):
-            a = p.coefficient[p.entry[e, 1] + j * p.entry[e, 2]]
-            total = add_scaled(total, a, load(work, p.entry[e, 0] + j * row, span))
-        for g in range(first_group, last_group):
-            part = nothing(work, span)
-            for e in range(p.group[g, 2], p.group[g, 2] + p.group[g, 3]):
-                a = p.coefficient[p.entry[e, 1] + j * p.entry[e, 2]]
-                part = add_scaled(part, a, load(work, p.entry[e, 0] + j * row, span))
-            if p.group[g, 1]:
+        total = nothing(b.work, span)
+        for e in range(3 * first_entry, 3 * last_entry, 3):
+            a = number(b.coefficient, number(b.entry, e + 1) + j * number(b.entry, e + 2))
+            total = add_scaled(total, a, load(b.work, number(b.entry, e) + j * row, span))
+        for g in range(4 * first_group, 4 * last_group, 4):
+            part = nothing(b.work, span)
+            begin = 3 * number(b.group, g + 2)
+            for e in range(begin, begin + 3 * number(b.group, g + 3), 3):
+                a = number(b.coefficient, number(b.entry, e + 1) + j * number(b.entry, e + 2))
+                part = add_scaled(part, a, load(b.work, number(b.entry, e) + j * row, span))
+            total = add_scaled(total, load(b.lanes, number(b.group, g), span), part)
+            if number(b.group, g + 1) >= 0:
+                imaginary = load(b.lanes, number(b.group, g + 1), span)
+                total = add_scaled(total, imaginary, exchanged(part))
+        for e in range(3 * first_lane, 3 * last_lane, 3):
+            part = load(b.work, number(b.lane_entry, e) + j * row, span)
+            if number(b.lane_entry, e + 2):
                 part = exchanged(part)
-            total = add_scaled(total, load(lanes, p.group[g, 0], span), part)
-        for e in range(first_lane, last_lane):
-            part = load(work, p.lane_entry[e, 0] + j * row, span)
-            if p.lane_entry[e, 2]:
-                part = exchanged(part)
-            total = add_scaled(total, load(lanes, p.lane_entry[e, 1] + j * n, span), part)
-        store(work, out + j * row, total)
+            a = load(b.lanes, number(b.lane_entry, e + 1) + j * n, span)
+            total = add_scaled(total, a, part)
+        store(b.work, out + j * row, total)
 
 
-@compiled
-def write_rows(work: Vector, lanes: Vector, p: Program, k: int, low: int, high: int, move: int,
-               row: int, span: Span) -> None:  # fmt: skip
-    """Write the k-th set of rows at the layers from ``low`` to ``high`` - 1."""
-    first, layers = low if move > 0 else high - 1, high - low
-    if p.rows[k, 5] == 0 and p.rows[k, 7] == 0 and 1 <= p.rows[k, 3] <= 4:
-        begin, n = p.rows[k, 2], p.rows[k, 3]
-        entry = p.entry[begin:]
-        if n == 1:
-            plain_rows(work, p.coefficient, entry, p.rows[k, 0], 1, first, layers, move, row, span)
-        elif n == 2:
-            plain_rows(work, p.coefficient, entry, p.rows[k, 0], 2, first, layers, move, row, span)
-        elif n == 3:
-            plain_rows(work, p.coefficient, entry, p.rows[k, 0], 3, first, layers, move, row, span)
-        else:
-            plain_rows(work, p.coefficient, entry, p.rows[k, 0], 4, first, layers, move, row, span)
-    else:
-        any_rows(work, lanes, p, k, first, layers, move, row, span)
-
-
-@compiled
-def take_steps(work: Vector, lanes: Vector, p: Program, steps: int, nlev: int, row: int,
+@inlined
+def write_rows(b: Bare, k: int, low: int, high: int, move: int, row: int,
                span: Span) -> None:  # fmt: skip
+    """Write the k-th set of rows at the layers from ``low`` to ``high`` - 1; see `SHAPES`."""
+    first, layers, shape = low if move > 0 else high - 1, high - low, number(b.rows, 9 * k + 8)
+    if shape == 0:
+        any_rows(b, k, first, layers, move, row, span)
+    elif shape == 1:
+        simple_rows(b, k, fixed(1), fixed(0), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 2:
+        simple_rows(b, k, fixed(2), fixed(0), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 3:
+        simple_rows(b, k, fixed(3), fixed(0), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 4:
+        simple_rows(b, k, fixed(4), fixed(0), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 5:
+        simple_rows(b, k, fixed(5), fixed(0), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 6:
+        simple_rows(b, k, fixed(6), fixed(0), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 7:
+        simple_rows(b, k, fixed(2), fixed(1), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 8:
+        simple_rows(b, k, fixed(3), fixed(1), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 9:
+        simple_rows(b, k, fixed(4), fixed(1), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 10:
+        simple_rows(b, k, fixed(5), fixed(1), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 11:
+        simple_rows(b, k, fixed(6), fixed(1), fixed(0), fixed(0), first, layers, move, row, span)
+    elif shape == 12:
+        simple_rows(b, k, fixed(0), fixed(0), fixed(1), fixed(0), first, layers, move, row, span)
+    elif shape == 13:
+        simple_rows(b, k, fixed(1), fixed(0), fixed(1), fixed(0), first, layers, move, row, span)
+    elif shape == 14:
+        simple_rows(b, k, fixed(2), fixed(0), fixed(1), fixed(0), first, layers, move, row, span)
+    elif shape == 15:
+        simple_rows(b, k, fixed(0), fixed(0), fixed(2), fixed(0), first, layers, move, row, span)
+    elif shape == 16:
+        simple_rows(b, k, fixed(1), fixed(0), fixed(2), fixed(0), first, layers, move, row, span)
+    elif shape == 17:
+        simple_rows(b, k, fixed(0), fixed(0), fixed(1), fixed(1), first, layers, move, row, span)
+    elif shape == 18:
+        simple_rows(b, k, fixed(1), fixed(0), fixed(1), fixed(1), first, layers, move, row, span)
+    elif shape == 19:
+        simple_rows(b, k, fixed(0), fixed(0), fixed(2), fixed(1), first, layers, move, row, span)
+    elif shape == 20:
+        simple_rows(b, k, fixed(1), fixed(0), fixed(2), fixed(1), first, layers, move, row, span)
+
+
+@compiled
+def take_steps(b: Bare, nsweep: int, steps: int, nlev: int, row: int, span: Span) -> None:
     """Take steps with the lanes in the workspace."""
     for _ in range(steps):
-        for s in range(p.sweep.shape[0]):
-            begin, end, move, block = p.sweep[s, 0], p.sweep[s, 1], p.sweep[s, 2], p.sweep[s, 3]
-            for passed in range(0, nlev + p.sweep[s, 4], block):
+        for s in range(0, 5 * nsweep, 5):
+            begin, end = number(b.sweep, s), number(b.sweep, s + 1)
+            move, block = number(b.sweep, s + 2), number(b.sweep, s + 3)
+            for passed in range(0, nlev + number(b.sweep, s + 4), block):
                 for k in range(begin, end):
-                    lag = p.rows[k, 1]
-                    low = max(passed - lag, 0)
-                    high = min(passed + block - lag, nlev)
+                    lag = number(b.rows, 9 * k + 1)
+                    low, high = max(passed - lag, 0), min(passed + block - lag, nlev)
                     if low >= high:
                         continue
                     if move < 0:
                         low, high = nlev - high, nlev - low
-                    write_rows(work, lanes, p, k, low, high, move, row, span)
+                    write_rows(b, k, low, high, move, row, span)
+
+
+@compiled
+def take_steps_in(work: Vector, lanes: Vector, p: Program, steps: int, nlev: int, row: int,
+                  span: Span) -> None:  # fmt: skip
+    """Take steps with the lanes in the workspace."""
+    b = Bare(
+        bare(work), bare(lanes), bare(p.coefficient), bare(p.sweep.reshape(-1)),
+        bare(p.rows.reshape(-1)), bare(p.entry.reshape(-1)), bare(p.group.reshape(-1)),
+        bare(p.lane_entry.reshape(-1)),
+    )  # fmt: skip
+    take_steps(b, p.sweep.shape[0], steps, nlev, row, span)
 
 
 @compiled
@@ -322,7 +455,7 @@ def march(q: Vector, steps: int, place: Places, p: Program, lanes: Vector, work:
             for lane in range(begin, end):
                 for part in range(npart):
                     work[place[i] + part * width + lane - begin] = q[i, lane, part]
-        take_steps(work, lanes[tile], p, steps, nlev, row, span)
+        take_steps_in(work, lanes[tile], p, steps, nlev, row, span)
         for i in range(nstate):
             for lane in range(begin, end):
                 for part in range(npart):

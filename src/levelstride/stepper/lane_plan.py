@@ -46,6 +46,7 @@ class Sums:
         self._implicit = np.vstack([scheme.a_implicit, scheme.b_implicit])
         self._plan, self._dt, self._slow, self._fast = plan, dt, slow, fast
         self.stages: list[Sum] = []
+        self._ends_implicitly = ends_implicitly(plan, scheme)
         for i in range(plan.nstage + (plan.result_stage == NONE)):
             self.stages.append(self._stage(i))
 
@@ -58,6 +59,12 @@ class Sums:
                 total, size = terms.get(operand, (0.0, 0.0))
                 terms[operand] = total + weight, max(size, abs(weight))
 
+        if i == plan.nstage and self._ends_implicitly:
+            add(("stage", i - 1), 1.0)
+            for j in range(i):
+                if self._slow and plan.slow_slot[j] != NONE:
+                    add(("slow", j), self._explicit[i, j] - self._explicit[i - 1, j])
+            return {key: total for key, (total, _) in terms.items()}
         add(STATE, 1.0)
         for j in range(min(i, plan.nstage)):
             if self._slow and plan.slow_slot[j] != NONE:
@@ -80,3 +87,9 @@ class Sums:
     def is_state(self, i: int) -> bool:
         """Whether the right-hand side of a stage is the state before the step."""
         return dict(self.stages[i]) == {STATE: 1.0}
+
+
+def ends_implicitly(plan: Plan, scheme: Scheme) -> bool:
+    """Whether the new state is the last stage but for slow tendencies."""
+    same = np.array_equal(scheme.a_implicit[-1], scheme.b_implicit)
+    return plan.result_stage == NONE and bool(plan.used[-1]) and same

@@ -15,13 +15,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from levelstride.stepper.lane_entries import NO_FACTOR, Entry
-from levelstride.stepper.lane_kernels import Program
+from levelstride.stepper.lane_kernels import SHAPES, Program
 
 Array = NDArray[Any]
 _Numbers = list[tuple[int, ...]]
 
-BLOCK: Final = 16
+BLOCK: Final = 32
 """Layers that a set of rows is written for at once: what is read next is still near."""
+
+MOST: Final = max(shape[0] for shape in SHAPES)
+"""Entries added at once."""
 
 ALIGNED: Final = 64
 """Bytes of a cache line."""
@@ -33,6 +36,13 @@ class Read:
 
     slot: int
     entry: Entry
+
+    @property
+    def is_copy(self) -> bool:
+        """Whether the same unknown is taken as it is."""
+        shared = self.entry.shared
+        alike = self.entry.offset == 0 and self.entry.factor == NO_FACTOR
+        return alike and shared is not None and shared.size == 1 and bool(shared[0] == 1.0)
 
 
 def constant(slot: int, number: float) -> Read:
@@ -136,22 +146,22 @@ class Encoder:
         for each in found:
             begin = len(rows)
             for written, lag in each.rows:
-                plain, grouped, single = _sorted(written)
-                first_entry, first_group, first_lane = len(entry), len(group), len(lane_entry)
-                entry += [self._entry(written, read) for read in plain]
-                for (factor, imaginary), reads in grouped.items():
-                    place = self._factor(factor, imaginary)
-                    group.append((place, int(imaginary), len(entry), len(reads)))
-                    entry += [self._entry(written, read) for read in reads]
-                lane_entry += [self._lane_entry(written, read) for read in single]
-                target = self.base[written.slot] + written.kind * self.width
-                counts = len(plain), first_group, len(grouped), first_lane, len(single)
-                rows.append((target, lag, first_entry, *counts))
+                for step in _passes(written, each, self.stride):
+                    first = len(entry), len(group), len(lane_entry)
+                    entry += [self._entry(written, read) for read in step.plain]
+                    for factor, reads in step.grouped:
+                        group.append((*self._factor(factor), len(entry), len(reads)))
+                        entry += [self._entry(written, read) for read in reads]
+                    lane_entry += [self._lane_entry(written, read) for read in step.single]
+                    target = self.base[written.slot] + written.kind * self.width
+                    counts = len(step.plain), len(step.grouped), len(step.single)
+                    found_at = (x for pair in zip(first, counts, strict=True) for x in pair)
+                    rows.append((target, lag, *found_at, step.shape(self._factors)))
             largest = max(lag for _, lag in each.rows)
             sweep.append((begin, len(rows), each.move, each.block, largest))
         return Program(
             sweep=_table(sweep, 5),
-            rows=_table(rows, 8),
+            rows=_table(rows, 9),
             entry=_table(entry, 3),
             group=_table(group, 4),
             lane_entry=_table(lane_entry, 3),
@@ -205,35 +215,90 @@ class Encoder:
     def _place(self, rows: Rows, read: Read) -> int:
         return self.base[read.slot] + (rows.kind + read.entry.offset) * self.width
 
-    def _factor(self, number: int, imaginary: bool) -> int:
-        key = number, imaginary
-        if key not in self._places:
-            self._places[key] = self._append(self._factors[number][None], imaginary)
-        return self._places[key]
+    def _factor(self, number: int) -> tuple[int, int]:
+        factor = self._factors[number]
+        real = self._lane_place((number, False), factor.real[None], imaginary=False)
+        if not np.any(factor.imag):
+            return real, -1
+        return real, self._lane_place((number, True), factor.imag[None], imaginary=True)
 
     def _lane_entry(self, rows: Rows, read: Read) -> tuple[int, int, int]:
         values, imaginary = read.entry.lanes, read.entry.imaginary
         assert values is not None
-        key = -1 - id(values), imaginary
-        if key not in self._places:
-            self._places[key] = self._append(values, imaginary)
-        return self._place(rows, read), self._places[key], int(imaginary)
+        place = self._lane_place((-1 - id(values), imaginary), values, imaginary=imaginary)
+        return self._place(rows, read), place, int(imaginary)
 
-    def _append(self, values: Array, imaginary: bool) -> int:
-        place = self._nlane_number
-        self._lanes.append((values, imaginary))
-        self._nlane_number += values.size // values.shape[-1] * self.width
-        return place
+    def _lane_place(self, key: tuple[int, bool], values: Array, *, imaginary: bool) -> int:
+        if key not in self._places:
+            self._places[key] = self._nlane_number
+            self._lanes.append((values, imaginary))
+            self._nlane_number += values.size // values.shape[-1] * self.width
+        return self._places[key]
 
 
 def _table(rows: Sequence[Sequence[int]], columns: int) -> NDArray[np.int64]:
     return np.array(rows, dtype=np.int64).reshape(-1, columns)
 
 
-def _sorted(rows: Rows) -> tuple[list[Read], dict[tuple[int, bool], list[Read]], list[Read]]:
+@dataclass(frozen=True, slots=True, eq=False)
+class _Pass:
+    """What is added at once: shared entries, groups by factor, entries that differ by lane."""
+
+    plain: list[Read]
+    grouped: list[tuple[int, list[Read]]] = field(default_factory=list)
+    single: list[Read] = field(default_factory=list)
+    carry: bool = False
+
+    def shape(self, factors: Sequence[Array]) -> int:
+        """Return the number of the loop that is made for it, 0 if there is none."""
+        if self.single or len(self.grouped) > 1:
+            return 0
+        turned, many = False, 0
+        for factor, reads in self.grouped:
+            turned, many = bool(np.any(factors[factor].imag)), len(reads)
+        key = len(self.plain), int(self.carry), many, int(turned)
+        return SHAPES.index(key) + 1 if key in SHAPES else 0
+
+
+def _passes(rows: Rows, sweep: _Sweep, stride: int) -> list[_Pass]:
+    """Split long sums; what the sweep has just written itself is added last."""
+    plain, grouped, single = _sorted(rows)
+    again = [read for read in rows.reads if read.slot == rows.slot]
+    recursive = [r for r in again if r.entry.offset and r.entry.offset % stride == 0]
+    carried = [r for r in recursive if r in plain and r.entry.offset == -sweep.move * stride]
+    carry = len(recursive) == 1 and len(carried) == 1 and len(plain) > 1 and not single
+    plain = [read for read in plain if read not in carried] + carried
+    groups = [
+        (f, reads[i : i + 2]) for f, reads in grouped.items() for i in range(0, len(reads), 2)
+    ]
+    whole = _Pass(plain, list(grouped.items()), single, carry and not grouped)
+    many = len(groups) + (len(plain) > MOST)
+    if sweep.block == 1 or single or not many or (recursive and not carry):
+        return [whole]
+    own = constant(rows.slot, 1.0)
+    found: list[_Pass] = []
+    last = plain[-1:] if carry else []
+    rest = plain[:-1] if carry else plain
+    for factor, reads in groups:
+        room = 2 if len(reads) == 1 else 1
+        taken, rest = (rest[:room], rest[room:]) if not found else ([own], rest)
+        found.append(_Pass(taken, [(factor, reads)]))
+    while rest or last:
+        taken = [own] if found else []
+        room = MOST - len(taken) - len(last)
+        taken, rest = taken + rest[:room], rest[room:]
+        if rest:
+            found.append(_Pass(taken))
+        else:
+            found.append(_Pass(taken + last, carry=carry))
+            last = []
+    return found
+
+
+def _sorted(rows: Rows) -> tuple[list[Read], dict[int, list[Read]], list[Read]]:
     """Sort what is read: one number for all lanes, groups by factor, lane by lane."""
     plain: list[Read] = []
-    grouped: dict[tuple[int, bool], list[Read]] = {}
+    grouped: dict[int, list[Read]] = {}
     single: list[Read] = []
     for read in rows.reads:
         if read.entry.lanes is not None:
@@ -241,5 +306,6 @@ def _sorted(rows: Rows) -> tuple[list[Read], dict[tuple[int, bool], list[Read]],
         elif read.entry.factor == NO_FACTOR:
             plain.append(read)
         else:
-            grouped.setdefault((read.entry.factor, read.entry.imaginary), []).append(read)
+            grouped.setdefault(read.entry.factor, []).append(read)
+    plain.sort(key=lambda read: (read.slot, read.entry.offset) != (rows.slot, 0))
     return plain, grouped, single

@@ -14,7 +14,7 @@ from levelstride.splitting.parts import Parts
 from levelstride.stepper import lane_kernels
 from levelstride.stepper.kernels import DONE
 from levelstride.stepper.lane_entries import Entry, Factors, Order, Stencil
-from levelstride.stepper.lane_plan import STATE, Operand, Sums
+from levelstride.stepper.lane_plan import STATE, Operand, Sums, ends_implicitly
 from levelstride.stepper.lane_program import Encoder, Group, Read, Rows, constant, sweeps
 from levelstride.stepper.plan import NONE, Plan, Scheme
 
@@ -23,8 +23,8 @@ Precision = Literal["double", "single"]
 Matrix = list[list[Entry]]
 """Entries of the rows of every field."""
 
-ROW_BYTES: Final = 64
-"""Lanes taken together, in bytes: two vector registers, so that the stages stay in the caches."""
+ROW_BYTES: Final = 128
+"""Lanes taken together, in bytes: four vector registers, and the stages stay in the caches."""
 
 
 class _Operators:
@@ -205,7 +205,8 @@ class _Step:
         for i in np.flatnonzero(plan.used).tolist():
             solver = plan.solver[i]
             at_start = all(sums.is_state(i) for sums in self._sums)
-            if i == plan.result_stage or (solver == NONE and at_start):
+            last = i == plan.nstage - 1 and ends_implicitly(plan, self._o.scheme)
+            if i == plan.result_stage or last or (solver == NONE and at_start):
                 self._slots["stage", i] = 0
             slot = self._slot(("stage", i))
             sums = [self._sum(i, kind) for kind in range(self._stride)]
@@ -222,7 +223,9 @@ class _Step:
             self._write(target, [self._sum(plan.nstage, kind) for kind in range(self._stride)])
 
     def _write(self, slot: int, sums: Sequence[tuple[Read, ...]]) -> None:
-        self.groups += [Group((Rows(slot, kind, reads),)) for kind, reads in enumerate(sums)]
+        for kind, reads in enumerate(sums):
+            if not (len(reads) == 1 and reads[0].slot == slot and reads[0].is_copy):
+                self.groups.append(Group((Rows(slot, kind, reads),)))
 
     def _multiply(self, operand: Operand, source: int, matrix: Matrix) -> None:
         for kind, entries in enumerate(matrix):
