@@ -153,6 +153,7 @@ def test_another_step_is_the_same_as_a_new_stepper():
     new.march(states, 2)
     again.march(other, 2)
     np.testing.assert_array_equal(states, other)
+    assert again.moved == new.moved > new.working_set > states.nbytes
 
 
 @pytest.mark.parametrize("kind", ["flat", "everything"])

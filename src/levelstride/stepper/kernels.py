@@ -38,11 +38,17 @@ def compiled(function: Callable[..., Any], *, inline: bool = False) -> Any:
     cache and the kernel is compiled in every process. ``fastmath`` stays off: reordered sums would
     make results depend on the number of lanes, and infinities must pass through so that an
     unstable step shows as such. ``error_model="numpy"``: no check of divisors inside the loops,
-    the factorisation looks at its own pivots. ``inline`` is for what is called once a layer:
+    the factorisation looks at its own pivots. ``nogil``: kernels see arrays only, so that other
+    threads may work meanwhile. ``inline`` is for what is called once a layer:
     handing over sixteen arrays costs more than the work. The cache names the records of this
     module: after renaming one, old cache files in ``__pycache__`` must go.
     """
-    flags: dict[str, Any] = {"error_model": "numpy", "fastmath": False, "forceinline": inline}
+    flags: dict[str, Any] = {
+        "error_model": "numpy",
+        "fastmath": False,
+        "forceinline": inline,
+        "nogil": True,
+    }
     try:
         return numba.njit(cache=True, **flags)(function)
     except RuntimeError:

@@ -97,6 +97,23 @@ class _Sweep:
         self.rows += [(rows, lag) for rows in group.rows]
 
 
+def moved(found: Sequence[_Sweep], stride: int) -> int:
+    """Rows a layer that a step must read or write, each once a sweep however often it is used."""
+    total = 0
+    for sweep in found:
+        rows = [rows for rows, _ in sweep.rows]
+        written = {(each.slot, each.kind) for each in rows}
+        read: set[tuple[int, int]] = set()
+        for each in rows:
+            read |= {
+                (r.slot, (each.kind + r.entry.offset) % stride)
+                for r in each.reads
+                if r.slot != each.slot or not r.entry.offset
+            }
+        total += len(written) + len(read)
+    return total
+
+
 def sweeps(groups: Sequence[Group], stride: int) -> list[_Sweep]:
     """Share the groups out among as few sweeps as their directions allow."""
     found: list[_Sweep] = []

@@ -15,7 +15,16 @@ from levelstride.stepper import lane_kernels
 from levelstride.stepper.kernels import DONE
 from levelstride.stepper.lane_entries import Entry, Factors, Order, Stencil
 from levelstride.stepper.lane_plan import STATE, Operand, Sums, ends_implicitly
-from levelstride.stepper.lane_program import Encoder, Group, Read, Rows, constant, sweeps
+from levelstride.stepper.lane_program import (
+    ALIGNED,
+    Encoder,
+    Group,
+    Read,
+    Rows,
+    constant,
+    moved,
+    sweeps,
+)
 from levelstride.stepper.plan import NONE, Plan, Scheme
 
 Array = NDArray[Any]
@@ -23,8 +32,8 @@ Precision = Literal["double", "single"]
 Matrix = list[list[Entry]]
 """Entries of the rows of every field."""
 
-ROW_BYTES: Final = 128
-"""Lanes taken together, in bytes: four vector registers, and the stages stay in the caches."""
+ROW_BYTES: Final = {"double": 128, "single": 64}
+"""Sixteen numbers a row: long enough to pay for the loop around it, short enough for the caches."""
 
 
 class _Operators:
@@ -86,6 +95,11 @@ class LaneStepper:
     nlane : int
     dtype : numpy.dtype
         Real where all operators are real in stored unknowns, complex otherwise.
+    moved : int
+        Bytes of states and tendencies that a step moves at the least for the lanes of one row,
+        crossing every array once a sweep.
+    working_set : int
+        Bytes of all states and tendencies of the lanes of one row.
 
     Raises
     ------
@@ -131,11 +145,14 @@ class LaneStepper:
         self.nlane, self.dtype = operators.nlane, operators.dtype
         step = _Step(operators, self.dt)
         number = np.dtype(np.float32 if operators.precision == "single" else np.float64)
-        self._span = (0,) * (ROW_BYTES // number.itemsize)
+        self._span = (0,) * (ROW_BYTES[operators.precision] // number.itemsize)
         width, parts = len(self._span), 1 if operators.is_real else 2
         at, stride = self.layout, operators.order.stride
         encoder = Encoder(at.nlev, stride, width, parts, number)
-        self._program = encoder.encode(sweeps(step.groups, stride), step.nslot, step.factors.known)
+        found = sweeps(step.groups, stride)
+        self._program = encoder.encode(found, step.nslot, step.factors.known)
+        self.moved = moved(found, stride) * at.nlev * len(self._span) * number.itemsize
+        self.working_set = encoder.size * number.itemsize
         self._lanes = encoder.lanes(self.nlane)
         self._places = encoder.base[0] + width * operators.order.places
         self._size, self._row, self._number = encoder.size, encoder.row, number
@@ -166,8 +183,8 @@ class LaneStepper:
 
 def _aligned(size: int, number: np.dtype[Any]) -> Array:
     """Return room that begins with a cache line."""
-    room = np.empty(size + ROW_BYTES // number.itemsize, number)
-    first = -room.ctypes.data % ROW_BYTES // number.itemsize
+    room = np.empty(size + ALIGNED // number.itemsize, number)
+    first = -room.ctypes.data % ALIGNED // number.itemsize
     return room[first : first + size]
 
 
@@ -186,7 +203,7 @@ class _Step:
             for f in range(self._stride)
         ]
         self._solvers = [
-            self._factored(operators.fast, a * dt, partial_name(operators, d))
+            self._factored(operators.fast, a * dt, _stage_name(operators, d))
             for d, a in enumerate(operators.plan.diagonals)
         ]
         self._stages()
@@ -290,7 +307,7 @@ class _Step:
         return left, right
 
 
-def partial_name(operators: _Operators, d: int) -> str:
+def _stage_name(operators: _Operators, d: int) -> str:
     """Name the stage system of a diagonal coefficient in a message."""
     plan = operators.plan
     stage = int(np.flatnonzero(plan.solver == d)[0]) + 1
