@@ -18,7 +18,7 @@ from levelstride.stepper import Stepper, lane_kernels
 from levelstride.stepper.lanes import LaneStepper
 from oracles.columns import STAGGERINGS, random_column, seeds
 from oracles.schemes import backward_euler
-from oracles.stepping import SPLITTINGS, parts_of, small_column
+from oracles.stepping import SPLITTINGS, parts_of, small_column, tall_column
 
 TOLERANCE = 1e-12
 KINDS = ("flat", "slope", "everything")
@@ -137,6 +137,18 @@ def test_lost_lanes_stay_alone():
     stepper.march(states, 3)
     np.testing.assert_allclose(states[:, [0, 2, 3]], expected, rtol=0, atol=TOLERANCE)
     assert not np.any(np.isfinite(states[:, 1]))
+
+
+@pytest.mark.parametrize("name", ["ARS(2,3,2)", "Trap2(2,3,2)", "ARK5(4)8L[2]SA"])
+def test_no_spurious_growth_at_a_large_step(name):
+    """Nothing grows where everything is implicit, though no rows are interchanged."""
+    column = tall_column(40, "lorenz")
+    parts = parts_of("all-implicit", column)
+    for dt in (1e3, 1e4):
+        stepper = LaneStepper([parts] * parts.layout.size, tableaux.find(name), dt)
+        matrix = np.eye(parts.layout.size)
+        stepper.march(matrix, 1)
+        assert np.abs(np.linalg.eigvals(matrix)).max() <= 1.0 + 1e-13
 
 
 def test_another_step_is_the_same_as_a_new_stepper():
