@@ -42,10 +42,11 @@ def written(value: Any) -> str:
 
 def show(name: str, rows: Rows) -> None:
     table = Table(title=name, title_justify="left", box=box.SIMPLE_HEAD, pad_edge=False)
-    for heading in dict.fromkeys(key for row in rows for key in row):
+    headings = list(dict.fromkeys(key for row in rows for key in row))
+    for heading in headings:
         table.add_column(Text(heading.replace("_", " ")), justify="right")
     for row in rows:
-        table.add_row(*(Text(written(value)) for value in row.values()))
+        table.add_row(*(Text(written(row.get(heading, ""))) for heading in headings))
     width = None if sys.stdout.isatty() else 160
     Console(markup=False, highlight=False, width=width).print(table)
 

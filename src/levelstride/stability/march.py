@@ -29,8 +29,8 @@ Array = NDArray[np.float64]
 FIRST_STEPS = 8
 """Steps up to the first look at the norm; even tenfold growth a step stays far from overflow."""
 
-GLANCE = 1500
-"""Steps after which a quiet wave counts as stable at a step of the scan."""
+GLANCE, CLOSE = 1000, 8000
+"""Steps after which a quiet wave counts as stable in a scan, and at a limit."""
 
 EFOLDINGS = 3.0
 """Tolerated e-folding times after which growth at the tolerated rate shows against all else."""
@@ -86,7 +86,9 @@ class March:
         self._tolerance = tolerance
         self._steppers: dict[tuple[int, ...], LaneStepper] = {}
 
-    def look(self, problems: Sequence[WaveProblem], dt: float, *, long: bool) -> list[Look]:
+    def look(
+        self, problems: Sequence[WaveProblem], dt: float, enough: int | None = GLANCE
+    ) -> list[Look]:
         """March waves at one step until each is quiet, refuted, or has had its time.
 
         Parameters
@@ -94,17 +96,18 @@ class March:
         problems : sequence of WaveProblem
         dt : float
             [s]
-        long : bool
-            Whether to march until growth at the tolerated rate itself would show.
+        enough : int or None
+            Steps after which quiet waves count as stable; None to march until growth at the
+            tolerated rate itself would show.
         """
         try:
             stepper = self._stepper(problems, dt)
         except CalculationError:
             if len(problems) == 1:
                 return [Look(Seen.GROWS, np.inf)]
-            return [self.look([problem], dt, long=long)[0] for problem in problems]
+            return [self.look([problem], dt, enough)[0] for problem in problems]
         with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-            return _Course(problems, stepper, self._tolerance).run(long=long)
+            return _Course(problems, stepper, self._tolerance).run(enough)
 
     def _stepper(self, problems: Sequence[WaveProblem], dt: float) -> LaneStepper:
         key = tuple(id(problem) for problem in problems)
@@ -132,10 +135,10 @@ class _Course:
         self._log, self._highest = np.zeros(nlane), np.zeros(nlane)
         self._steps = 0
 
-    def run(self, *, long: bool) -> list[Look]:
+    def run(self, enough: int | None) -> list[Look]:
         found: list[Look | None] = [None] * len(self._problems)
         last = int(np.ceil(EFOLDINGS * self._tolerance.efolding_s / self._dt))
-        enough = last if long else min(GLANCE, last)
+        enough = last if enough is None else min(enough, last)
         while True:
             rates = self._go_on(max(self._steps, FIRST_STEPS))
             refuted = self._refuted(rates)

@@ -13,7 +13,7 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 
 from levelstride.stability.by_growth import first_failure
-from levelstride.stability.march import EFOLDINGS, March, Seen
+from levelstride.stability.march import CLOSE, EFOLDINGS, GLANCE, March, Seen
 from levelstride.stability.step_limit import (
     BISECTION,
     NEAR_MINIMUM,
@@ -28,8 +28,8 @@ from levelstride.stability.step_limit import (
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem
 
-GROUPS = 4
-"""Groups of waves that march together, each at steps between those of the others."""
+ASKED = 4
+"""Waves of a group whose frozen layers are asked where to look."""
 
 STRIDE, STRIDE_STIFF = 4, 24
 """Steps of the scan from one look of a group to the next, and where slow terms are short."""
@@ -70,14 +70,17 @@ class MarchSearch:
     waves : StepSearch
         Holds the waves, and the step up to which is scanned.
     tolerance : Tolerance
+    judge : bool
+        Whether full matrices are asked about the binding wave in the end.
     """
 
-    def __init__(self, waves: StepSearch, tolerance: Tolerance) -> None:
+    def __init__(self, waves: StepSearch, tolerance: Tolerance, *, judge: bool = True) -> None:
         self._waves, self._tolerance = waves, tolerance
         self._march = March(tolerance)
         self._limits: dict[int, float] = {}
+        self._filled: dict[int, float] = {}
         self._largest_s = waves.largest_s
-        self._known_s = 0.0
+        self._known_s, self._asks_judge = 0.0, judge
         self.best: Bracket | None = None
 
     def run(self, *, refine: bool = True, known_s: float = 0.0) -> Bracket | None:
@@ -102,8 +105,9 @@ class MarchSearch:
         """
         self._known_s = known_s
         problems = self._waves.problems()
-        for group in range(GROUPS):
-            self._scan(problems[group::GROUPS], group / GROUPS, known_s)
+        groups = -(-len(problems) // TOGETHER)
+        for group in range(groups):
+            self._scan(problems[group::groups], group / groups, known_s)
         self._settle(refine=refine)
         return self.best
 
@@ -112,10 +116,10 @@ class MarchSearch:
         return not any(self._fails(group, dt) for group in _groups(problems))
 
     def _fails(
-        self, problems: Sequence[WaveProblem], dt: float, *, long: bool = False
+        self, problems: Sequence[WaveProblem], dt: float, enough: int = GLANCE
     ) -> list[WaveProblem]:
         """Waves that a step does not keep stable; of those that only full matrices tell, one."""
-        looks = self._march.look(problems, dt, long=long)
+        looks = self._march.look(problems, dt, enough)
         failing = [p for p, look in zip(problems, looks, strict=True) if look.seen is Seen.GROWS]
         if failing:
             return failing
@@ -140,7 +144,7 @@ class MarchSearch:
         if EFOLDINGS * tolerance.efolding_s / dt <= MOST_STEPS:
             rates = [
                 -np.inf if look.seen is Seen.QUIET else look.rate
-                for look in self._march.look(problems, dt, long=True)
+                for look in self._march.look(problems, dt, None)
             ]
         else:
             steps_s = np.array([dt])
@@ -175,7 +179,9 @@ class MarchSearch:
         return [
             problem
             for problem in problems
-            if dt in problem.suspects and not problem.stable(dt, self._tolerance)
+            if "suspects" in vars(problem)
+            and dt in problem.suspects
+            and not problem.stable(dt, self._tolerance)
         ]
 
     def _looks(self, problems: Sequence[WaveProblem], turn: float) -> list[float]:
@@ -184,8 +190,8 @@ class MarchSearch:
         short = SHORT / fastest if fastest else self._largest_s
         small = NOT_SMALL / slow if slow else np.inf
         cap = self._cap()
-        asked = {id(problem): problem for problem in (problems[0], problems[-1])}
-        looks = [float(dt) for problem in asked.values() for dt in problem.suspects if dt < cap]
+        asked = problems[:: max(1, len(problems) // ASKED)]
+        looks = [float(dt) for problem in asked for dt in problem.suspects if dt < cap]
         step = short * SCAN_RATIO ** (turn * STRIDE)
         while step < cap:
             looks.append(step)
@@ -207,15 +213,28 @@ class MarchSearch:
                 failing, high, low = still, low, low / 2
                 if low < SMALLEST_FIRST_STEP:
                     raise no_step(failing[0].kappa)
+        failing, low, high = self._bisect(failing, low, high, GLANCE)
+        if still := self._fails(failing, low, CLOSE):
+            factor = BISECTION
+            while still:
+                failing, high, factor = still, low, factor**2
+                low = high / factor
+                still = self._fails(failing, low, CLOSE)
+            failing, low, high = self._bisect(failing, low, high, CLOSE)
+        for problem in failing:
+            self._note(Bracket(low, high, problem))
+
+    def _bisect(
+        self, failing: Sequence[WaveProblem], low: float, high: float, enough: int
+    ) -> tuple[Sequence[WaveProblem], float, float]:
         while high / low > BISECTION:
             middle = float(np.sqrt(low * high))
-            still = self._fails(failing, middle)
+            still = self._fails(failing, middle, enough)
             if still:
                 failing, high = still, middle
             else:
                 low = middle
-        for problem in failing:
-            self._note(Bracket(low, high, problem))
+        return failing, low, high
 
     def _note(self, bracket: Bracket) -> None:
         self._limits[id(bracket.problem)] = bracket.low
@@ -297,13 +316,19 @@ class MarchSearch:
             self._scan(group, 0.0, self.best.low / FILL)
 
     def _fill_below(self) -> None:
-        """Look at the binding wave at the full scan ratio over the factor two below the limit."""
+        """Look at the binding wave at the full scan ratio over the factor two below the limit.
+
+        Its neighbours look along: they cost nothing where a row of lanes would be empty.
+        """
         assert self.best is not None
         limit, problem = self.best.low, self.best.problem
-        step = limit / FILL
-        low = 0.0
+        step, low = limit / FILL, 0.0
+        if self._filled.get(id(problem), np.inf) < limit * SCAN_RATIO:
+            return
+        self._filled[id(problem)] = limit
+        near = sorted(self._waves.problems(), key=lambda p: abs(np.log(p.kappa / problem.kappa)))
         while step < limit:
-            if failing := self._fails([problem], step):
+            if failing := self._fails(near[:TOGETHER], step):
                 self._close_in(failing, low, step)
                 return
             low, step = step, step * SCAN_RATIO
@@ -339,7 +364,7 @@ class MarchSearch:
         """Ask full matrices about the binding wave on the stable side of its limit."""
         assert self.best is not None
         problem, low = self.best.problem, self.best.low
-        if problem.size > DENSE_UNKNOWNS:
+        if problem.size > DENSE_UNKNOWNS or not self._asks_judge:
             return
         if not problem.stable(low, self._tolerance):
             self._note(first_failure(problem, low, self._tolerance))
