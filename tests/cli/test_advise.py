@@ -67,6 +67,13 @@ class TestAdvise:
             "ARS(3,4,3) with sound",
         ]
 
+    def test_passes_on_that_limits_are_certified(self, run, tiny, asked):
+        run("advise", tiny, "--workers", 1)
+        assert asked["plan"].certify is False
+        run("advise", tiny, "--workers", 1, "--certify")
+        assert asked["plan"].certify is True
+        assert all(planned.item.certify for planned in asked["plan"].items)
+
     def test_judges_the_current_step(self, run, tiny, asked):
         words = ("--current", "22.9", "--tableau", "ars232", "--split", "sound+buoyancy")
         code, out, _ = run("advise", tiny, "--workers", 1, *words)
@@ -119,7 +126,9 @@ class TestLimit:
 
         def limit(column, **options):
             asked.update(options)
-            return records.unbounded() if options["split"] == "all-implicit" else records.limit()
+            if options["split"] == "all-implicit":
+                return records.unbounded()
+            return records.limit(certificate=records.certificate() if options["certify"] else None)
 
         monkeypatch.setattr(levelstride.studies.limit, "limit", limit)
         return asked
@@ -128,7 +137,12 @@ class TestLimit:
         words = ("--tableau", "ars232", "--split", "sound+buoyancy", "--efolding", "3600")
         code, out, err = run("limit", tiny, *words)
         assert (code, err) == (0, "")
-        assert asked == {"tableau": "ars232", "split": "sound+buoyancy", "efolding_s": 3600.0}
+        assert asked == {
+            "tableau": "ars232",
+            "split": "sound+buoyancy",
+            "efolding_s": 3600.0,
+            "certify": False,
+        }
         for text in (
             "27.5 s",
             "strict step",
@@ -141,6 +155,22 @@ class TestLimit:
             "dense eigenvalues",
         ):
             assert text in " ".join(out.split())
+
+    def test_certifies_at_every_wave(self, run, tiny, asked):
+        words = ("limit", tiny, "--tableau", "ars232", "--split", "sound+buoyancy", "--certify")
+        code, out, err = run(*words)
+        assert (code, err) == (0, "")
+        assert asked["certify"] is True
+        table = [line.split() for line in out.splitlines()]
+        assert ["0.001047", "6.0", "km", "8e-06", "0.00017", "1.2e-05", "dense", "eigenvalues"] in (
+            table
+        )
+        assert ["0.0005", "12.6", "km", "-", "2e-07", "1.2e-05", "dense", "eigenvalues"] in table
+        assert "at 27.52 s [1/s]" in out
+        plain = json.loads(run(*words, "--json")[1])["certificate"]
+        assert plain["breaks_above"] == "spectrum"
+        assert plain["waves"][1]["growth_below_per_s"] is None
+        assert "certificate" not in run(*words[:-1])[1]
 
     def test_a_limit_that_never_bites(self, run, tiny, asked):
         words = ("limit", tiny, "--tableau", "ars232", "--split", "all-implicit")

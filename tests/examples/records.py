@@ -6,11 +6,14 @@ from levelstride.results.dataset import (
     Advice,
     AdviceRow,
     Bites,
+    Certificate,
+    CertifiedWave,
     ColumnSummary,
     CurrentStep,
     Limit,
     OwnGrowth,
     Provenance,
+    RefutedStep,
     StepAtTolerance,
     Window,
 )
@@ -33,6 +36,33 @@ def bites(**changes):
         "period_s": 12.5,
     }
     return Bites(**{**values, **changes})
+
+
+def certificate(**changes):
+    waves = tuple(
+        CertifiedWave(
+            air="standard",
+            wavenumber_per_m=wavenumber,
+            growth_below_per_s=below,
+            growth_above_per_s=above,
+            tolerated_per_s=1.2e-5,
+            method="dense eigenvalues",
+        )
+        for wavenumber, below, above in ((1.0471975511965976e-3, 8e-6, 1.7e-4), (5e-4, None, 2e-7))
+    )
+    values = {
+        "below_s": 27.5,
+        "above_s": 27.52,
+        "breaks_above": "spectrum",
+        "waves": waves,
+        "worst": 0,
+        "refuted": (
+            RefutedStep(
+                step_s=29.0, air="standard", wavenumber_per_m=5e-4, criterion="spectrum+transient"
+            ),
+        ),
+    }
+    return Certificate(**{**values, **changes})
 
 
 def limit(**changes):

@@ -121,3 +121,17 @@ def test_text_names_step_splitting_tableau_reason_headroom_hash_and_caution():
 def test_text_gives_a_step_that_is_no_decimal_exactly():
     row = records.row(advised_step_s=200 / 7, advised_step_fraction="200/7")
     assert "step:      28.5714 s (exactly 200/7 s)" in to_text(records.advice(rows=(row,)))
+
+
+def test_a_certificate_is_a_table_in_json_and_a_flag_in_csv():
+    certified = records.row(records.limit(certificate=records.certificate()))
+    plain = json.loads(to_json(certified))["certificate"]
+    assert [wave["growth_below_per_s"] for wave in plain["waves"]] == [8e-6, None]
+    assert plain["refuted"][0]["criterion"] == "spectrum+transient"
+    first, second = csv.DictReader(
+        io.StringIO(to_csv(records.advice(rows=(certified, records.row()))))
+    )
+    assert first["certified_at_every_wave"] == "true"
+    assert float(first["certified_worst_growth_below_per_s"]) == 8e-6
+    assert second["certified_at_every_wave"] == "false"
+    assert second["certified_worst_growth_below_per_s"] == ""

@@ -19,6 +19,9 @@ ADVICES = {
     ),
     "nothing to advise": records.advice(rows=(records.without_step(),), best=None),
     "nothing bites": records.advice(rows=(records.row(records.unbounded(own_growth=())),)),
+    "certified": records.advice(
+        rows=(records.row(records.limit(certificate=records.certificate())), records.row())
+    ),
     "no rows": records.advice(rows=(), best=None),
 }
 
@@ -99,3 +102,12 @@ def test_all_four_files_are_written(tmp_path):
         "advice.h5",
     ]
     assert all(path.stat().st_size > 100 for path in written)
+
+
+def test_a_certificate_is_a_flag_and_its_worst_wave(tmp_path):
+    path = tmp_path / "advice.h5"
+    path.write_bytes(to_hdf5(ADVICES["certified"]))
+    with xarray.open_dataset(path, engine="h5netcdf") as data:
+        assert list(data["certified_at_every_wave"].values) == [1, 0]
+        assert data["certified_worst_growth_below_per_s"].values[0] == 8e-6
+        assert np.isnan(data["certified_worst_wavenumber_per_m"].values[1])

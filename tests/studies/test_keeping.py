@@ -32,7 +32,7 @@ def _searched(monkeypatch):
     """Let every search answer at once; returns which were made."""
     made = []
 
-    def limit(column, *, tableau, split):
+    def limit(column, *, tableau, split, certify=False):
         made.append((column.title, tableau, split))
         return records.limit(
             tableau=tableau, split=split, stable_step_s=3.0, lowest_slope_gradient=None
@@ -99,6 +99,18 @@ def test_a_change_invalidates_exactly_what_it_touches(
     assert count_kept(plan_advice(build(TINY)).items, kept) == 4
 
 
+def test_a_certified_limit_is_another_answer(tmp_path, searched):
+    kept, column = KeptItems(tmp_path), build(TINY)
+    advise(column, kept=kept)
+    searched.clear()
+    items = plan_advice(column, certify=True).items
+    assert all(planned.item.certify for planned in items)
+    assert count_kept(items, kept) == 0
+    advise(column, kept=kept, certify=True)
+    assert len(searched) == 4
+    assert count_kept(items, kept) == count_kept(plan_advice(column).items, kept) == 4
+
+
 def test_another_version_keeps_nothing(tmp_path, monkeypatch):
     kept = KeptItems(tmp_path)
     advise(build(TINY), kept=kept)
@@ -140,7 +152,7 @@ def test_items_are_kept_the_moment_they_end(tmp_path, monkeypatch, searched):
     kept = KeptItems(tmp_path)
     answer = work_item.limit
 
-    def break_off(column, *, tableau, split):
+    def break_off(column, *, tableau, split, certify):
         if len(searched) == 3:
             raise KeyboardInterrupt
         return answer(column, tableau=tableau, split=split)
@@ -162,7 +174,7 @@ def test_progress_begins_with_what_was_kept(tmp_path):
 def test_many_columns_share_the_work_and_one_that_fails_stops_no_other(monkeypatch, searched):
     answer = work_item.limit
 
-    def fail(column, *, tableau, split):
+    def fail(column, *, tableau, split, certify):
         if column.title == "bad":
             raise InputError("mend this")
         if column.title == "worse":

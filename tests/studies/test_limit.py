@@ -2,7 +2,7 @@
 
 import json
 import math
-from dataclasses import fields
+from dataclasses import fields, replace
 
 import numpy as np
 import pytest
@@ -12,7 +12,9 @@ from levelstride.column.read import build
 from levelstride.errors import CalculationError, InputError
 from levelstride.results.dataset import Limit
 from levelstride.results.export import to_json
+from levelstride.stability.step_limit import Bracket
 from levelstride.stability.tolerance import Tolerance
+from levelstride.stability.verdict import ColumnVerdict
 from levelstride.studies.limit import NO_WIND, all_explicit_step, limit
 from levelstride.tableaux.lookup import find
 
@@ -219,3 +221,54 @@ def test_no_stable_step_at_all_is_an_error_that_says_why():
 
 def test_it_is_the_public_function():
     assert levelstride.limit is limit
+
+
+def test_a_certified_limit_says_so_wave_by_wave(found):
+    certified = limit(column_of(), tableau="ars232", split="sound", certify=True)
+    assert found.certificate is None
+    of = certified.certificate
+    assert of.below_s == certified.stable_step_s == found.stable_step_s
+    assert of.breaks_above == certified.criterion
+    assert of.refuted == ()
+    assert len({wave.wavenumber_per_m for wave in of.waves}) == len(of.waves) >= 17
+    assert of.worst_wave.wavenumber_per_m == certified.bites.wavenumber_per_m
+    assert of.worst_wave.growth_above_per_s > of.worst_wave.tolerated_per_s
+    for wave in of.waves:
+        assert wave.growth_below_per_s <= wave.tolerated_per_s
+    assert certified.certified.startswith(
+        f"certified at all {len(of.waves)} sampled waves by dense"
+    )
+    assert certified.certified.endswith(found.certified)
+    assert replace(certified, certificate=None, certified=found.certified) == found
+
+
+def test_what_does_not_bite_is_certified_where_the_scan_ends():
+    found = limit(column_of(), tableau="ARS(2,3,2)", split="all-implicit", certify=True)
+    assert found.unbounded
+    assert found.certificate.below_s == found.scanned_to_s
+    assert found.certificate.above_s is None
+    assert "none of them binds" in found.certified
+
+
+def test_the_courant_limit_is_certified_at_that_step():
+    windy = column_of(wind={"kind": "uniform", "speed_m_per_s": 60.0, "advection": "upwind-3"})
+    found = limit(windy, tableau="ARS(1,1,1)", split="sound+buoyancy+divergence", certify=True)
+    assert "courant" in found.criterion or found.certificate.breaks_above
+    assert found.certificate.below_s >= found.stable_step_s
+
+
+def test_a_refuted_limit_is_replaced_and_named(monkeypatch, found):
+    search = ColumnVerdict.stable_step
+
+    def too_long(self, tolerance, **options):
+        right = search(self, tolerance, **options)
+        bracket = right.bracket
+        wrong = Bracket(1.2 * bracket.low, 1.2 * bracket.high, bracket.problem)
+        return replace(right, step_s=1.2 * right.step_s, bracket=wrong)
+
+    monkeypatch.setattr(ColumnVerdict, "stable_step", too_long)
+    mended = limit(column_of(), tableau="ars232", split="sound", certify=True)
+    assert mended.stable_step_s == pytest.approx(found.stable_step_s, rel=5e-3)
+    (refuted,) = mended.certificate.refuted
+    assert refuted.step_s == 1.2 * found.stable_step_s
+    assert f"{refuted.step_s:.6g} s, found first, is refuted by the wave" in mended.certified

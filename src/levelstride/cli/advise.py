@@ -10,7 +10,7 @@ from cyclopts import Parameter
 from levelstride.cli.advice_table import show_advice, show_outcomes
 from levelstride.cli.executors import executor_for, usable_workers
 from levelstride.cli.kernels import prepare_kernels
-from levelstride.cli.options import Json
+from levelstride.cli.options import Certify, Json
 from levelstride.cli.resuming import Resumable
 
 if TYPE_CHECKING:
@@ -47,6 +47,7 @@ def advise(
         str | None,
         Parameter(help="Address of a Dask scheduler whose workers do the work instead."),
     ] = None,
+    certify: Certify = False,
     json: Json = False,
 ) -> int:
     """Try tableaux and splittings and advise a step for each, the cheapest first."""
@@ -65,7 +66,7 @@ def advise(
 
         read = load(source)
         judged = _current(read.split, source, current, tableau, split)
-        return plan_advice(read, tableaux, splits, judged)
+        return plan_advice(read, tableaux, splits, judged, certify=certify)
 
     work = _Work(out, workers, cluster, json)
     if len(files) == 1 and not Path(columns[0]).is_dir():

@@ -1,13 +1,14 @@
 """``levelstride limit``: how long a step does one tableau and splitting carry?"""
 
 import sys
+from math import pi
 from typing import TYPE_CHECKING, Annotated
 
 from cyclopts import Parameter
 
 from levelstride.cli.console import Heading, progress, say, show_pairs, show_table
 from levelstride.cli.kernels import prepare_kernels
-from levelstride.cli.options import ColumnFile, Json
+from levelstride.cli.options import Certify, ColumnFile, Json
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -28,6 +29,7 @@ def limit(
         float | None,
         Parameter(help="Tolerated e-folding time [s]; that of the column file by default."),
     ] = None,
+    certify: Certify = False,
     json: Json = False,
 ) -> None:
     """Find the longest stable step of one tableau and splitting, and what bites first."""
@@ -45,7 +47,7 @@ def limit(
         raise InputError(f"--efolding {efolding:g}: must be a time above 0 [s]")
     prepare_kernels()
     with progress(f"{read.title}: {tableau} with {split or 'its [split]'}"):
-        found = find_limit(read, tableau=tableau, split=split, efolding_s=efolding)
+        found = find_limit(read, tableau=tableau, split=split, efolding_s=efolding, certify=certify)
     if json:
         sys.stdout.write(to_json(found))
     else:
@@ -81,6 +83,7 @@ def _show(title: str, found: "Limit") -> None:
     show_pairs([pair for pair in pairs if pair[1] not in missing])
     _show_bites(found)
     _show_tolerances(found)
+    _show_certificate(found)
     for own in found.own_growth:
         say(own_growth(own))
     for window in found.windows:
@@ -133,3 +136,35 @@ def _show_tolerances(found: "Limit") -> None:
                 for a in found.stable_step_by_efolding
             ],
         )
+
+
+def _show_certificate(found: "Limit") -> None:
+    from levelstride.results.wording import metres, number, step
+
+    of = found.certificate
+    if of is None:
+        return
+    above = "" if of.above_s is None else f"at {step(of.above_s, 6)} s [1/s]"
+    several = len({wave.air for wave in of.waves}) > 1
+    headings = [
+        *([Heading("air", whole=True)] if several else []),
+        Heading("wavenumber", "[1/m]", number=True),
+        Heading("wavelength", "", number=True),
+        Heading("growth below", f"at {step(of.below_s, 6)} s [1/s]", number=True),
+        Heading("growth above", above, number=True),
+        Heading("tolerated", "[1/s]", number=True),
+        Heading("method"),
+    ]
+    rows = [
+        (
+            *([wave.air] if several else []),
+            number(wave.wavenumber_per_m),
+            metres(2 * pi / wave.wavenumber_per_m),
+            number(wave.growth_below_per_s, 3),
+            number(wave.growth_above_per_s, 3),
+            number(wave.tolerated_per_s, 3),
+            wave.method,
+        )
+        for wave in of.waves
+    ]
+    show_table(headings, rows, marked=of.worst)

@@ -22,6 +22,7 @@ _COLUMNS: Final = (
     "frequency_error", "amplitude_change_per_period", "explicit_share", "gain", "efolding_s",
     "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns",
 )  # fmt: skip
+_WORST: Final = ("wavenumber_per_m", "growth_below_per_s", "tolerated_per_s")
 
 
 def to_plain(record: Any) -> Any:
@@ -99,6 +100,9 @@ def _cells(row: AdviceRow, intervals_s: tuple[float, ...]) -> dict[str, str]:
     plain = to_plain(row)
     cells = {name: plain[name] for name in _COLUMNS}
     cells |= {f"bites_{name}": (plain["bites"] or {}).get(name) for name in _BITES}
+    worst = None if row.certificate is None else row.certificate.worst_wave
+    cells["certified_at_every_wave"] = worst is not None
+    cells |= {f"certified_worst_{name}": getattr(worst, name, None) for name in _WORST}
     for at in row.stable_step_by_efolding:
         cells[f"stable_step_s_efolding_{at.efolding_s:.6g}_s"] = at.stable_step_s
     for interval, steps in zip(intervals_s, row.steps_per_interval, strict=False):

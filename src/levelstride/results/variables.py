@@ -78,6 +78,11 @@ _BITES: Final = (
     ("top_m", "m", "height above ground of the top of what bites", "float"),
     ("wavelength_layers", "1", "vertical wavelength in layers of what bites", "float"),
 )
+_WORST: Final = (
+    ("wavenumber_per_m", "m-1", "wavenumber along one axis of the worst wave certified", "float"),
+    ("growth_below_per_s", "s-1", "growth rate of that wave at the stable step", "float"),
+    ("tolerated_per_s", "s-1", "growth rate tolerated at that wave", "float"),
+)
 _INDEX_OF: Final = "row that this {} belongs to"
 
 
@@ -102,6 +107,7 @@ def variables(advice: Advice) -> tuple[Variable, ...]:
             Variable(f"bites_{n}", ("row",), u, t, [_of_bites(r, n) for r in rows], k)
             for n, u, t, k in _BITES
         ),
+        *_certified(rows),
         _shares(rows, "energy_share", "field", "share of the energy of what bites by field"),
         _shares(rows, "kind_share", "wave_kind", "share of the energy of what bites by kind"),
         _by_efolding(rows),
@@ -141,6 +147,22 @@ def _coordinates(advice: Advice) -> list[Variable]:
 def _of_bites(row: AdviceRow, name: str) -> Any:
     missing = -1 if name.startswith("layer_") else None
     return missing if row.bites is None else getattr(row.bites, name)
+
+
+def _certified(rows: Sequence[AdviceRow]) -> list[Variable]:
+    worst = [None if r.certificate is None else r.certificate.worst_wave for r in rows]
+    checked = "whether the limit was checked on both sides at every sampled wave"
+    flags = [wave is not None for wave in worst]
+    return [
+        Variable("certified_at_every_wave", ("row",), "1", checked, flags, "flag"),
+        *(
+            Variable(
+                f"certified_worst_{name}", ("row",), units, text,
+                [getattr(wave, name, None) for wave in worst], kind,
+            )
+            for name, units, text, kind in _WORST
+        ),
+    ]  # fmt: skip
 
 
 def _names(rows: Sequence[AdviceRow], share: str) -> list[str]:

@@ -3,14 +3,14 @@
 Up to ``DENSE_UNKNOWNS`` dense eigenvalues tell the growth of every wave below and above the limit,
 and exact power norms the transient criterion below it. That decides both, but for what happens at
 steps and waves in between. Beyond that size a long march of every wave below the limit is the
-judge: it refutes beyond doubt, and its silence is strong evidence and no proof. Eigenvalues by
+judge: it refutes where states grow, and its silence is strong evidence and no proof. Eigenvalues by
 shift-and-invert add growths that are there but for their residual, at the eigenvalues that marches
 bring out and around the one that binds; others that grow could hide from them.
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -18,6 +18,7 @@ import numpy as np
 from levelstride.stability.by_growth import first_failure
 from levelstride.stability.march import EFOLDINGS, GLANCE, Look, March, Seen
 from levelstride.stability.marched_growth import Suspect, fastest_growth, suspect_of
+from levelstride.stability.powers import peak_exceeds
 from levelstride.stability.step_limit import (
     BISECTION,
     SCAN_RATIO,
@@ -26,7 +27,7 @@ from levelstride.stability.step_limit import (
     no_step,
 )
 from levelstride.stability.tolerance import Tolerance
-from levelstride.stability.wave_problem import WaveProblem
+from levelstride.stability.wave_problem import WaveProblem, lowest_log_limit
 
 DENSE_UNKNOWNS = 1300
 """Up to so many unknowns full matrices certify; dense eigenvalues take some ten seconds there."""
@@ -37,8 +38,14 @@ MOST_MARCHED = 200_000
 TOGETHER = 16
 """Waves that march together."""
 
+FILL = 2.0
+"""How far below a limit found again, as a factor, every wave is looked at closely."""
+
 RISES = 1.2
 """Share of the tolerated rate beyond which a march that is not over refutes: ripples aside."""
+
+Keeps = Callable[[Sequence[WaveProblem], float], bool]
+"""Whether a step keeps waves stable."""
 
 DENSE = "dense eigenvalues"
 NORMS = "power norms, where dense eigenvalues scatter"
@@ -128,13 +135,18 @@ class Certificate:
 
     @property
     def worst(self) -> CertifiedWave:
-        """The wave whose growth is nearest to, or farthest beyond, what is tolerated; broken first.
+        """The wave that breaks a criterion at the stable step, else the one that binds.
 
-        Growth at the stable step is compared, that of the operator itself taken out.
+        Where none or several do, that of fastest growth there, own growth taken out.
         """
+        binding = None if self.bracket is None else self.bracket.problem
         return max(
             self.waves,
-            key=lambda wave: (bool(wave.broken), wave.growth_low - wave.problem.facts.own_growth),
+            key=lambda wave: (
+                bool(wave.broken),
+                wave.problem is binding,
+                wave.growth_low - wave.problem.facts.own_growth,
+            ),
         )
 
 
@@ -167,9 +179,16 @@ def certify(
 
 
 def settle(
-    problems: Sequence[WaveProblem], low: float, tolerance: Tolerance, bracket: Bracket | None
+    problems: Sequence[WaveProblem],
+    low: float,
+    tolerance: Tolerance,
+    bracket: Bracket | None,
+    keeps: Keeps,
 ) -> Certificate:
     """Certify a limit; where a wave refutes it, find that wave's limit and certify that.
+
+    A limit found again is the end of a stable run of steps that begins at half of it or before, for
+    all waves.
 
     Parameters
     ----------
@@ -180,6 +199,8 @@ def settle(
     tolerance : Tolerance
     bracket : Bracket or None
         The wave that is said to bind; None if no wave binds.
+    keeps : callable
+        Whether a step keeps waves stable, as the search asks it.
 
     Returns
     -------
@@ -199,13 +220,42 @@ def settle(
         worst = found.worst
         refuted.append(Refuted(low, worst.problem, worst.broken))
         bracket = _first_failure(worst.problem, low, tolerance)
+        bracket = _fill_below(problems, bracket, tolerance, keeps)
         low = bracket.low
+
+
+def _fill_below(
+    problems: Sequence[WaveProblem], bracket: Bracket, tolerance: Tolerance, keeps: Keeps
+) -> Bracket:
+    """Look for the first loss of any wave below a limit that was approached from above."""
+    low, step = 0.0, bracket.low / FILL
+    while step < bracket.low:
+        if not keeps(problems, step):
+            failing = next(problem for problem in problems if not keeps([problem], step))
+            if low == 0.0:
+                below = _first_failure(failing, step, tolerance)
+                return _fill_below(problems, below, tolerance, keeps)
+            return _bisected(failing, low, step, lambda problem, dt: not keeps([problem], dt))
+        low, step = step, step * SCAN_RATIO
+    return bracket
+
+
+def _bisected(
+    problem: WaveProblem, low: float, high: float, broken: Callable[[WaveProblem, float], bool]
+) -> Bracket:
+    while high / low > BISECTION:
+        middle = float(np.sqrt(low * high))
+        if broken(problem, middle):
+            high = middle
+        else:
+            low = middle
+    return Bracket(low, high, problem)
 
 
 def _dense(
     problem: WaveProblem, low: float, high: float | None, tolerance: Tolerance
 ) -> CertifiedWave:
-    broken, method = problem.violated(low, tolerance), DENSE
+    broken, method = _broken(problem, low, tolerance), DENSE
     if broken and problem.stable(low, tolerance):
         broken, method = (), NORMS
     return CertifiedWave(
@@ -218,27 +268,33 @@ def _dense(
     )
 
 
+def _broken(problem: WaveProblem, dt: float, tolerance: Tolerance) -> tuple[str, ...]:
+    """Criteria that a step breaks.
+
+    exp(t L), which is costly to follow, only raises the limit of powers.
+    """
+    if problem.growth(dt) <= problem.rate(tolerance):
+        matrix, lowest = problem.matrix(dt), lowest_log_limit(tolerance)
+        if not peak_exceeds(matrix, dt, problem.rate(tolerance), tolerance.horizon, lowest):
+            return ()
+    return problem.violated(dt, tolerance)
+
+
 def _first_failure(problem: WaveProblem, high: float, tolerance: Tolerance) -> Bracket:
     if problem.size <= DENSE_UNKNOWNS:
         return first_failure(problem, high, tolerance)
     suspects = _suspects(Bracket(high, high, problem), tolerance)
 
-    def broken(dt: float) -> bool:
+    def broken(problem: WaveProblem, dt: float) -> bool:
         look, _ = _look([problem], dt, tolerance)
         return bool(_marched(problem, dt, None, look[0], tolerance, suspects).broken)
 
     low = high / SCAN_RATIO
-    while broken(low):
+    while broken(problem, low):
         high, low = low, low / SCAN_RATIO
         if low < SMALLEST_FIRST_STEP:
             raise no_step(problem.kappa)
-    while high / low > BISECTION:
-        middle = float(np.sqrt(low * high))
-        if broken(middle):
-            high = middle
-        else:
-            low = middle
-    return Bracket(low, high, problem)
+    return _bisected(problem, low, high, broken)
 
 
 def _certify_by_marches(
@@ -279,7 +335,7 @@ def _look(
     march, looks = March(tolerance), list[Look]()
     for first in range(0, len(problems), TOGETHER):
         group = problems[first : first + TOGETHER]
-        looks += march.look(group, dt, long=long)
+        looks += march.look(group, dt, None if long else GLANCE)
     return looks, steps if long else GLANCE
 
 

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
 from levelstride.splitting.splitting import Splitting
-from levelstride.stability.certificate import Certificate, settle
+from levelstride.stability.certificate import Certificate, Keeps, settle
 from levelstride.stability.courant import CourantLimit, courant_limit
 from levelstride.stability.extremes import is_skew, largest_modulus, spectral_norm
 from levelstride.stability.march_search import MarchSearch
@@ -176,7 +176,8 @@ class ColumnVerdict:
             self.search.kappas[air] = sorted({*kappas, *sampled})
         bracket = found.bracket if found.waves_bind else None
         low = (found.step_s or self.largest_s) if bracket is None else bracket.low
-        certificate = settle(self.search.problems(), low, tolerance, bracket)
+        keeps = self._keeps(tolerance)
+        certificate = settle(self.search.problems(), low, tolerance, bracket, keeps)
         if certificate.refuted:
             low = certificate.low
             step = low if found.courant is None else min(low, found.courant.step_s)
@@ -230,10 +231,14 @@ class ColumnVerdict:
     def _keeper(self, worst: WaveProblem, tolerance: Tolerance) -> Callable[[float], bool]:
         """Return what tells whether a step keeps every wave stable, the worst asked first."""
         others = sorted(self.search.problems(), key=lambda problem: problem is not worst)
+        keeps = self._keeps(tolerance)
+        return lambda dt: keeps([worst], dt) and keeps(others[1:], dt)
+
+    def _keeps(self, tolerance: Tolerance) -> Keeps:
+        """Return what tells whether a step keeps some waves stable."""
         if self.marches:
-            march = MarchSearch(self.search, tolerance)
-            return lambda dt: march.keeps([worst], dt) and march.keeps(others[1:], dt)
-        return lambda dt: all(problem.stable(dt, tolerance) for problem in others)
+            return MarchSearch(self.search, tolerance).keeps
+        return lambda problems, dt: all(problem.stable(dt, tolerance) for problem in problems)
 
     def explicit_rate(self) -> float:
         """Largest |eigenvalue| of the partner pairs with an explicit member [1/s]."""

@@ -22,6 +22,7 @@ def advise(
     splits: Sequence[str] | None = None,
     executor: Executor | None = None,
     current: CurrentConfiguration | None = None,
+    certify: bool = False,
     kept: Kept | None = None,
     progress: Progress | None = None,
 ) -> Advice:
@@ -38,6 +39,8 @@ def advise(
         times, which are taken in this process.
     current : CurrentConfiguration, optional
         A step in use today, to be judged as well.
+    certify : bool
+        Whether to certify every limit at every sampled wave.
     kept : Kept, optional
         Where finished pairs are kept as they end and found again, for instance
         ``levelstride.results.kept.KeptItems(folder)``.
@@ -72,7 +75,7 @@ def advise(
     >>> row.steps_per_interval[0] * row.advised_step_s
     60.0
     """
-    plan = plan_advice(column, tableaux, splits, current)
+    plan = plan_advice(column, tableaux, splits, current, certify=certify)
     return advise_plan(plan, executor=executor, kept=kept, progress=progress)
 
 

@@ -33,7 +33,9 @@ class Kept(Protocol):
         """Keep plain data."""
 
 
-def limit_key(column: Column, tableau: Tableau, splitting: Splitting) -> str:
+def limit_key(
+    column: Column, tableau: Tableau, splitting: Splitting, *, certify: bool = False
+) -> str:
     """Make the key of a limit: column, coefficients, treatment of every term, tolerances, version.
 
     Parameters
@@ -44,6 +46,8 @@ def limit_key(column: Column, tableau: Tableau, splitting: Splitting) -> str:
         The time scheme; its coefficients and name matter.
     splitting : Splitting
         The splitting.
+    certify : bool
+        Whether it is certified at every sampled wave, which is another answer.
 
     Returns
     -------
@@ -59,6 +63,7 @@ def limit_key(column: Column, tableau: Tableau, splitting: Splitting) -> str:
             "tableau": [tableau.name, tableau.kind, asdict(tableau.coefficient_text)],
             "splitting": [splitting.name, dict(splitting.treatment)],
             "settings": {name: getattr(column.advice, name) for name in _OF_THE_LIMIT},
+            "certify": certify,
         }
     )
 

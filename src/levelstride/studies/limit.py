@@ -23,6 +23,7 @@ from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import WaveProblem
 from levelstride.stepper.imex import Stepper
+from levelstride.studies.certified import in_words, record
 from levelstride.studies.methods import tableau_of
 from levelstride.tableaux.lookup import find, names
 from levelstride.tableaux.tableau import Tableau
@@ -45,6 +46,7 @@ def limit(
     split: str | Mapping[str, str] | None = None,
     efolding_s: float | None = None,
     lowest_slope_gradient: LowestSlopeGradient | None = None,
+    certify: bool = False,
 ) -> Limit:
     """Find the stable step of one tableau and splitting on a column.
 
@@ -60,6 +62,9 @@ def limit(
         Tolerated e-folding time [s]; by default the column's own.
     lowest_slope_gradient : {"half", "full"}, optional
         By default the column's own.
+    certify : bool
+        Whether to ask every sampled wave about both sides of the limit, and to find it again below
+        where one refutes it. Steps for other tolerances and the strict step are not certified.
 
     Returns
     -------
@@ -90,7 +95,12 @@ def limit(
     method = tableau_of(column, tableau)
     tolerance = Tolerance(efolding_s or column.advice.efolding_s, column.advice.transient_limit)
     verdict = ColumnVerdict(column, splitting, method)
-    found = verdict.stable_step(tolerance)
+    found, certificate = verdict.stable_step(tolerance), None
+    if certify:
+        found, certificate = verdict.certified_step(found, tolerance)
+    certified = _certified(found, tolerance, verdict)
+    if certificate is not None:
+        certified = f"{in_words(certificate, tolerance)}; found by {certified}"
     return Limit(
         tableau=method.name,
         split=splitting.name,
@@ -103,7 +113,7 @@ def limit(
         explicit_share=_explicit_share(verdict, found),
         gain=_gain(column, splitting, method, tolerance, found),
         bites=_bites(column, found, tolerance),
-        certified=_certified(found, tolerance, verdict),
+        certified=certified,
         efolding_s=tolerance.efolding_s,
         growth_per_step=float(np.expm1(found.step_s * tolerance.rate)) if found.step_s else None,
         air=_binding_air(found),
@@ -116,6 +126,7 @@ def limit(
         couples_columns={"horizontal-pressure-gradient", "horizontal-divergence"}
         <= verdict.splitting.implicit,
         wind_note=None if column.wind_given else NO_WIND,
+        certificate=None if certificate is None else record(certificate),
     )
 
 

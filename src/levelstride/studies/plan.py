@@ -67,12 +67,15 @@ class Plan:
         One per pair, in their order, and one more if the current step is of none of them.
     current : CurrentConfiguration or None
         A step to be judged as well.
+    certify : bool
+        Whether limits are certified at every sampled wave.
     """
 
     column: Column
     pairs: tuple[tuple[Tableau, Splitting], ...]
     items: tuple[PlannedItem, ...]
     current: CurrentConfiguration | None
+    certify: bool = False
 
 
 def plan_advice(
@@ -80,6 +83,8 @@ def plan_advice(
     tableaux: Sequence[str] | None = None,
     splits: Sequence[str] | None = None,
     current: CurrentConfiguration | None = None,
+    *,
+    certify: bool = False,
 ) -> Plan:
     """Find out what is to be done for an advice.
 
@@ -91,6 +96,8 @@ def plan_advice(
         Names; those of the column file by default.
     current : CurrentConfiguration, optional
         A step in use today, to be judged as well.
+    certify : bool
+        Whether to certify limits at every sampled wave.
 
     Returns
     -------
@@ -111,16 +118,16 @@ def plan_advice(
     packed = pickle.dumps(column)
     items = []
     for tableau, splitting in wanted:
-        item = WorkItem(packed, tableau.name, splitting.name)
+        item = WorkItem(packed, tableau.name, splitting.name, certify=certify)
         if current is not None and judged is not None and _names(judged) == (
             tableau.name, splitting.name,
         ):  # fmt: skip
             split = current.split if tableau.kind == "additive" else splitting.name
             item = replace(item, split=split, current_s=current.step_s)
-        of_limit = limit_key(column, tableau, splitting)
+        of_limit = limit_key(column, tableau, splitting, certify=certify)
         key = finding_key(of_limit, column, item.current_s)
         items.append(PlannedItem(item, f"{tableau.name} with {splitting.name}", key, of_limit))
-    return Plan(column, tuple(pairs), tuple(items), current)
+    return Plan(column, tuple(pairs), tuple(items), current, certify)
 
 
 def _judged_pair(

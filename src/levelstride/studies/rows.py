@@ -21,6 +21,9 @@ CERTIFIED = (
     "every row on both sides of its limit, by dense eigenvalues or energy norms of powers of R at "
     "the binding wave, or by the symbols of frozen rows; see each row"
 )
+EVERY_WAVE = (
+    "every row at every sampled wave, on both sides of its limit where one binds; see each row"
+)
 
 
 def answer(plan: Plan, findings: Sequence[Finding]) -> Advice:
@@ -53,7 +56,7 @@ def answer(plan: Plan, findings: Sequence[Finding]) -> Advice:
         current=None if plan.current is None else _judge(plan.current, findings),
         wind_note=wind_note(column),
         caution=CAUTION,
-        provenance=provenance(column, f"{CERTIFIED}; {SCAN}"),
+        provenance=provenance(column, f"{EVERY_WAVE if plan.certify else CERTIFIED}; {SCAN}"),
     )
 
 

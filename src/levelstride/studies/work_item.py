@@ -41,6 +41,8 @@ class WorkItem:
         A step to judge besides [s].
     limit : Limit or None
         The limit, if it is known already.
+    certify : bool
+        Whether the limit is certified at every sampled wave.
     """
 
     column: bytes
@@ -48,6 +50,7 @@ class WorkItem:
     split: str | Mapping[str, str]
     current_s: float | None = None
     limit: Limit | None = None
+    certify: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,7 +106,12 @@ def carry_out(item: WorkItem) -> Finding:
 
 def _find_limit(item: WorkItem, columns: tuple[Column, ...]) -> Limit:
     try:
-        return smaller([limit(c, tableau=item.tableau, split=item.split) for c in columns])
+        return smaller(
+            [
+                limit(column, tableau=item.tableau, split=item.split, certify=item.certify)
+                for column in columns
+            ]
+        )
     except CalculationError as error:
         return _no_limit(item, str(error))
 
