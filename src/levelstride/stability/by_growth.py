@@ -6,6 +6,7 @@ from collections.abc import Callable
 
 import numpy as np
 
+from levelstride.stability.shift_invert import ShiftInvert
 from levelstride.stability.step_limit import (
     BISECTION,
     SCAN_RATIO,
@@ -23,8 +24,11 @@ EDGE = 0.1
 """Share of a bracket by which a secant keeps away from its ends."""
 
 
-Excess = Callable[[float], float]
-"""Logarithm of growth over what is tolerated at a step; -inf without growth."""
+Excess = Callable[[float, float], float]
+"""Logarithm of growth over what is tolerated, of growth [1/s] and step [s]; -inf without growth."""
+
+FOLLOWED_FROM = 250
+"""Unknowns from which following an eigenvalue is cheaper than finding all of them."""
 
 
 def first_failure(problem: WaveProblem, high: float, tolerance: Tolerance) -> Bracket:
@@ -46,19 +50,51 @@ def first_failure(problem: WaveProblem, high: float, tolerance: Tolerance) -> Br
         If no step is stable, however short.
     """
     rate = problem.rate(tolerance)
-    found = bracket(problem, high, lambda dt: _log_share(problem.growth(dt), rate))
-    if problem.stable(found.low, tolerance):
+    if problem.growth(high) <= rate:
+        return _by_all_criteria(problem, high, tolerance)
+    found = _bracket(problem, high, lambda growth, _: _log_share(growth, rate))
+    if problem.size > FOLLOWED_FROM or problem.stable(found.low, tolerance):
         return found
     return _by_all_criteria(problem, found.low, tolerance)
 
 
 def strict_failure(problem: WaveProblem, high: float) -> Bracket:
     """Find the strict limit of one wave below a step that fails; see ``first_failure``."""
-    return bracket(problem, high, lambda dt: _log_share(problem.growth(dt) * dt, LOG_STRICT))
+    return _bracket(problem, high, lambda growth, dt: _log_share(growth * dt, LOG_STRICT))
 
 
-def bracket(problem: WaveProblem, high: float, excess: Excess) -> Bracket:
-    """Bracket the step at which growth passes what is tolerated, from above."""
+def _bracket(problem: WaveProblem, high: float, excess: Excess) -> Bracket:
+    """Bracket the step at which growth passes what is tolerated, from above.
+
+    With many unknowns the eigenvalue that grows fastest at first is followed, at a fraction of the
+    cost, and full matrices are asked about the end.
+    """
+    if problem.size > FOLLOWED_FROM:
+        followed = _Followed(problem, high)
+        found = _close_in(problem, high, lambda dt: excess(followed.growth(dt), dt))
+        if excess(problem.growth(found.low), found.low) <= 0:
+            return found
+        high = found.low
+    return _close_in(problem, high, lambda dt: excess(problem.growth(dt), dt))
+
+
+class _Followed:
+    """The growth of one eigenvalue of R from step to step, by inverse iteration in the stages."""
+
+    def __init__(self, problem: WaveProblem, dt: float) -> None:
+        self._problem = problem
+        inverse = ShiftInvert(problem.parts, problem.tableau, dt)
+        start = np.random.default_rng(problem.size).standard_normal(problem.size)
+        vector = inverse.solve_at(problem.dominant(dt)).matvec(start.astype(complex))
+        self._pair = inverse.refine(inverse.pair(vector))
+
+    def growth(self, dt: float) -> float:
+        inverse = ShiftInvert(self._problem.parts, self._problem.tableau, dt)
+        self._pair = inverse.refine(inverse.pair(self._pair.vector))
+        return float(np.log(abs(self._pair.value)) / dt)
+
+
+def _close_in(problem: WaveProblem, high: float, excess: Callable[[float], float]) -> Bracket:
     low, below = high, excess(high)
     above = below
     while below > 0:

@@ -13,7 +13,7 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 
 from levelstride.stability.by_growth import first_failure
-from levelstride.stability.march import CLOSE, EFOLDINGS, GLANCE, March, Seen
+from levelstride.stability.march import CLOSE, EFOLDINGS, GLANCE, QUIET, March, Seen
 from levelstride.stability.step_limit import (
     BISECTION,
     NEAR_MINIMUM,
@@ -118,29 +118,41 @@ class MarchSearch:
     def _fails(
         self, problems: Sequence[WaveProblem], dt: float, enough: int = GLANCE
     ) -> list[WaveProblem]:
-        """Waves that a step does not keep stable; of those that only full matrices tell, one."""
+        """Waves that a march refutes; what it leaves open is asked about and noted at once."""
         looks = self._march.look(problems, dt, enough)
         failing = [p for p, look in zip(problems, looks, strict=True) if look.seen is Seen.GROWS]
         if failing:
             return failing
         unclear = [(look.rate, i) for i, look in enumerate(looks) if look.seen is Seen.UNCLEAR]
-        for _, i in sorted(unclear, reverse=True):
-            if not problems[i].stable(dt, self._tolerance):
-                return [problems[i]]
+        for rate, i in sorted(unclear, reverse=True):
+            self._ask(problems[i], dt, powers=rate <= QUIET * self._tolerance.rate)
         return []
 
-    def _grows_slowly(self, problems: Sequence[WaveProblem], dt: float) -> WaveProblem | None:
-        """A wave whose growth is too slow for a glance, told by full matrices; the worst of them.
+    def _ask(self, problem: WaveProblem, dt: float, *, powers: bool = False) -> None:
+        """Ask full matrices about a wave where its answer may matter, and note what they say.
 
-        All waves are asked about where full matrices cost little; elsewhere those that a march as
-        long as needed leaves unclear or, where that takes too many steps, those whose frozen layers
-        grow, the fastest first, until one is found.
+        About its growth, and about the norms of its powers too if these may be what is too large.
+        """
+        if dt > self._smallest():
+            return
+        powers = powers or problem.size <= CERTAIN_UNKNOWNS
+        grows = problem.growth(dt) > problem.rate(self._tolerance)
+        if grows or (powers and not problem.stable(dt, self._tolerance)):
+            self._note(first_failure(problem, dt, self._tolerance))
+
+    def _ask_about_slow_growth(self, problems: Sequence[WaveProblem], dt: float) -> None:
+        """Ask full matrices about waves whose growth may be too slow for a glance.
+
+        About all waves where full matrices cost little; elsewhere about those that a march as long
+        as needed leaves unclear or, where that takes too many steps, those whose frozen layers
+        grow: the fastest first, and no more once one is found.
         """
         tolerance = self._tolerance
         if problems[0].size <= CERTAIN_UNKNOWNS:
             slow = [problem for problem in problems if not problem.stable(dt, tolerance)]
-            worst = sorted(slow, key=lambda problem: problem.growth(dt))
-            return worst[-1] if worst else None
+            for problem in sorted(slow, key=lambda problem: -problem.growth(dt)):
+                self._ask(problem, dt)
+            return
         if EFOLDINGS * tolerance.efolding_s / dt <= MOST_STEPS:
             rates = [
                 -np.inf if look.seen is Seen.QUIET else look.rate
@@ -151,11 +163,8 @@ class MarchSearch:
             rates = [float(problem.local_screen.growth(steps_s)[0]) for problem in problems]
         order: list[int] = np.argsort(rates)[::-1].tolist()
         for i in order:
-            if rates[i] < DOUBTFUL * tolerance.rate:
-                return None
-            if problems[i].growth(dt) > problems[i].rate(tolerance):
-                return problems[i]
-        return None
+            if rates[i] >= DOUBTFUL * tolerance.rate:
+                self._ask(problems[i], dt)
 
     # -- the scan ------------------------------------------------------------------------------
 
@@ -167,22 +176,15 @@ class MarchSearch:
         for high in self._looks(problems, turn):
             if high < first:
                 continue
-            failing = self._fails(problems, high)
-            failing = failing or self._fails_by_layers(problems, high)
-            if failing:
+            if high > self._cap():
+                return
+            if failing := self._fails(problems, high):
                 self._close_in(failing, low, high)
                 return
             low = high
-
-    def _fails_by_layers(self, problems: Sequence[WaveProblem], dt: float) -> list[WaveProblem]:
-        """Ask full matrices about waves whose frozen layers grow at this step."""
-        return [
-            problem
-            for problem in problems
-            if "suspects" in vars(problem)
-            and dt in problem.suspects
-            and not problem.stable(dt, self._tolerance)
-        ]
+            for problem in problems:
+                if "suspects" in vars(problem) and high in problem.suspects:
+                    self._ask(problem, high)
 
     def _looks(self, problems: Sequence[WaveProblem], turn: float) -> list[float]:
         fastest = max(problem.facts.largest_eigenvalue for problem in problems)
@@ -296,18 +298,8 @@ class MarchSearch:
         waiting = [problem for problem in problems if id(problem) not in self._limits]
         cap = self._cap()
         for group in _groups(waiting):
-            for problem in self._all_failing(group, cap):
+            for problem in self._fails(group, cap):
                 self._close_in([problem], cap / NEAR_MINIMUM, cap)
-
-    def _all_failing(self, problems: Sequence[WaveProblem], dt: float) -> list[WaveProblem]:
-        """All waves that a step does not keep stable, those told by dense matrices included."""
-        found: list[WaveProblem] = []
-        while waiting := [problem for problem in problems if problem not in found]:
-            failing = self._fails(waiting, dt)
-            if not failing:
-                return found
-            found += failing
-        return found
 
     def _try_waves(self, air: int, kappas: list[float]) -> None:
         self._waves.kappas[air] = sorted({*self._waves.kappas[air], *kappas})
@@ -345,9 +337,8 @@ class MarchSearch:
         step = self._smallest() / SLOW_STRIDE
         while step > first:
             for group in _groups(problems):
-                if worst := self._grows_slowly(group, step):
-                    self._note(first_failure(worst, step, self._tolerance))
-                    step = min(step, self._smallest())
+                self._ask_about_slow_growth(group, step)
+            step = min(step, self._smallest())
             step /= SLOW_STRIDE
 
     def _recheck(self) -> None:
@@ -357,8 +348,8 @@ class MarchSearch:
             step = self.best.low
             if failing := self._fails(group, step):
                 self._close_in(failing, 0.0, step)
-            elif worst := self._grows_slowly(group, step):
-                self._note(first_failure(worst, step, self._tolerance))
+            else:
+                self._ask_about_slow_growth(group, step)
 
     def _judge(self) -> None:
         """Ask full matrices about the binding wave on the stable side of its limit."""
@@ -366,6 +357,8 @@ class MarchSearch:
         problem, low = self.best.problem, self.best.low
         if problem.size > DENSE_UNKNOWNS or not self._asks_judge:
             return
+        if problem.growth_is_known(low) and problem.size > CERTAIN_UNKNOWNS:
+            return  # told already, and the powers of a step that marches quietly are small
         if not problem.stable(low, self._tolerance):
             self._note(first_failure(problem, low, self._tolerance))
 

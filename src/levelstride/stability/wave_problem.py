@@ -19,7 +19,7 @@ from levelstride.operator.terms import CATALOGUE, assemble
 from levelstride.operator.wave import Wave
 from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
-from levelstride.stability.amplification import growth_rate, step_matrix
+from levelstride.stability.amplification import step_matrix
 from levelstride.stability.extremes import is_skew, only_damps
 from levelstride.stability.local import LocalScreen
 from levelstride.stability.own_growth import ROUND_OFF, OperatorFacts
@@ -141,7 +141,7 @@ class WaveProblem:
             splitting, self.wave_terms.terms, self.wave_terms.on_reference, layout_of(column)
         )
         self._norms: dict[float, PowerNorms | None] = {}
-        self._growth: dict[float, float] = {}
+        self._dominant: dict[float, complex] = {}
         self._stable: dict[tuple[float, Tolerance], bool] = {}
         self._peaks: dict[tuple[float, Tolerance], bool] = {}
 
@@ -223,12 +223,22 @@ class WaveProblem:
 
     def growth(self, dt: float) -> float:
         """Growth rate by dense eigenvalues [1/s]; inf where a stage has no solution."""
-        if dt not in self._growth:
+        radius = abs(self.dominant(dt))
+        return float(np.log(radius) / dt) if radius > 0 else -np.inf
+
+    def dominant(self, dt: float) -> complex:
+        """Eigenvalue of R of largest modulus; inf where a stage has no solution."""
+        if dt not in self._dominant:
             try:
-                self._growth[dt] = growth_rate(self.matrix(dt), dt)
+                eigenvalues = np.linalg.eigvals(self.matrix(dt))
+                self._dominant[dt] = complex(eigenvalues[np.argmax(np.abs(eigenvalues))])
             except CalculationError:
-                self._growth[dt] = np.inf
-        return self._growth[dt]
+                self._dominant[dt] = complex(np.inf)
+        return self._dominant[dt]
+
+    def growth_is_known(self, dt: float) -> bool:
+        """Whether dense eigenvalues have been asked at this step."""
+        return dt in self._dominant
 
     def stable(self, dt: float, tolerance: Tolerance) -> bool:
         """Whether the step keeps both the spectrum and the transient criterion.
