@@ -99,9 +99,10 @@ def beside_the_plain_search() -> list[Row]:
             for kappa in sampled_wavenumbers(column.horizontal)[-WAVES:]
         ]
         explicit_s = tableau.imaginary_axis_limit / verdict.explicit_rate()
-        plain_seconds, plain = timed(lambda: min(plain_limit(p, explicit_s) for p in problems))
+        start = time.perf_counter()
+        plain = min(plain_limit(problem, explicit_s) for problem in problems)
+        plain_seconds = time.perf_counter() - start
         assert isinstance(step, float)
-        assert isinstance(plain, float)
         found.append(
             {
                 "figure": "search beside dense search",

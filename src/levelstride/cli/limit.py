@@ -46,8 +46,16 @@ def limit(
     if efolding is not None and not 0.0 < efolding < 1e12:
         raise InputError(f"--efolding {efolding:g}: must be a time above 0 [s]")
     prepare_kernels()
-    with progress(f"{read.title}: {tableau} with {split or 'its [split]'}"):
-        found = find_limit(read, tableau=tableau, split=split, efolding_s=efolding, certify=certify)
+    what = f"{tableau} with {split or 'its [split]'}"
+    with progress(f"{read.title}: {what}") as report:
+        found = find_limit(
+            read,
+            tableau=tableau,
+            split=split,
+            efolding_s=efolding,
+            certify=certify,
+            progress=lambda done, total, on: report(done, total, f"{what}, {on}"),
+        )
     if json:
         sys.stdout.write(to_json(found))
     else:

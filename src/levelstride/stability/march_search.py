@@ -22,8 +22,10 @@ from levelstride.stability.step_limit import (
     SMALLEST_FIRST_STEP,
     Bracket,
     StepSearch,
+    Watch,
     between,
     no_step,
+    silent,
 )
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem
@@ -72,9 +74,19 @@ class MarchSearch:
     tolerance : Tolerance
     judge : bool
         Whether full matrices are asked about the binding wave in the end.
+    watch : callable
+        Told what is being looked at.
     """
 
-    def __init__(self, waves: StepSearch, tolerance: Tolerance, *, judge: bool = True) -> None:
+    def __init__(
+        self,
+        waves: StepSearch,
+        tolerance: Tolerance,
+        *,
+        judge: bool = True,
+        watch: Watch = silent,
+    ) -> None:
+        self._watch = watch
         self._waves, self._tolerance = waves, tolerance
         self._march = March(tolerance)
         self._limits: dict[int, float] = {}
@@ -178,6 +190,7 @@ class MarchSearch:
                 continue
             if high > self._cap():
                 return
+            self._watch(f"waves {len(problems)}, step {high:.3g} s")
             if failing := self._fails(problems, high):
                 self._close_in(failing, low, high)
                 return
@@ -249,6 +262,7 @@ class MarchSearch:
         """Refine the waves, look closely below the limit, ask every wave again, judge."""
         while self.best is not None:
             before = self.best
+            self._watch(f"waves around the worst one, near {before.low:.3g} s")
             if refine:
                 for air in range(self._waves.nair):
                     self._add_longer(air)

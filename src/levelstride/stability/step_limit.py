@@ -12,6 +12,12 @@ from levelstride.stability.wave_problem import FEW_UNKNOWNS, WaveProblem
 
 Criterion = Callable[[WaveProblem, float], bool]
 Maker = Callable[[int, float], WaveProblem]
+Watch = Callable[[str], None]
+
+
+def silent(_: str) -> None:
+    """Tell nobody what is being looked at."""
+
 
 SCAN_RATIO = 1.05
 BISECTION = 1.001
@@ -86,7 +92,9 @@ class StepSearch:
         every = [self.problem(air, k) for air in range(self.nair) for k in self.kappas[air]]
         return sorted(every, key=lambda problem: -problem.slow_rate)
 
-    def run(self, holds: Criterion, *, refine: bool = True) -> Bracket | None:
+    def run(
+        self, holds: Criterion, *, refine: bool = True, watch: Watch = silent
+    ) -> Bracket | None:
         """Find the limit.
 
         Parameters
@@ -95,6 +103,8 @@ class StepSearch:
             Whether a wave keeps the criterion at a step.
         refine : bool
             Whether to add wavenumbers around the worst ones.
+        watch : callable
+            Told what is being looked at.
 
         Returns
         -------
@@ -106,7 +116,7 @@ class StepSearch:
         CalculationError
             If it fails at every step, however short.
         """
-        pass_ = _Pass(self, holds, NEAR_MINIMUM if refine else 1.0)
+        pass_ = _Pass(self, holds, NEAR_MINIMUM if refine else 1.0, watch)
         pass_.cover(self.problems())
         if pass_.best is None:
             return None
@@ -185,7 +195,8 @@ def no_step(kappa: float) -> CalculationError:
 class _Pass:
     """One criterion carried over the waves; keeps the smallest limit found."""
 
-    def __init__(self, search: StepSearch, holds: Criterion, reach: float) -> None:
+    def __init__(self, search: StepSearch, holds: Criterion, reach: float, watch: Watch) -> None:
+        self._watch = watch
         self._largest_s, self._holds, self._reach = search.largest_s, holds, reach
         self.best: Bracket | None = None
         self._limits: dict[int, float] = {}
@@ -207,7 +218,9 @@ class _Pass:
 
     def cover(self, problems: Iterable[WaveProblem]) -> None:
         """Scan waves up to a little beyond the smallest limit known."""
-        for problem in problems:
+        waiting = list(problems)
+        for i, problem in enumerate(waiting):
+            self._watch(f"wave {i + 1} of {len(waiting)}")
             cap = self._largest_s
             if self.best is not None:
                 cap = min(cap, self._reach * self.best.low)

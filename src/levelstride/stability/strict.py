@@ -1,7 +1,8 @@
 """The strict step of large columns: no radius beyond one but for round-off.
 
-Growth of 1e-8 a step shows in no march. The frozen layers, whose radii are exact, say which waves
-lose it first; full matrices are asked about these, and about the wave that binds the stable step.
+Growth of 1e-8 a step shows in no march. The frozen layers, whose radii are exact, say where below
+the stable step waves may lose it; full matrices are asked there, and about every wave at the
+answer.
 """
 
 from __future__ import annotations
@@ -12,9 +13,6 @@ from levelstride.stability.by_growth import strict_failure
 from levelstride.stability.step_limit import SCAN_RATIO, Bracket, StepSearch
 from levelstride.stability.tolerance import LOG_STRICT
 from levelstride.stability.wave_problem import WaveProblem
-
-ASKED = 3
-"""Waves asked about beside the binding one."""
 
 STRIDE = 12
 """Steps of the scan from one look at frozen layers to the next."""
@@ -45,17 +43,13 @@ def strict_step(waves: StepSearch, found: Bracket | None) -> float | None:
     """
     problems = waves.problems()
     highest = waves.largest_s if found is None else found.low
-    losing = {id(p): _first_loss(p, highest) for p in problems}
-    asked = sorted(problems, key=lambda p: losing[id(p)])[:ASKED]
-    if found is not None and found.problem not in asked:
-        asked.insert(0, found.problem)
+    losing = {id(problem): _first_loss(problem, highest) for problem in problems}
     best = np.inf if found is None else found.low
-    for problem in asked:
-        step = min(best, losing[id(problem)], highest)
-        if problem.growth(step) * step > LOG_STRICT:
-            best = min(best, strict_failure(problem, step).low)
-        elif step < min(best, highest) and problem.growth(highest) * highest > LOG_STRICT:
-            best = min(best, strict_failure(problem, highest).low)
+    for problem in sorted(problems, key=lambda problem: losing[id(problem)]):
+        for step in (losing[id(problem)], min(best, highest)):
+            if step <= min(best, highest) and problem.growth(step) * step > LOG_STRICT:
+                best = min(best, strict_failure(problem, step).low)
+                break
     return float(best) if np.isfinite(best) else None
 
 

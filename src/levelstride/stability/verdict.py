@@ -7,14 +7,15 @@ from dataclasses import dataclass, replace
 
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
+from levelstride.operator.setting import layout_of
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.certificate import Certificate, Keeps, settle
 from levelstride.stability.courant import CourantLimit, courant_limit
 from levelstride.stability.extremes import is_skew, largest_modulus, spectral_norm
-from levelstride.stability.march_search import MarchSearch
+from levelstride.stability.march_search import CERTAIN_UNKNOWNS, MarchSearch
 from levelstride.stability.own_growth import ROUND_OFF
 from levelstride.stability.spectrum import sampled_wavenumbers
-from levelstride.stability.step_limit import SCAN_RATIO, Bracket, StepSearch
+from levelstride.stability.step_limit import SCAN_RATIO, Bracket, StepSearch, Watch, silent
 from levelstride.stability.strict import strict_step
 from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
 from levelstride.stability.wave_problem import FEW_UNKNOWNS, WaveProblem
@@ -96,6 +97,8 @@ class ColumnVerdict:
             splitting = splitting.without_implicit()
         self.column, self.splitting, self.tableau = column, splitting, tableau
         self.largest_s = largest_s
+        # full matrices are asked at every step looked at only where unknowns are few
+        self.marches = layout_of(column).size > FEW_UNKNOWNS
         self._problems: dict[tuple[int, float], WaveProblem] = {}
         kappas = [float(kappa) for kappa in sampled_wavenumbers(column.horizontal)]
         self.search = StepSearch(self.problem, len(column.airs), kappas, largest_s)
@@ -109,13 +112,13 @@ class ColumnVerdict:
             )
         return self._problems[key]
 
-    @property
-    def marches(self) -> bool:
-        """Whether waves are marched, unknowns being too many to ask full matrices at every step."""
-        return self.problem(0, self.search.kappas[0][0]).size > FEW_UNKNOWNS
-
     def stable_step(
-        self, tolerance: Tolerance, *, refine: bool = True, known_s: float = 0.0
+        self,
+        tolerance: Tolerance,
+        *,
+        refine: bool = True,
+        known_s: float = 0.0,
+        watch: Watch = silent,
     ) -> StableStep:
         """Longest step that keeps all three criteria.
 
@@ -126,6 +129,8 @@ class ColumnVerdict:
             Whether to add wavenumbers around the worst ones.
         known_s : float
             A step up to which all is known to be stable, from a stricter tolerance [s].
+        watch : callable
+            Told what is being looked at.
 
         Raises
         ------
@@ -138,10 +143,11 @@ class ColumnVerdict:
             largest = min(largest, SAME * courant.step_s)
         self.search.largest_s = largest
         if self.marches:
-            bracket = MarchSearch(self.search, tolerance).run(refine=refine, known_s=known_s)
+            marching = MarchSearch(self.search, tolerance, watch=watch)
+            bracket = marching.run(refine=refine, known_s=known_s)
         else:
             bracket = self.search.run(
-                lambda problem, dt: problem.stable(dt, tolerance), refine=refine
+                lambda problem, dt: problem.stable(dt, tolerance), refine=refine, watch=watch
             )
         steps = [limit.step_s for limit in [courant] if limit is not None]
         steps += [found.low for found in [bracket] if found is not None]
@@ -201,7 +207,7 @@ class ColumnVerdict:
             return None
         self.search.largest_s = self.largest_s
         try:
-            if self.marches:
+            if layout_of(self.column).size > CERTAIN_UNKNOWNS:
                 return strict_step(self.search, found.bracket)
             bracket = self.search.run(lambda problem, dt: problem.strict(dt), refine=False)
         except CalculationError:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import replace
 from functools import lru_cache
 
@@ -17,8 +17,9 @@ from levelstride.stability.amplification import explicit_polynomial
 from levelstride.stability.bites import anatomy, critical_state
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.courant import CourantLimit
+from levelstride.stability.march_search import CERTAIN_UNKNOWNS
 from levelstride.stability.own_growth import cause_of_growth
-from levelstride.stability.step_limit import SCAN_RATIO, Bracket
+from levelstride.stability.step_limit import SCAN_RATIO, Bracket, Watch
 from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import WaveProblem
@@ -28,6 +29,8 @@ from levelstride.studies.methods import tableau_of
 from levelstride.tableaux.lookup import find, names
 from levelstride.tableaux.tableau import Tableau
 
+Progress = Callable[[int, int, str], None]
+
 NO_WIND = "no wind was given, the limit is for air at rest"
 DEFAULT_SPLIT = "sound"
 SCAN = (
@@ -36,6 +39,11 @@ SCAN = (
     "narrower windows of instability can be missed"
 )
 """How the steps of a scan were chosen, for the reader of an answer."""
+
+MARCHED = "waves that do not bind were marched, which growth below about 1e-4 a step can escape"
+
+PARTS = 5 + len(STANDARD_EFOLDINGS_S)
+"""Parts of the work that are told to whoever watches."""
 
 
 @on_one_thread
@@ -47,6 +55,7 @@ def limit(
     efolding_s: float | None = None,
     lowest_slope_gradient: LowestSlopeGradient | None = None,
     certify: bool = False,
+    progress: Progress | None = None,
 ) -> Limit:
     """Find the stable step of one tableau and splitting on a column.
 
@@ -62,6 +71,8 @@ def limit(
         Tolerated e-folding time [s]; by default the column's own.
     lowest_slope_gradient : {"half", "full"}, optional
         By default the column's own.
+    progress : callable, optional
+        Told how many parts of the work are done, of how many, and what is being worked on.
     certify : bool
         Whether to ask every sampled wave about both sides of the limit, and to find it again below
         where one refutes it. Steps for other tolerances and the strict step are not certified.
@@ -95,9 +106,19 @@ def limit(
     method = tableau_of(column, tableau)
     tolerance = Tolerance(efolding_s or column.advice.efolding_s, column.advice.transient_limit)
     verdict = ColumnVerdict(column, splitting, method)
-    found, certificate = verdict.stable_step(tolerance), None
+    parts = _Parts(progress, PARTS + certify)
+    found, certificate = verdict.stable_step(tolerance, watch=parts.begin("stable step")), None
     if certify:
+        parts.begin("both sides of the limit at every wave")
         found, certificate = verdict.certified_step(found, tolerance)
+    parts.begin("strict step")
+    strict = verdict.strict_step(found)
+    by_efolding = _by_efolding(verdict, tolerance, found, parts)
+    parts.begin("step of all-explicit")
+    gain = _gain(column, splitting, method, tolerance, found)
+    parts.begin("windows beyond the limit")
+    windows = verdict.windows(found, tolerance)
+    parts.begin("what bites")
     certified = _certified(found, tolerance, verdict)
     if certificate is not None:
         certified = f"{in_words(certificate, tolerance)}; found by {certified}"
@@ -107,11 +128,11 @@ def limit(
         stable_step_s=found.step_s,
         unbounded=found.step_s is None,
         scanned_to_s=verdict.largest_s,
-        strict_step_s=verdict.strict_step(found),
-        stable_step_by_efolding=_by_efolding(verdict, tolerance, found),
+        strict_step_s=strict,
+        stable_step_by_efolding=by_efolding,
         criterion=_criterion(found, tolerance),
         explicit_share=_explicit_share(verdict, found),
-        gain=_gain(column, splitting, method, tolerance, found),
+        gain=gain,
         bites=_bites(column, found, tolerance),
         certified=certified,
         efolding_s=tolerance.efolding_s,
@@ -119,9 +140,7 @@ def limit(
         air=_binding_air(found),
         lowest_slope_gradient=column.lowest_slope_gradient if np.any(column.slope_f) else None,
         own_growth=_own_growth(verdict),
-        windows=tuple(
-            Window(from_s=low, to_s=high) for low, high in verdict.windows(found, tolerance)
-        ),
+        windows=tuple(Window(from_s=low, to_s=high) for low, high in windows),
         path=_path(verdict),
         couples_columns={"horizontal-pressure-gradient", "horizontal-divergence"}
         <= verdict.splitting.implicit,
@@ -130,17 +149,37 @@ def limit(
     )
 
 
+class _Parts:
+    """Counts the parts of the work for whoever watches."""
+
+    def __init__(self, progress: Progress | None, total: int) -> None:
+        self._progress, self._total, self._done = progress, total, -1
+
+    def begin(self, what: str) -> Watch:
+        """Say that a part begins; what is returned tells more of it."""
+        self._done += 1
+
+        def more(detail: str) -> None:
+            if self._progress is not None:
+                named = f"{what}: {detail}" if detail else what
+                self._progress(self._done, self._total, named)
+
+        more("")
+        return more
+
+
 def _by_efolding(
-    verdict: ColumnVerdict, tolerance: Tolerance, found: StableStep
+    verdict: ColumnVerdict, tolerance: Tolerance, found: StableStep, parts: _Parts
 ) -> tuple[StepAtTolerance, ...]:
     steps = []
     for efolding_s in STANDARD_EFOLDINGS_S:
         step = found.step_s
+        watch = parts.begin(f"step that e-folds in {number(efolding_s)} s")
         if efolding_s != tolerance.efolding_s:
             looser = replace(tolerance, efolding_s=efolding_s)
             longest = found.step_s or verdict.largest_s
             known_s = longest if efolding_s < tolerance.efolding_s else 0.0
-            step = verdict.stable_step(looser, refine=False, known_s=known_s).step_s
+            step = verdict.stable_step(looser, refine=False, known_s=known_s, watch=watch).step_s
         steps.append(StepAtTolerance(efolding_s=efolding_s, stable_step_s=step))
     return tuple(steps)
 
@@ -256,19 +295,22 @@ def _row_bites(column: Column, courant: CourantLimit) -> Bites:
 
 
 def _certified(found: StableStep, tolerance: Tolerance, verdict: ColumnVerdict) -> str:
+    size = verdict.search.problems()[0].size
+    scan = f"{SCAN}; {MARCHED}" if size > CERTAIN_UNKNOWNS else SCAN
     if found.step_s is None:
-        return f"power norms at every sampled wave up to {number(verdict.largest_s)} s; {SCAN}"
+        means = "marches" if verdict.marches else "power norms"
+        return f"{means} of every sampled wave up to {number(verdict.largest_s)} s; {scan}"
     if not found.waves_bind or found.bracket is None:
-        return f"symbols of every frozen row on both sides of the limit; {SCAN}"
+        return f"symbols of every frozen row on both sides of the limit; {scan}"
     low, high, problem = found.bracket.low, found.bracket.high, found.bracket.problem
     rate, wave = problem.rate(tolerance), f"at wavenumber {problem.kappa:.4g} 1/m"
     below, above = problem.growth(low), problem.growth(high)
     if below <= rate < above:
         return (
             f"dense eigenvalues {wave}: growth {below:.3g} 1/s at {low:.6g} s, {above:.3g} 1/s at "
-            f"{high:.6g} s, {rate:.3g} 1/s tolerated; {SCAN}"
+            f"{high:.6g} s, {rate:.3g} 1/s tolerated; {scan}"
         )
-    return f"energy norms of powers of R {wave}, at {low:.6g} s and {high:.6g} s; {SCAN}"
+    return f"energy norms of powers of R {wave}, at {low:.6g} s and {high:.6g} s; {scan}"
 
 
 def _own_growth(verdict: ColumnVerdict) -> tuple[OwnGrowth, ...]:
