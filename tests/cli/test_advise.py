@@ -125,6 +125,7 @@ class TestLimit:
         asked = {}
 
         def limit(column, **options):
+            options.pop("progress")(1, 8, "strict step")
             asked.update(options)
             if options["split"] == "all-implicit":
                 return records.unbounded()

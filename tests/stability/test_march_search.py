@@ -108,18 +108,24 @@ def agrees_with_the_plain_search(seed):
         assert found.low == pytest.approx(plain, rel=AGREES), f"{tableau.name}, {splitting.name}"
 
 
-@pytest.mark.parametrize("seed", range(200))
+@pytest.mark.parametrize("seed", range(60))
 def test_never_stable_where_full_matrices_say_unstable(seed):
     never_above_full_matrices(seed)
 
 
-@pytest.mark.parametrize("seed", range(1000, 1008))
+@pytest.mark.slow
+@pytest.mark.parametrize("seed", range(60, 400))
+def test_never_stable_where_full_matrices_say_unstable_many_times(seed):
+    never_above_full_matrices(seed)
+
+
+@pytest.mark.parametrize("seed", range(1000, 1006))
 def test_as_the_plain_search(seed):
     agrees_with_the_plain_search(seed)
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("seed", range(1008, 1300))
+@pytest.mark.parametrize("seed", range(1006, 1300))
 def test_as_the_plain_search_many_times(seed):
     agrees_with_the_plain_search(seed)
 

@@ -272,3 +272,28 @@ def test_a_refuted_limit_is_replaced_and_named(monkeypatch, found):
     (refuted,) = mended.certificate.refuted
     assert refuted.step_s == 1.2 * found.stable_step_s
     assert f"{refuted.step_s:.6g} s, found first, is refuted by the wave" in mended.certified
+
+
+def test_whoever_watches_is_told_what_is_worked_on():
+    told = []
+    column = build(
+        {
+            "levels": {"kind": "uniform", "layers": 3, "top_m": 6000.0},
+            "air": {"kind": "isothermal", "temperature_k": 250.0},
+            "horizontal": {"grid_spacing_m": 2000.0},
+        }
+    )
+    limit(
+        column,
+        tableau="ARS(2,3,2)",
+        split="sound+buoyancy",
+        certify=True,
+        progress=lambda done, total, on: told.append((done, total, on)),
+    )
+    done = [part for part, _, _ in told]
+    assert done == sorted(done)
+    assert {total for _, total, _ in told} == {9}
+    assert set(done) == set(range(9))
+    assert told[0][2] == "stable step"
+    assert any(on.startswith("stable step: wave ") for _, _, on in told)
+    assert told[-1][2] == "what bites"
