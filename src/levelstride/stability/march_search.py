@@ -42,6 +42,9 @@ SHORT, NOT_SMALL = 0.3, 0.15
 CERTAIN_UNKNOWNS = 250
 """Up to so many unknowns full matrices are asked about every wave at the answer."""
 
+LADDER_UNKNOWNS = 120
+"""Up to so many unknowns they are asked about every wave at steps below the answer too."""
+
 DENSE_UNKNOWNS = 1300
 """Up to so many unknowns full matrices judge the answer at the binding wave."""
 
@@ -53,6 +56,9 @@ SLOW_STRIDE = 1.8
 
 MOST_STEPS = 20000
 """Longest march that costs less than full matrices do."""
+
+NEARBY = 1.5
+"""How far below a limit that is known roughly, as a factor, the scan begins."""
 
 FILL = 2.0
 """How far below the limit, as a factor, the binding wave is looked at closely."""
@@ -74,6 +80,9 @@ class MarchSearch:
     tolerance : Tolerance
     judge : bool
         Whether full matrices are asked about the binding wave in the end.
+    near_s : float or None
+        A step near which the limit is known to lie, from a column that hardly differs: what is far
+        below it is not scanned, and waves that do not bind are marched alone [s].
     watch : callable
         Told what is being looked at.
     """
@@ -84,6 +93,7 @@ class MarchSearch:
         tolerance: Tolerance,
         *,
         judge: bool = True,
+        near_s: float | None = None,
         watch: Watch = silent,
     ) -> None:
         self._watch = watch
@@ -92,7 +102,7 @@ class MarchSearch:
         self._limits: dict[int, float] = {}
         self._filled: dict[int, float] = {}
         self._largest_s = waves.largest_s
-        self._known_s, self._asks_judge = 0.0, judge
+        self._known_s, self._asks_judge, self._near_s = 0.0, judge, near_s
         self.best: Bracket | None = None
 
     def run(self, *, refine: bool = True, known_s: float = 0.0) -> Bracket | None:
@@ -115,6 +125,8 @@ class MarchSearch:
         CalculationError
             If no step is stable, however short.
         """
+        if self._near_s is not None:
+            known_s = max(known_s, self._near_s / NEARBY)
         self._known_s = known_s
         problems = self._waves.problems()
         groups = -(-len(problems) // TOGETHER)
@@ -152,6 +164,10 @@ class MarchSearch:
         if grows or (powers and not problem.stable(dt, self._tolerance)):
             self._note(first_failure(problem, dt, self._tolerance))
 
+    def _certain(self, dt: float) -> int:
+        """Unknowns up to which full matrices are asked about every wave at this step."""
+        return CERTAIN_UNKNOWNS if dt == self._smallest() else LADDER_UNKNOWNS
+
     def _ask_about_slow_growth(self, problems: Sequence[WaveProblem], dt: float) -> None:
         """Ask full matrices about waves whose growth may be too slow for a glance.
 
@@ -160,7 +176,9 @@ class MarchSearch:
         grow: the fastest first, and no more once one is found.
         """
         tolerance = self._tolerance
-        if problems[0].size <= CERTAIN_UNKNOWNS:
+        if self._near_s is not None:
+            return
+        if problems[0].size <= self._certain(dt):
             slow = [problem for problem in problems if not problem.stable(dt, tolerance)]
             for problem in sorted(slow, key=lambda problem: -problem.growth(dt)):
                 self._ask(problem, dt)
@@ -205,8 +223,10 @@ class MarchSearch:
         short = SHORT / fastest if fastest else self._largest_s
         small = NOT_SMALL / slow if slow else np.inf
         cap = self._cap()
-        asked = problems[:: max(1, len(problems) // ASKED)]
+        asked = problems[:: max(1, len(problems) // ASKED)] if self._near_s is None else ()
         looks = [float(dt) for problem in asked for dt in problem.suspects if dt < cap]
+        if self._known_s > 0:
+            looks.append(self._known_s)
         step = short * SCAN_RATIO ** (turn * STRIDE)
         while step < cap:
             looks.append(step)
@@ -329,7 +349,8 @@ class MarchSearch:
         assert self.best is not None
         limit, problem = self.best.low, self.best.problem
         step, low = limit / FILL, 0.0
-        if self._filled.get(id(problem), np.inf) < limit * SCAN_RATIO:
+        filled = self._filled.get(id(problem), np.inf) < limit * SCAN_RATIO
+        if filled or self._near_s is not None:
             return
         self._filled[id(problem)] = limit
         near = sorted(self._waves.problems(), key=lambda p: abs(np.log(p.kappa / problem.kappa)))

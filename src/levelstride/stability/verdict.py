@@ -118,6 +118,7 @@ class ColumnVerdict:
         *,
         refine: bool = True,
         known_s: float = 0.0,
+        near_s: float | None = None,
         watch: Watch = silent,
     ) -> StableStep:
         """Longest step that keeps all three criteria.
@@ -129,6 +130,9 @@ class ColumnVerdict:
             Whether to add wavenumbers around the worst ones.
         known_s : float
             A step up to which all is known to be stable, from a stricter tolerance [s].
+        near_s : float or None
+            A step near which the limit is known to lie, from a column that hardly differs: a
+            shorter search, to be borne out by a whole one where it is an answer [s].
         watch : callable
             Told what is being looked at.
 
@@ -143,7 +147,7 @@ class ColumnVerdict:
             largest = min(largest, SAME * courant.step_s)
         self.search.largest_s = largest
         if self.marches:
-            marching = MarchSearch(self.search, tolerance, watch=watch)
+            marching = MarchSearch(self.search, tolerance, near_s=near_s, watch=watch)
             bracket = marching.run(refine=refine, known_s=known_s)
         else:
             bracket = self.search.run(
