@@ -32,6 +32,9 @@ FIRST_STEPS = 8
 GLANCE, CLOSE = 1000, 8000
 """Steps after which a quiet wave counts as stable in a scan, and at a limit."""
 
+MOST_STEPS = 20000
+"""Steps after which full matrices tell growth that is still unclear at less cost."""
+
 EFOLDINGS = 3.0
 """Tolerated e-folding times after which growth at the tolerated rate shows against all else."""
 
@@ -138,6 +141,8 @@ class _Course:
     def run(self, enough: int | None) -> list[Look]:
         found: list[Look | None] = [None] * len(self._problems)
         last = int(np.ceil(EFOLDINGS * self._tolerance.efolding_s / self._dt))
+        if enough is not None:
+            last = min(last, MOST_STEPS)
         enough = last if enough is None else min(enough, last)
         while True:
             rates = self._go_on(max(self._steps, FIRST_STEPS))

@@ -13,7 +13,7 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 
 from levelstride.stability.by_growth import first_failure
-from levelstride.stability.march import CLOSE, EFOLDINGS, GLANCE, QUIET, March, Seen
+from levelstride.stability.march import CLOSE, EFOLDINGS, GLANCE, MOST_STEPS, QUIET, March, Seen
 from levelstride.stability.step_limit import (
     BISECTION,
     NEAR_MINIMUM,
@@ -53,9 +53,6 @@ DOUBTFUL = 0.5
 
 SLOW_STRIDE = 1.8
 """Factor between steps that are asked about slow growth."""
-
-MOST_STEPS = 20000
-"""Longest march that costs less than full matrices do."""
 
 NEARBY = 1.5
 """How far below a limit that is known roughly, as a factor, the scan begins."""
@@ -262,7 +259,10 @@ class MarchSearch:
     def _bisect(
         self, failing: Sequence[WaveProblem], low: float, high: float, enough: int
     ) -> tuple[Sequence[WaveProblem], float, float]:
+        before = self._smallest()
         while high / low > BISECTION:
+            if low >= self._smallest() < before:
+                break  # slow growth was found below: nothing here matters any more
             middle = float(np.sqrt(low * high))
             still = self._fails(failing, middle, enough)
             if still:
