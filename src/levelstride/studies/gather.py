@@ -1,21 +1,19 @@
 """Have work items done by whoever does them, and keep what is found as it is found."""
 
 from collections.abc import Callable, Iterator, Sequence
-from concurrent.futures import BrokenExecutor, Executor, Future
+from concurrent.futures import Executor
 from dataclasses import replace
-from queue import SimpleQueue
-from typing import Final, TypeAlias
+from typing import TypeAlias
 
-from levelstride.errors import CalculationError
 from levelstride.studies.keys import Kept, find_finding, find_limit, keep_finding
 from levelstride.studies.plan import PlannedItem
+from levelstride.studies.share_out import share_out
 from levelstride.studies.work_item import Finding, WorkItem, carry_out
+
+Answer = TypeVar("Answer")
 
 Progress: TypeAlias = Callable[[int, int, str], None]
 """Told how many items are done, of how many, and what is being worked on."""
-
-AHEAD: Final = 2000
-"""Number of items handed to an executor before the first of them has ended, at most."""
 
 
 def gather(
@@ -59,7 +57,8 @@ def gather(
 
     tell()
     yield from known.items()
-    for place, found in _carried_out({i: _item(items[i], kept) for i in left}, executor):
+    wanted = {i: _item(items[i], kept) for i in left}
+    for place, found in share_out(carry_out, wanted, executor):
         if kept is not None and isinstance(found, Finding):
             keep_finding(kept, found, items[place].key, items[place].of_limit)
         del left[place]
@@ -80,40 +79,3 @@ def _known(items: Sequence[PlannedItem], kept: Kept) -> dict[int, Finding]:
 def _item(planned: PlannedItem, kept: Kept | None) -> WorkItem:
     limit = None if kept is None else find_limit(kept, planned.of_limit)
     return planned.item if limit is None else replace(planned.item, limit=limit)
-
-
-def _carried_out(
-    items: dict[int, WorkItem], executor: Executor | None
-) -> Iterator[tuple[int, Finding | Exception]]:
-    if executor is None:
-        for place, item in items.items():
-            try:
-                found: Finding | Exception = carry_out(item)
-            except Exception as error:
-                found = error
-            yield place, found
-        return
-    ended: SimpleQueue[Future[Finding]] = SimpleQueue()
-    begun: dict[Future[Finding], int] = {}
-    for place, item in items.items():
-        future = executor.submit(carry_out, item)
-        begun[future] = place
-        future.add_done_callback(ended.put)
-        while not ended.empty() or len(begun) >= AHEAD:
-            future = ended.get()
-            yield begun.pop(future), _outcome(future)
-    while begun:
-        future = ended.get()
-        yield begun.pop(future), _outcome(future)
-
-
-def _outcome(future: "Future[Finding]") -> Finding | Exception:
-    try:
-        return future.result()
-    except BrokenExecutor as error:
-        return CalculationError(
-            f"a worker ended before its work was done ({error}); if memory is short, "
-            "use fewer workers"
-        )
-    except Exception as error:
-        return error

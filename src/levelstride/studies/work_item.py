@@ -86,12 +86,12 @@ def carry_out(item: WorkItem) -> Finding:
     Finding
         The same in whatever process it is found.
     """
-    columns = _columns(item.column)
+    columns = unpacked(item.column)
     splitting = resolve(item.split)
     tableau = tableau_of(columns[0], item.tableau)
     asked = columns[0].advice
     found = item.limit or _find_limit(item, columns)
-    checker = _Checker(columns, splitting, tableau)
+    checker = StepChecker(columns, splitting, tableau)
     choice = choose_step(
         found, safety=asked.safety, intervals_s=asked.divides_s, check=checker.examine
     )
@@ -103,7 +103,9 @@ def carry_out(item: WorkItem) -> Finding:
 
 def _find_limit(item: WorkItem, columns: tuple[Column, ...]) -> Limit:
     try:
-        return smaller([limit(c, tableau=item.tableau, split=item.split) for c in columns])
+        return smaller(
+            [limit(c, tableau=item.tableau, split=item.split, what_if=False) for c in columns]
+        )
     except CalculationError as error:
         return _no_limit(item, str(error))
 
@@ -132,7 +134,7 @@ def _no_limit(item: WorkItem, reason: str) -> Limit:
 
 
 @lru_cache(maxsize=4)
-def _columns(packed: bytes) -> tuple[Column, ...]:
+def unpacked(packed: bytes) -> tuple[Column, ...]:
     """Unpack a column; over a slope, once for each treatment of the lowest slope gradient."""
     column: Column = pickle.loads(packed)
     if not np.any(column.slope_f):
@@ -147,7 +149,7 @@ def _resolved(column: Column) -> tuple[ResolvedWaves, ...]:
     return tuple(w for air in column.airs for w in resolved_waves(column, air, waves))
 
 
-class _Checker:
+class StepChecker:
     """Examines steps of one tableau and splitting at every sampled wave."""
 
     def __init__(self, columns: tuple[Column, ...], splitting: Splitting, tableau: Tableau) -> None:
