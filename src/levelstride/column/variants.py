@@ -74,4 +74,5 @@ def with_levels(column: Column, interfaces_m: Array) -> Column:
     3
     """
     made = levels_definition(column.definition, interfaces_m)
+    made["terrain"]["lowest_slope_gradient"] = column.lowest_slope_gradient
     return build(made, source=column.source)

@@ -268,10 +268,11 @@ def above_the_lowest(interfaces_m: Array, lid_m: float, lowest: int) -> Array:
         raise NoMemberError(f"the lowest layers reach to {base:g} m")
 
     def thickness(power: float) -> Array:
-        return below * _grown(0.0, _raised(log_ratios, power))[1:]
+        made: Array = below * _grown(0.0, _raised(log_ratios, power))[1:]
+        return made
 
-    made = thickness(_root(lambda power: np.log(thickness(power).sum() / room)))
-    heights = np.concatenate([interfaces_m[: lowest + 1], base + np.cumsum(made)])
+    above = thickness(_root(lambda power: np.log(thickness(power).sum() / room)))
+    heights = np.concatenate([interfaces_m[: lowest + 1], base + np.cumsum(above)])
     heights[-1] = lid_m
     return heights
 

@@ -47,10 +47,12 @@ def share_out(
         future.add_done_callback(ended.put)
         while not ended.empty() or len(begun) >= AHEAD:
             future = ended.get()
-            yield begun.pop(future), _outcome(future)
+            found = outcome(future)
+            yield begun.pop(future), found
     while begun:
         future = ended.get()
-        yield begun.pop(future), _outcome(future)
+        found = outcome(future)
+        yield begun.pop(future), found
 
 
 def _done(work: Callable[[Item], Found], item: Item) -> Found | Exception:
@@ -60,7 +62,8 @@ def _done(work: Callable[[Item], Found], item: Item) -> Found | Exception:
         return error
 
 
-def _outcome(future: "Future[Found]") -> Found | Exception:
+def outcome(future: "Future[Found]") -> Found | Exception:
+    """Wait for what was found, or for what went wrong."""
     try:
         return future.result()
     except BrokenExecutor as error:
