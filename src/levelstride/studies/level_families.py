@@ -28,20 +28,25 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Final
+from typing import Final, TypeAlias
 
 import numpy as np
-from scipy.optimize import brentq
 
 from levelstride.column.arrays import Array
 from levelstride.column.level_sets import THINNEST
 from levelstride.errors import InputError
+from levelstride.studies.stretched_levels import (
+    MOST_TIMES,
+    NoMemberError,
+    above_the_lowest,
+    below_the_upper,
+    largest_ratio,
+    with_one_power,
+    with_same_ratio,
+)
 
 KEEPS: Final = ("layers-and-lid", "ratio", "lowest-layers", "upper-levels")
 """What a family may keep; the first is the default."""
-
-LEAST_GROWTH: Final = float(np.log(1.01))
-"""Logarithm of the thickness ratio below which ratios change by the factor of this one."""
 
 LARGEST_RATIO: Final = 3.0
 """Thickness ratio of neighbouring layers beyond which no family goes [1]."""
@@ -52,18 +57,14 @@ THINNEST_SHARE: Final = 0.05
 THINNEST_M: Final = 1.0
 """... this one [m], whichever is thinner."""
 
-MOST_TIMES: Final = 2.0
-"""Layers and lid are at most this multiple of the user's own, and the lid at least 1/this."""
-
 SAME: Final = 1e-12
 """Relative difference of coordinates below which the user's own set is meant."""
 
-STEEPEST: Final = 1e4
-"""Power or correction of ratios beyond which none is looked for."""
+CLOSE: Final = 1e-3
+"""Relative width to which the end of a family is found, where it ends early."""
 
 
-class NoMemberError(ValueError):
-    """There is no such member; the message says why."""
+Fits: TypeAlias = Callable[[Array], bool]
 
 
 @dataclass(frozen=True, eq=False)
@@ -149,13 +150,15 @@ class Family:
             raise NoMemberError(f"a layer would be thinner than {THINNEST:g} m")
         return heights
 
-    def coordinates(self, points: int) -> tuple[float, ...]:
+    def coordinates(self, points: int, fits: Fits = lambda _: True) -> tuple[float, ...]:
         """Spread members from the least to the most stretched one.
 
         Parameters
         ----------
         points : int
             How many, at least 3.
+        fits : callable
+            Whether a set suits whatever it is used for.
 
         Returns
         -------
@@ -163,7 +166,7 @@ class Family:
             Coordinates in geometric sequence on either side of the user's own set, which is among
             them: lowest layers from thick to thin, or lids from low to high [m].
         """
-        first, last = self._ends()
+        first, last = (self._reach(end, fits) for end in self.ends)
         reach = abs(np.log(last / first))
         if reach < SAME:
             return (self.own,)
@@ -174,231 +177,32 @@ class Family:
         thinner = np.geomspace(self.own, last, points - before)[1:]
         return tuple(float(x) for x in (*coarser, self.own, *thinner))
 
-    def _ends(self) -> tuple[float, float]:
-        """Coordinates of the coarsest and of the most stretched member."""
+    @property
+    def ends(self) -> tuple[float, float]:
+        """Coordinates between which members are wanted, of the least stretched one first [m]."""
         if self.by_lid:
-            return self._reach(self.own / MOST_TIMES), self._reach(self.own * MOST_TIMES)
+            return self.own / MOST_TIMES, self.own * MOST_TIMES
         layers = self.lowest if self.keep == "upper-levels" else self.interfaces_m.size - 1
         equal = float(self.interfaces_m[layers]) / layers
-        thinnest = min(THINNEST_M, THINNEST_SHARE * self.own)
-        return self._reach(max(self.own, equal)), self._reach(thinnest)
+        return max(self.own, equal), min(THINNEST_M, THINNEST_SHARE * self.own)
 
-    def _reach(self, wanted: float) -> float:
+    def _reach(self, wanted: float, fits: Fits) -> float:
         """The coordinate wanted or, if it has no sound member, the last one on the way there."""
-        if self._sound(wanted):
+        if self._sound(wanted, fits):
             return wanted
         inside, outside = self.own, wanted
-        while abs(np.log(outside / inside)) > 1e-3:
+        while abs(np.log(outside / inside)) > CLOSE:
             middle = float(np.sqrt(inside * outside))
-            if self._sound(middle):
+            if self._sound(middle, fits):
                 inside = middle
             else:
                 outside = middle
         return inside
 
-    def _sound(self, coordinate: float) -> bool:
+    def _sound(self, coordinate: float, fits: Fits) -> bool:
         try:
             heights = self.at(coordinate)
         except NoMemberError:
             return False
         most = max(LARGEST_RATIO, largest_ratio(self.interfaces_m))
-        return largest_ratio(heights) <= most * (1.0 + SAME)
-
-
-def largest_ratio(interfaces_m: Array) -> float:
-    """Largest ratio of the thicknesses of neighbouring layers, thicker over thinner [1]."""
-    thickness = np.diff(interfaces_m)
-    ratios = thickness[1:] / thickness[:-1]
-    return float(np.maximum(ratios, 1.0 / ratios).max())
-
-
-def with_one_power(interfaces_m: Array, lowest_m: float) -> Array:
-    """Raise all ratios to the power with which layers from ``lowest_m`` on end at the same lid.
-
-    Parameters
-    ----------
-    interfaces_m : (nlev+1,) array
-        A set [m].
-    lowest_m : float
-        Its new lowest layer [m].
-
-    Returns
-    -------
-    (nlev+1,) array
-        Interfaces [m].
-
-    Raises
-    ------
-    NoMemberError
-        If no power does.
-    """
-    log_ratios, top = _log_ratios(interfaces_m), float(interfaces_m[-1])
-
-    def thickness(power: float) -> Array:
-        return lowest_m * _grown(0.0, _raised(log_ratios, power))
-
-    return _stacked(thickness(_root(lambda power: np.log(thickness(power).sum() / top))), top)
-
-
-def above_the_lowest(interfaces_m: Array, lid_m: float, lowest: int) -> Array:
-    """Keep the lowest layers and raise the ratios above to the power that leads to a lid.
-
-    Parameters
-    ----------
-    interfaces_m : (nlev+1,) array
-        A set [m].
-    lid_m : float
-        Its new lid [m].
-    lowest : int
-        How many layers are kept.
-
-    Returns
-    -------
-    (nlev+1,) array
-        Interfaces [m].
-
-    Raises
-    ------
-    NoMemberError
-        If no power does.
-    """
-    base, below = float(interfaces_m[lowest]), np.diff(interfaces_m)[lowest - 1]
-    log_ratios, room = _log_ratios(interfaces_m)[lowest - 1 :], lid_m - base
-    if room <= 0.0:
-        raise NoMemberError(f"the lowest layers reach to {base:g} m")
-
-    def thickness(power: float) -> Array:
-        made: Array = below * _grown(0.0, _raised(log_ratios, power))[1:]
-        return made
-
-    above = thickness(_root(lambda power: np.log(thickness(power).sum() / room)))
-    heights = np.concatenate([interfaces_m[: lowest + 1], base + np.cumsum(above)])
-    heights[-1] = lid_m
-    return heights
-
-
-def with_same_ratio(interfaces_m: Array, lowest_m: float) -> Array:
-    """Keep the ratio at every height and the lid, and change the number of layers.
-
-    Parameters
-    ----------
-    interfaces_m : (nlev+1,) array
-        A set [m].
-    lowest_m : float
-        Its new lowest layer [m].
-
-    Returns
-    -------
-    (n+1,) array
-        Interfaces [m]; n differs.
-
-    Raises
-    ------
-    NoMemberError
-        If it would take more than twice as many layers.
-    """
-    top, most = float(interfaces_m[-1]), int(MOST_TIMES * (interfaces_m.size - 1))
-    logs = _same_at_height(interfaces_m, lowest_m, top, most)
-    if lowest_m * np.exp(logs).sum() < top:
-        raise NoMemberError(f"it would take more than {most} layers")
-    fits = [fit for n in range(2, logs.size + 1) if (fit := _fitted(logs[:n], lowest_m, top))]
-    if not fits:
-        raise NoMemberError("no number of layers ends at the lid")
-    return _stacked(min(fits, key=lambda fit: abs(fit[0]))[1], top)
-
-
-def below_the_upper(interfaces_m: Array, lowest_m: float, lowest: int) -> Array:
-    """Keep the levels above the lowest layers and make those anew from a thinner one.
-
-    Parameters
-    ----------
-    interfaces_m : (nlev+1,) array
-        A set [m].
-    lowest_m : float
-        Its new lowest layer [m].
-    lowest : int
-        How many layers are made anew.
-
-    Returns
-    -------
-    (n+1,) array
-        Interfaces [m]; n differs.
-
-    Raises
-    ------
-    NoMemberError
-        If no number of layers does.
-    """
-    base, above = float(interfaces_m[lowest]), float(np.diff(interfaces_m)[lowest])
-    most = int(MOST_TIMES * (interfaces_m.size - 1)) - (interfaces_m.size - 1 - lowest)
-    logs = _same_at_height(interfaces_m, lowest_m, base, most)
-    meets = float(_log_ratios(interfaces_m)[lowest - 1])
-    fits = [fit for n in range(2, logs.size + 1) if (fit := _fitted(logs[:n], lowest_m, base))]
-    if not fits:
-        raise NoMemberError("no number of layers meets the levels above")
-    best = min(fits, key=lambda fit: abs(np.log(above / fit[1][-1]) - meets))
-    made: Array = np.concatenate([_stacked(best[1], base), interfaces_m[lowest + 1 :]])
-    return made
-
-
-def _log_ratios(interfaces_m: Array) -> Array:
-    """Logarithms of the thickness ratios, upper over lower, shape (nlev-1,)."""
-    made: Array = np.diff(np.log(np.diff(interfaces_m)))
-    return made
-
-
-def _raised(log_ratios: Array, power: float) -> Array:
-    """Logarithms of ratios raised to a power."""
-    made: Array = log_ratios + (power - 1.0) * np.maximum(log_ratios, LEAST_GROWTH)
-    return made
-
-
-def _grown(first: float, log_ratios: Array) -> Array:
-    """Thicknesses, relative, one more than ratios."""
-    logs = np.concatenate([[first], first + np.cumsum(log_ratios)])
-    made: Array = np.exp(np.clip(logs, -600.0, 600.0))
-    return made
-
-
-def _same_at_height(interfaces_m: Array, lowest_m: float, height_m: float, most: int) -> Array:
-    """Logarithms of relative thicknesses with the set's ratio at every height, well beyond one."""
-    at, log_ratios = interfaces_m[1:-1], _log_ratios(interfaces_m)
-    logs, top = [0.0], lowest_m
-    while top < 2.0 * height_m and len(logs) < most:
-        logs.append(logs[-1] + float(np.interp(top, at, log_ratios)))
-        top += lowest_m * float(np.exp(logs[-1]))
-    return np.array(logs)
-
-
-def _fitted(logs: Array, lowest_m: float, height_m: float) -> tuple[float, Array] | None:
-    """Correct all ratios by one factor so that the layers end at a height; its log, thicknesses."""
-    places = np.arange(logs.size)
-
-    def thickness(correction: float) -> Array:
-        made: Array = lowest_m * np.exp(np.clip(logs + correction * places, -600.0, 600.0))
-        return made
-
-    try:
-        found = _root(lambda correction: np.log(thickness(correction).sum() / height_m))
-    except NoMemberError:
-        return None
-    return found, thickness(found)
-
-
-def _root(gap: Callable[[float], float]) -> float:
-    """Where a rising function is zero."""
-    low, high = -0.5, 0.5
-    while gap(low) > 0.0 and low > -STEEPEST:
-        low *= 2.0
-    while gap(high) < 0.0 and high < STEEPEST:
-        high *= 2.0
-    if gap(low) > 0.0 or gap(high) < 0.0:
-        raise NoMemberError("no stretching of the layers does it")
-    return float(brentq(gap, low, high, xtol=1e-14))
-
-
-def _stacked(thickness: Array, top_m: float) -> Array:
-    """Interfaces from the ground to exactly the top."""
-    heights = np.concatenate([[0.0], np.cumsum(thickness)])
-    heights[-1] = top_m
-    return heights
+        return largest_ratio(heights) <= most * (1.0 + SAME) and fits(heights)
