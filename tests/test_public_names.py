@@ -11,11 +11,13 @@ NAMES = {
     "CurrentConfiguration",
     "InputError",
     "Limit",
+    "Stretch",
     "advise",
     "build",
     "level_report",
     "limit",
     "load",
+    "stretch",
     "write_advice",
 }
 HEAVY = {"numpy", "scipy", "numba", "h5py", "pydantic", "rich", "cyclopts"}

@@ -24,9 +24,11 @@ if TYPE_CHECKING:
     from levelstride.errors import CalculationError, InputError
     from levelstride.results.dataset import Advice, AdviceRow, Limit
     from levelstride.results.files import write_advice
+    from levelstride.results.stretching import Stretch
     from levelstride.studies.advise import advise
     from levelstride.studies.limit import limit
     from levelstride.studies.plan import CurrentConfiguration
+    from levelstride.studies.stretch import stretch
 
 __version__ = "0.1.0"
 
@@ -38,11 +40,13 @@ __all__ = [
     "CurrentConfiguration",
     "InputError",
     "Limit",
+    "Stretch",
     "advise",
     "build",
     "level_report",
     "limit",
     "load",
+    "stretch",
     "write_advice",
 ]
 
@@ -54,11 +58,13 @@ _HOMES = {
     "CurrentConfiguration": "studies.plan",
     "InputError": "errors",
     "Limit": "results.dataset",
+    "Stretch": "results.stretching",
     "advise": "studies.advise",
     "build": "column.read",
     "level_report": "column.level_report",
     "limit": "studies.limit",
     "load": "column.read",
+    "stretch": "studies.stretch",
     "write_advice": "results.files",
 }
 

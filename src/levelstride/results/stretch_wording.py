@@ -6,16 +6,16 @@ from .wording import number, step, wave
 
 
 def thickness(value: float | None) -> str:
-    """Write a height or thickness with three digits, in km from 1000 m on.
+    """Write a height or thickness with four digits, in km from 1000 m on.
 
     Examples
     --------
     >>> thickness(12.3456), thickness(0.5), thickness(20100.0), thickness(None)
-    ('12.3 m', '0.5 m', '20.1 km', '-')
+    ('12.35 m', '0.5 m', '20.1 km', '-')
     """
     if value is None:
         return "-"
-    return f"{number(value, 3)} m" if value < 999.5 else f"{number(value / 1000.0, 3)} km"
+    return f"{number(value)} m" if value < 999.95 else f"{number(value / 1000.0)} km"
 
 
 def span(one: float, other: float) -> str:
@@ -23,8 +23,8 @@ def span(one: float, other: float) -> str:
 
     Examples
     --------
-    >>> span(12.3456, 12.9), span(999.0, 1050.0)
-    ('12.3-12.9 m', '999 m-1.05 km')
+    >>> span(12.9, 12.3456), span(999.0, 1050.0)
+    ('12.35-12.9 m', '999 m-1.05 km')
     """
     low, high = thickness(min(one, other)), thickness(max(one, other))
     if low == high:

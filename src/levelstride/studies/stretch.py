@@ -3,7 +3,7 @@
 import pickle
 from collections.abc import Mapping, Sequence
 from concurrent.futures import Executor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from math import inf
 from typing import Any, Final
 
@@ -16,7 +16,6 @@ from levelstride.column.column import (
     Column,
     LowestSlopeGradient,
 )
-from levelstride.column.read import build
 from levelstride.column.variants import with_levels
 from levelstride.errors import CalculationError, InputError
 from levelstride.results.stretch_wording import thickness
@@ -45,8 +44,6 @@ SHORT_SPLITS: Final = ("sound+buoyancy", "sound+buoyancy+divergence")
 POINTS: Final = 24
 FEWEST_POINTS, MOST_POINTS = 3, 1000
 
-NOTHING_MORE: Final = Wanted()
-
 CERTIFIED: Final = (
     "every point of the curve by its own search for the stable step, the last set that carries the "
     "target and the next one included; between points the curve is not proved"
@@ -64,7 +61,10 @@ def stretch(
     points: int = POINTS,
     efolding_s: float | None = None,
     lowest_slope_gradient: LowestSlopeGradient | None = None,
-    wanted: Wanted = NOTHING_MORE,
+    layers: bool = False,
+    mend: bool = False,
+    keep_lowest: bool = False,
+    largest_ratio: float | None = None,
     executor: Executor | None = None,
     progress: Progress | None = None,
 ) -> Stretch:
@@ -91,8 +91,14 @@ def stretch(
         Tolerated e-folding time [s]; by default the column's own.
     lowest_slope_gradient : {"half", "full"}, optional
         By default the column's own.
-    wanted : Wanted
-        What to find besides: which layers cost the step, a mended level set.
+    layers : bool
+        Whether to find besides which layers of the user's own set cost the step.
+    mend : bool
+        Whether to find besides the nearest level set that carries the target.
+    keep_lowest : bool
+        Whether mending keeps the lowest layer as it is.
+    largest_ratio : float, optional
+        Largest ratio of neighbouring thicknesses that mending allows [1].
     executor : concurrent.futures.Executor, optional
         Who does the work; this process by default. All give the same answer.
     progress : callable, optional
@@ -124,8 +130,10 @@ def stretch(
     >>> found.rows[0].never_bites, 300.0 < found.thinnest_lowest_layer_m < 900.0
     (False, True)
     """
-    asked = _Asked(target_step_s, points, efolding_s or column.advice.efolding_s)
-    column = _with_gradient(column, lowest_slope_gradient)
+    efolding_s = column.advice.efolding_s if efolding_s is None else efolding_s
+    asked = _Asked(target_step_s, points, efolding_s)
+    if lowest_slope_gradient is not None:
+        column = replace(column, lowest_slope_gradient=lowest_slope_gradient)
     pairs = _pairs(column, tableaux, splits)
     family = Family(column.levels.interfaces_m, keep, 0 if lowest is None else lowest)
     coordinates, notes = _members(column, family, asked.points)
@@ -140,6 +148,7 @@ def stretch(
         Draft(tableau, splitting, tuple(one.point for one in found), asked.target(found))
         for (tableau, splitting, _), found in zip(pairs, measured, strict=True)
     ]
+    wanted = Wanted(layers, mend, keep_lowest, largest_ratio)
     extras = work.extras(drafts, column.horizontal.grid_spacing_m, wanted)
     telling = Telling(family, len(column.airs) > 1)
     rows = tuple(map(telling.row, drafts, extras))
@@ -175,14 +184,6 @@ class _Asked:
             return self.target_step_s, "given"
         choice = next(one.choice for one in found if one.choice is not None)
         return choice.step_s, choice.binding
-
-
-def _with_gradient(column: Column, gradient: LowestSlopeGradient | None) -> Column:
-    """The column with a treatment of the lowest slope gradient, in its definition too."""
-    if gradient is None or gradient == column.lowest_slope_gradient:
-        return column
-    terrain = {**column.definition["terrain"], "lowest_slope_gradient": gradient}
-    return build({**column.definition, "terrain": terrain}, source=column.source)
 
 
 def _pairs(

@@ -3,6 +3,8 @@
 from dataclasses import dataclass
 
 from levelstride.results.mending import LayerSensitivity, Mended
+from levelstride.studies.mend import mend
+from levelstride.studies.sensitivity import layer_sensitivity
 from levelstride.studies.stretch_point import StretchItem, unpacked
 
 
@@ -25,8 +27,6 @@ class MendItem:
 
 def layer_costs(item: LayersItem) -> LayerSensitivity:
     """Find which layers of the user's own set cost the step."""
-    from levelstride.studies.sensitivity import layer_sensitivity
-
     of = item.of
     return layer_sensitivity(
         unpacked(of.column), tableau=of.tableau, split=of.split, efolding_s=of.efolding_s
@@ -35,8 +35,6 @@ def layer_costs(item: LayersItem) -> LayerSensitivity:
 
 def mended(item: MendItem) -> Mended:
     """Find the set nearest to the user's own that carries the target."""
-    from levelstride.studies.mend import mend
-
     of = item.of
     return mend(
         unpacked(of.column),

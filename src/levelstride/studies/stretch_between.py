@@ -24,7 +24,7 @@ CROSSED: Final = log(1.05)
 OTHER_WAVE: Final = log(1.5)
 """ln of the ratio of wavelengths from which they count as different: samples lie 1.32 apart."""
 
-LONG: Final = 8.0
+LONG: Final = 7.99
 """Grid spacings from which waves count as long."""
 
 
