@@ -10,7 +10,7 @@ the tolerated growth.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -36,6 +36,9 @@ FINE_ANGLES = 257
 VERTICAL = ("vertical-advection", "vertical-diffusion")
 SCAN_RATIO = 1.05
 BISECTION = 1.0005
+
+NEAR_FASTEST = 0.9
+"""Rows whose largest symbol is at least this share of the largest of all get more angles."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -154,6 +157,47 @@ def courant_limit(
         None if nothing bites up to ``largest_s``.
     """
     found = []
+    for rows, factor in _row_sets(column, air, splitting, tableau):
+        limit = _limit_of(rows, column, factor, rate, largest_s)
+        if limit is not None:
+            found.append(limit)
+    return min(found, key=lambda limit: limit.step_s, default=None)
+
+
+def rows_hold(
+    column: Column,
+    air: Background,
+    splitting: Splitting,
+    tableau: Tableau,
+    rate: float,
+    step_s: float,
+) -> bool:
+    """Whether no frozen row of the explicit one-way terms grows at one step.
+
+    Parameters
+    ----------
+    column, air, splitting, tableau, rate
+        As for ``courant_limit``, which looks at all steps up to its answer.
+    step_s : float
+        The step [s].
+    """
+    for rows, factor in _row_sets(column, air, splitting, tableau):
+        chosen = np.arange(rows.index.size)
+        for angles in (ANGLES, 2 * ANGLES):
+            symbols = rows.symbol(column, chosen, angles)
+            own = np.maximum(symbols.real.max(axis=(1, 2)), 0.0)
+            excess = factor(step_s * symbols).max(axis=(1, 2)) / np.exp(step_s * (rate + own))
+            if excess.max() > 1 + 1e-12:
+                return False
+            fastest = np.abs(symbols).max(axis=(1, 2))
+            chosen = chosen[fastest >= NEAR_FASTEST * fastest.max()]
+    return True
+
+
+def _row_sets(
+    column: Column, air: Background, splitting: Splitting, tableau: Tableau
+) -> Iterator[tuple[_Rows, Factor]]:
+    """Frozen rows of the stages and of the terms after the step, with their amplification."""
     polynomial = explicit_polynomial(tableau)
     factors: dict[str, Factor] = {
         "explicit": lambda z: np.abs(np.polynomial.polynomial.polyval(z, polynomial)),
@@ -162,10 +206,7 @@ def courant_limit(
     for treatment, factor in factors.items():
         rows = _frozen_rows(column, air, splitting, treatment)
         if rows is not None:
-            limit = _limit_of(rows, column, factor, rate, largest_s)
-            if limit is not None:
-                found.append(limit)
-    return min(found, key=lambda limit: limit.step_s, default=None)
+            yield rows, factor
 
 
 def _frozen_rows(
