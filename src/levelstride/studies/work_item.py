@@ -2,14 +2,13 @@
 
 import pickle
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import lru_cache
 from math import inf
 
-import numpy as np
-
 from levelstride.accuracy.wave_errors import ResolvedWaves, StepErrors, resolved_waves
-from levelstride.column.column import Column, LowestSlopeGradient
+from levelstride.column.column import Column
+from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
 from levelstride.operator.wave import Wave
 from levelstride.results.dataset import Limit
@@ -136,11 +135,7 @@ def _no_limit(item: WorkItem, reason: str) -> Limit:
 @lru_cache(maxsize=4)
 def unpacked(packed: bytes) -> tuple[Column, ...]:
     """Unpack a column; over a slope, once for each treatment of the lowest slope gradient."""
-    column: Column = pickle.loads(packed)
-    if not np.any(column.slope_f):
-        return (column,)
-    gradients: tuple[LowestSlopeGradient, ...] = ("half", "full")
-    return tuple(replace(column, lowest_slope_gradient=gradient) for gradient in gradients)
+    return lowest_slope_gradients(pickle.loads(packed))
 
 
 @lru_cache(maxsize=8)
