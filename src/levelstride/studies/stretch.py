@@ -120,14 +120,14 @@ def stretch(
     --------
     >>> import levelstride
     >>> column = levelstride.build({
-    ...     "levels": {"kind": "geometric", "layers": 5, "top_m": 8000.0, "lowest_layer_m": 900.0},
+    ...     "levels": {"kind": "table", "heights_m": [0.0, 2000.0, 4600.0, 8000.0]},
     ...     "air": {"kind": "isothermal", "temperature_k": 250.0},
     ...     "horizontal": {"grid_spacing_m": 1000.0},
     ... })
     >>> found = levelstride.stretch(
-    ...     column, tableaux=["ars232"], splits=["all-explicit"], target_step_s=0.6, points=4
+    ...     column, tableaux=["ars232"], splits=["all-explicit"], target_step_s=1.8, points=4
     ... )
-    >>> found.rows[0].never_bites, 300.0 < found.thinnest_lowest_layer_m < 900.0
+    >>> found.rows[0].never_bites, 600.0 < found.thinnest_lowest_layer_m < 1200.0
     (False, True)
     """
     efolding_s = column.advice.efolding_s if efolding_s is None else efolding_s
