@@ -157,7 +157,10 @@ def _show_layers(found: "LayerSensitivity") -> None:
     """Which layers cost the step."""
     from levelstride.results.wording import number
 
-    say("Which layers cost the step: its change with the thickness of one layer, others as thick.")
+    say(
+        "Which layers cost the step: what it gains for every metre that one layer gets thicker, "
+        "all above moving up."
+    )
     show_table(
         [
             Heading("layer", number=True),

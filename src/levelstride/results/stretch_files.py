@@ -92,8 +92,8 @@ def stretch_text(found: Stretch) -> str:
 
 def _row_lines(row: StretchRow) -> list[tuple[str, str]]:
     lines = [
-        ("scheme", f"{row.tableau} with {row.split} implicit"),
-        ("target", f"{step(row.target_step_s)} s, {row.target_reason}"),
+        ("scheme", f"{row.tableau} with {row.split}"),
+        ("target", f"{step(row.target_step_s)} s ({row.target_reason})"),
         (
             "thinnest",
             f"lowest layer {thickness(row.thinnest_lowest_layer_m)}, largest ratio "

@@ -119,7 +119,7 @@ class StretchRow:
     target_step_s : float or None
         Step to be carried [s]; None if no step can be advised for the user's own set.
     target_reason : str
-        ``given``, or what binds the advised step.
+        ``given``, or that it is the advised step and what binds that.
     own_stable_step_s : float or None
         Stable step of the user's own set [s].
     thinnest_lowest_layer_m : float or None

@@ -49,7 +49,7 @@ KEEPS: Final = ("layers-and-lid", "ratio", "lowest-layers", "upper-levels")
 """What a family may keep; the first is the default."""
 
 LARGEST_RATIO: Final = 3.0
-"""Thickness ratio of neighbouring layers beyond which no family goes [1]."""
+"""Thickness ratio of neighbouring layers beyond which no curve goes, or twice the own one [1]."""
 
 THINNEST_SHARE: Final = 0.05
 """Lowest layer with which a family ends, as a share of the user's own [1]; or ..."""
@@ -178,6 +178,11 @@ class Family:
         return tuple(float(x) for x in (*coarser, self.own, *thinner))
 
     @property
+    def steepest(self) -> float:
+        """Largest ratio of neighbouring thicknesses on a curve [1]."""
+        return max(LARGEST_RATIO, 2.0 * largest_ratio(self.interfaces_m))
+
+    @property
     def ends(self) -> tuple[float, float]:
         """Coordinates between which members are wanted, of the least stretched one first [m]."""
         if self.by_lid:
@@ -204,5 +209,4 @@ class Family:
             heights = self.at(coordinate)
         except NoMemberError:
             return False
-        most = max(LARGEST_RATIO, largest_ratio(self.interfaces_m))
-        return largest_ratio(heights) <= most * (1.0 + SAME) and fits(heights)
+        return largest_ratio(heights) <= self.steepest * (1.0 + SAME) and fits(heights)

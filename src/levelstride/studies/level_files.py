@@ -41,8 +41,9 @@ def level_files(column: Column, found: Stretch) -> dict[str, str]:
 
 
 def _ending(place: int, row: StretchRow) -> str:
-    plain = re.sub(r"[^a-z0-9]+", "-", f"{row.tableau.lower()} {row.split}".replace(",", ""))
-    return f"_{place + 1}_{plain.strip('-')}"
+    tableau = re.sub(r"[^a-z0-9]+", "", row.tableau.lower())
+    split = re.sub(r"[^a-z0-9]+", "-", row.split.lower())
+    return f"_{place + 1}_{tableau}_{split}"
 
 
 def _files(
@@ -50,7 +51,7 @@ def _files(
 ) -> dict[str, str]:
     remark = (
         f"{column.title}: {what}\n"
-        f"It carries {step(row.target_step_s)} s with {row.tableau} and {row.split} implicit.\n"
+        f"It carries {step(row.target_step_s)} s with {row.tableau} and {row.split}.\n"
         "Heights are those above the ground of this column; nothing compresses them further.\n"
         f"{CAUTION}"
     )

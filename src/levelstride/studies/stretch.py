@@ -24,7 +24,6 @@ from levelstride.results.wording import CAUTION
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.studies.gather import Progress
 from levelstride.studies.level_families import KEEPS, Family
-from levelstride.studies.level_families import LARGEST_RATIO as RATIO
 from levelstride.studies.limit import SCAN
 from levelstride.studies.methods import pairs_of
 from levelstride.studies.stretch_point import (
@@ -183,7 +182,7 @@ class _Asked:
         if self.target_step_s is not None:
             return self.target_step_s, "given"
         choice = next(one.choice for one in found if one.choice is not None)
-        return choice.step_s, choice.binding
+        return choice.step_s, f"advised, bound by {choice.binding}"
 
 
 def _pairs(
@@ -219,13 +218,14 @@ def _members(
             return error.problems[0]
         return None
 
+    steep = f"sets beyond it have thickness ratios above {family.steepest:.3g}"
     found = family.coordinates(points, lambda heights: problem(heights) is None)
     notes = []
     for end, wanted in zip((found[0], found[-1]), family.ends, strict=True):
         if abs(wanted / end - 1.0) < 1e-9:
             continue
         try:
-            reason = problem(family.at(wanted)) or f"layers beyond it have ratios above {RATIO:g}"
+            reason = problem(family.at(wanted)) or steep
         except NoMemberError as error:
             reason = str(error)
         what = "lids" if family.by_lid else "lowest layers"
