@@ -10,10 +10,10 @@ from levelstride.errors import CalculationError, InputError
 from levelstride.execution.processes import processes
 from levelstride.execution.serial import serial
 from levelstride.results.export import to_json
-from levelstride.studies import work_item
+from levelstride.studies import best_row, work_item
 from levelstride.studies.advise import CurrentConfiguration, advise
 from levelstride.studies.methods import pairs_of
-from levelstride.studies.rows import best_row
+from levelstride.studies.rows import best_row as best_of
 from levelstride.studies.work_item import WorkItem, carry_out, smaller
 
 TINY = {
@@ -39,7 +39,7 @@ def _limits(monkeypatch):
     """Let every pair have a made-up limit; what is put in here by name wins."""
     limits = {}
 
-    def limit(column, *, tableau, split):
+    def limit(column, *, tableau, split, what_if):
         made_up = records.limit(
             tableau=tableau, split=split, stable_step_s=3.0, lowest_slope_gradient=None
         )
@@ -49,6 +49,7 @@ def _limits(monkeypatch):
         return found(column) if callable(found) else found
 
     monkeypatch.setattr(work_item, "limit", limit)
+    monkeypatch.setattr(best_row, "ask_what_if", lambda column, found, *_: found)
     return limits
 
 
@@ -167,7 +168,9 @@ def test_over_a_slope_both_gradients_are_searched_and_the_smaller_taken(limits):
         looked_at.append(column.lowest_slope_gradient)
         step_s = {"half": 3.0, "full": 2.0}[column.lowest_slope_gradient]
         return records.limit(
-            stable_step_s=step_s, lowest_slope_gradient=column.lowest_slope_gradient
+            stable_step_s=step_s,
+            split="sound",
+            lowest_slope_gradient=column.lowest_slope_gradient,
         )
 
     limits["ARS(2,3,2)", "sound"] = answer
@@ -186,10 +189,10 @@ def test_the_smaller_limit_is_the_one_without_a_step_then_the_shorter():
 
 def test_the_best_row_is_one_whose_solve_stays_in_the_column():
     coupled = records.row(couples_columns=True)
-    assert best_row([records.without_step(), coupled, records.row()]) == 2
-    assert best_row([records.without_step(), coupled]) == 1
-    assert best_row([records.without_step()]) is None
-    assert best_row([]) is None
+    assert best_of([records.without_step(), coupled, records.row()]) == 2
+    assert best_of([records.without_step(), coupled]) == 1
+    assert best_of([records.without_step()]) is None
+    assert best_of([]) is None
 
 
 def test_pairs_are_named_once_and_an_explicit_method_comes_unsplit(column):

@@ -9,7 +9,7 @@ from levelstride.column.read import build
 from levelstride.errors import CalculationError, InputError
 from levelstride.execution.serial import serial
 from levelstride.results.kept import KeptItems
-from levelstride.studies import keys, work_item
+from levelstride.studies import best_row, keys, work_item
 from levelstride.studies.advise import CurrentConfiguration, advise, advise_plans
 from levelstride.studies.gather import count_kept
 from levelstride.studies.plan import plan_advice
@@ -32,13 +32,14 @@ def _searched(monkeypatch):
     """Let every search answer at once; returns which were made."""
     made = []
 
-    def limit(column, *, tableau, split):
+    def limit(column, *, tableau, split, what_if):
         made.append((column.title, tableau, split))
         return records.limit(
             tableau=tableau, split=split, stable_step_s=3.0, lowest_slope_gradient=None
         )
 
     monkeypatch.setattr(work_item, "limit", limit)
+    monkeypatch.setattr(best_row, "ask_what_if", lambda column, found, *_: found)
     return made
 
 
@@ -140,10 +141,10 @@ def test_items_are_kept_the_moment_they_end(tmp_path, monkeypatch, searched):
     kept = KeptItems(tmp_path)
     answer = work_item.limit
 
-    def break_off(column, *, tableau, split):
+    def break_off(column, **asked):
         if len(searched) == 3:
             raise KeyboardInterrupt
-        return answer(column, tableau=tableau, split=split)
+        return answer(column, **asked)
 
     monkeypatch.setattr(work_item, "limit", break_off)
     with serial() as executor, pytest.raises(KeyboardInterrupt):
@@ -162,12 +163,12 @@ def test_progress_begins_with_what_was_kept(tmp_path):
 def test_many_columns_share_the_work_and_one_that_fails_stops_no_other(monkeypatch, searched):
     answer = work_item.limit
 
-    def fail(column, *, tableau, split):
+    def fail(column, **asked):
         if column.title == "bad":
             raise InputError("mend this")
         if column.title == "worse":
             raise RuntimeError("a fault")
-        return answer(column, tableau=tableau, split=split)
+        return answer(column, **asked)
 
     monkeypatch.setattr(work_item, "limit", fail)
     titles = ("one", "bad", "worse", "two")

@@ -4,24 +4,29 @@ import csv
 import io
 import json
 import math
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import fields, is_dataclass
 from typing import Any, Final
 
+from .cause import reason_and_cause
 from .dataset import Advice, AdviceRow
 from .wording import headroom, number, percent, step
 
 _BITES: Final = (
     "wavenumber_per_m", "growth_per_s", "kind", "layer_lowest", "layer_highest", "bottom_m",
-    "top_m", "wavelength_layers", "wavelength_m", "period_s",
+    "top_m", "wavelength_layers", "wavelength_m", "period_s", "shortest_horizontal",
+    "shortest_vertical", "along_diagonal",
 )  # fmt: skip
 _COLUMNS: Final = (
     "tableau", "split", "advised_step_s", "advised_step_fraction", "stable_step_s", "unbounded",
     "scanned_to_s", "strict_step_s", "criterion", "binding", "steps_per_hour", "cost_per_hour",
     "explicit_evaluations_per_hour", "solves_per_hour", "exchanges_per_hour", "measured_s_per_hour",
     "frequency_error", "amplitude_change_per_period", "explicit_share", "gain", "efolding_s",
-    "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns",
+    "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns", "cause",
 )  # fmt: skip
+_NUMBERS: Final = re.compile(r"\[\n\s+(?:(?:[-+.\deE]+|null),\n\s+)*(?:[-+.\deE]+|null)\n\s+\]")
+"""A list of numbers over several lines; text has no line feeds in JSON, so it is never meant."""
 
 
 def to_plain(record: Any) -> Any:
@@ -50,7 +55,7 @@ def to_plain(record: Any) -> Any:
 
 
 def to_json(record: Any) -> str:
-    """Write a record as JSON (RFC 8259), finite numbers only.
+    """Write a record as JSON (RFC 8259), finite numbers only; a list of numbers is one line.
 
     Parameters
     ----------
@@ -64,13 +69,14 @@ def to_json(record: Any) -> str:
 
     Examples
     --------
-    >>> print(to_json({"stable_step_s": 27.5, "strict_step_s": float("nan")}), end="")
+    >>> print(to_json({"stable_step_s": float("nan"), "intervals_s": [600.0, 3600.0]}), end="")
     {
-      "stable_step_s": 27.5,
-      "strict_step_s": null
+      "stable_step_s": null,
+      "intervals_s": [ 600.0, 3600.0 ]
     }
     """
-    return json.dumps(to_plain(record), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    text = json.dumps(to_plain(record), indent=2, ensure_ascii=False, allow_nan=False)
+    return _NUMBERS.sub(lambda found: " ".join(found[0].split()), text) + "\n"
 
 
 def to_csv(advice: Advice) -> str:
@@ -149,7 +155,7 @@ def _best_lines(advice: Advice) -> list[tuple[str, str]]:
         ("step", _step_line(row, advice.intervals_s)),
         ("splitting", f"{row.split} implicit" if row.path != "explicit" else row.split),
         ("tableau", row.tableau),
-        ("reason", row.binding),
+        ("reason", reason_and_cause(row)),
         ("headroom", headroom(row)),
         (
             "accuracy",

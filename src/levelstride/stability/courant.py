@@ -55,6 +55,8 @@ class CourantLimit:
         Layer, or the layer below the interface.
     kappa : float
         Wavenumber along one axis of the worst horizontal angle [1/m].
+    phase : float
+        Vertical angle from layer to layer of the worst symbol, from 0 to pi [rad].
     kind : str
         ``transport`` or ``mixing``, whichever the worst symbol owes more to.
     rate_per_s : float
@@ -65,6 +67,7 @@ class CourantLimit:
     field: str
     layer: int
     kappa: float
+    phase: float
     kind: str
     rate_per_s: float
 
@@ -212,7 +215,7 @@ def _row_sets(
 def _frozen_rows(
     column: Column, air: Background, splitting: Splitting, treatment: str
 ) -> _Rows | None:
-    names = {n for n in splitting.terms(treatment) if CATALOGUE[n].one_way}
+    names = {n for n in splitting.terms(treatment) if CATALOGUE[n].one_way} - column.left_out
     layout = layout_of(column)
     setting = Setting(column, air, Wave(0.0, column.horizontal), layout)
     reach = np.arange(-3, 4)
@@ -294,6 +297,7 @@ def _describe(
         field=_field_of(layout, index),
         layer=int(layout.layer_of[index]),
         kappa=kappa,
+        phase=abs(phi),
         kind="transport" if abs(transport) > abs(mixing) else "mixing",
         rate_per_s=float(growth[row, i, j]),
     )

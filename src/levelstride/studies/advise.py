@@ -6,6 +6,7 @@ from dataclasses import replace
 
 from levelstride.column.column import Column
 from levelstride.results.dataset import Advice
+from levelstride.studies.best_row import BestRows
 from levelstride.studies.gather import Progress, gather
 from levelstride.studies.keys import Kept
 from levelstride.studies.plan import CurrentConfiguration, Plan, plan_advice
@@ -89,7 +90,13 @@ def advise_plan(
         if isinstance(finding, Exception):
             raise finding
         found[place] = finding
-    return answer(plan, [found[i] for i in range(len(plan.items))])
+    advice = answer(plan, [found[i] for i in range(len(plan.items))])
+    best = BestRows(executor, kept)
+    best.begin(0, plan, advice)
+    ((_, completed),) = best.ended(wait=True)
+    if isinstance(completed, Exception):
+        raise completed
+    return completed
 
 
 def advise_plans(
@@ -125,13 +132,20 @@ def advise_plans(
         title = plan.column.title
         items += [replace(planned, what=f"{title}: {planned.what}") for planned in plan.items]
         owner += [(i, k) for k in range(len(plan.items))]
+    best = BestRows(executor, kept)
     open_findings: dict[int, dict[int, Finding | Exception]] = {}
     for place, finding in gather(items, executor, kept, progress):
         i, k = owner[place]
         found = open_findings.setdefault(i, {})
         found[k] = finding
         if len(found) == len(plans[i].items):
-            yield i, _answer_or_error(plans[i], open_findings.pop(i))
+            advice = _answer_or_error(plans[i], open_findings.pop(i))
+            if isinstance(advice, Exception):
+                yield i, advice
+            else:
+                best.begin(i, plans[i], advice)
+        yield from best.ended(wait=False)
+    yield from best.ended(wait=True)
 
 
 def _answer_or_error(plan: Plan, found: dict[int, Finding | Exception]) -> Advice | Exception:

@@ -10,8 +10,6 @@ from levelstride.studies.plan import PlannedItem
 from levelstride.studies.share_out import share_out
 from levelstride.studies.work_item import Finding, WorkItem, carry_out
 
-Answer = TypeVar("Answer")
-
 Progress: TypeAlias = Callable[[int, int, str], None]
 """Told how many items are done, of how many, and what is being worked on."""
 

@@ -84,6 +84,22 @@ def finding_key(limit: str, column: Column, current_s: float | None) -> str:
     return _digest({"of": "finding", "limit": limit, "settings": settings, "current_s": current_s})
 
 
+def closer_key(limit: str) -> str:
+    """Make the key of a closer look at the row with a limit.
+
+    Parameters
+    ----------
+    limit : str
+        Key of the limit.
+
+    Returns
+    -------
+    str
+        Hexadecimal digits.
+    """
+    return _digest({"of": "closer look", "limit": limit})
+
+
 def _digest(of: Mapping[str, Any]) -> str:
     text = json.dumps(to_plain_exact(of), sort_keys=True, separators=(",", ":"))
     return hashlib.sha256(text.encode()).hexdigest()
@@ -91,22 +107,29 @@ def _digest(of: Mapping[str, Any]) -> str:
 
 def find_finding(kept: Kept, key: str) -> Finding | None:
     """Look up a finding; None if there is none that can be read."""
-    return _read(Finding, kept.find(key))
+    return find_record(kept, Finding, key)
 
 
 def find_limit(kept: Kept, key: str) -> Limit | None:
     """Look up a limit; None if there is none that can be read."""
-    return _read(Limit, kept.find(key))
+    return find_record(kept, Limit, key)
 
 
 def keep_finding(kept: Kept, finding: Finding, key: str, of_limit: str) -> None:
     """Keep a finding and, by itself, its limit, which other settings may want again."""
     if kept.find(of_limit) is None:
-        kept.keep(of_limit, to_plain_exact(finding.limit))
-    kept.keep(key, to_plain_exact(finding))
+        keep_record(kept, of_limit, finding.limit)
+    keep_record(kept, key, finding)
 
 
-def _read(kind: type[Record], plain: Any) -> Record | None:
+def keep_record(kept: Kept, key: str, record: Any) -> None:
+    """Keep a record of plain data."""
+    kept.keep(key, to_plain_exact(record))
+
+
+def find_record(kept: Kept, kind: type[Record], key: str) -> Record | None:
+    """Look up a record of this kind; None if there is none that can be read."""
+    plain = kept.find(key)
     if plain is None:
         return None
     try:
