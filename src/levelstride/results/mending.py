@@ -7,9 +7,10 @@ from dataclasses import dataclass
 class LayerCost:
     """How the stable step changes with the thickness of one layer.
 
-    The layer becomes thicker and everything above it moves up by as much, the lid too. Where
-    several states are lost within 0.5 % of the smallest limit, the smallest of their limits counts
-    on either side: the step gains from a thicker layer what the slowest of them gains.
+    The layer becomes thicker and everything above it moves up by as much, the lid too. States that
+    are lost within 0.5 % of the smallest limit count as lost together in the one-sided derivatives:
+    a thicker layer brings what the one of them gains that gains least, a thinner one costs what the
+    one loses that loses most.
 
     Parameters
     ----------
@@ -22,7 +23,8 @@ class LayerCost:
     ratio_to_next : float or None
         Thickness of the layer above over its own [1]; None for the highest.
     step_per_m : float or None
-        Derivative of the stable step with respect to the thickness [s/m]; None if nothing bites.
+        Derivative of the stable step with respect to the thickness, by the state that is lost first
+        alone [s/m]; None if nothing bites.
     log_sensitivity : float or None
         The same of the logarithms, percent of the step per percent of the thickness [1].
     step_per_m_thicker, step_per_m_thinner : float or None

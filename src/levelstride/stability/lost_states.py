@@ -18,7 +18,7 @@ from levelstride.stability.wave_problem import WaveProblem
 CLOSE = 1e-4
 """Relative width to which the limit of a wave is bisected."""
 
-SHARP = 1e-9
+SHARP = 1e-7
 """Relative width to which the limit of a state is bisected by dense eigenvalues."""
 
 SHARP_TRANSIENT = 1e-6

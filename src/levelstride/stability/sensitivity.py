@@ -65,41 +65,46 @@ class Pair:
 
 
 def step_derivatives(
-    state: LostState, column: Column, pairs: Sequence[Pair], tolerance: Tolerance
+    states: Sequence[LostState], column: Column, pairs: Sequence[Pair], tolerance: Tolerance
 ) -> Array:
-    """Derivative of the limit of one state with respect to every changed quantity.
+    """Derivatives of the limits of states with respect to every changed quantity.
 
     Parameters
     ----------
-    state : LostState
+    states : sequence of LostState
     column : Column
-        The column it belongs to.
+        The column they belong to.
     pairs : sequence of Pair
         Small changes of that column.
     tolerance : Tolerance
 
     Returns
     -------
-    ndarray, shape (npair,)
+    ndarray, shape (len(states), npair)
         [s per unit of the quantity]
 
     Raises
     ------
     CalculationError
-        If the critical eigenvalue has no derivative.
+        If a critical eigenvalue has no derivative.
     """
-    excess: _Excess
-    if state.criterion == "spectrum":
-        excess = _OfSpectrum(state, tolerance)
-    else:
-        excess = _OfPowers(state, column, tolerance)
-    along_step = excess.along_step()
-    number = next(i for i, air in enumerate(column.airs) if air is state.problem.air)
-    derivatives = np.empty(len(pairs))
-    for i, pair in enumerate(pairs):
-        more, less = (parts_of(state.problem, one, number) for one in (pair.more, pair.less))
-        derivatives[i] = -excess.between(more, less) / pair.width / along_step
+    derivatives = np.empty((len(states), len(pairs)))
+    for problem in dict.fromkeys(state.problem for state in states):
+        rows = [i for i, state in enumerate(states) if state.problem is problem]
+        excesses = [_excess(states[i], column, tolerance) for i in rows]
+        along_step = np.array([excess.along_step() for excess in excesses])
+        number = next(i for i, air in enumerate(column.airs) if air is problem.air)
+        for k, pair in enumerate(pairs):
+            more, less = (parts_of(problem, one, number) for one in (pair.more, pair.less))
+            changes = np.array([excess.between(more, less) for excess in excesses])
+            derivatives[rows, k] = -changes / pair.width / along_step
     return derivatives
+
+
+def _excess(state: LostState, column: Column, tolerance: Tolerance) -> _Excess:
+    if state.criterion == "spectrum":
+        return _OfSpectrum(state, tolerance)
+    return _OfPowers(state, column, tolerance)
 
 
 def parts_of(problem: WaveProblem, column: Column, number: int) -> Parts:
@@ -130,49 +135,68 @@ class _Excess(Protocol):
 
 
 @dataclass(frozen=True, eq=False)
-class _Eigenvalue:
-    """An eigenvalue with its eigenvectors, y^H x = 1."""
+class Eigenvalues:
+    """Eigenvalues with their eigenvectors, y^H x = 1.
 
-    value: complex
+    Attributes
+    ----------
+    values : ndarray, shape (nvalue,)
+    right, left : ndarray, shape (nstate, nvalue)
+    """
+
+    values: NDArray[np.complex128]
     right: NDArray[np.complex128]
     left: NDArray[np.complex128]
 
     @classmethod
-    def of(cls, matrix: Matrix, size: Callable[[Matrix], Array], rank: int = 0) -> _Eigenvalue:
-        """Take the one of so many that are larger; of conjugate ones that above the real axis."""
+    def largest(cls, matrix: Matrix, size: Callable[[Matrix], Array], ranks: slice) -> Eigenvalues:
+        """Take those of some ranks by size; of conjugate ones only that above the real axis.
+
+        Raises
+        ------
+        CalculationError
+            If one is defective.
+        """
         found: Any = eig(matrix, left=True, right=True)
         values, left, right = found
-        chosen = unpaired(values)
-        at = chosen[np.argsort(-size(values[chosen]), kind="stable")[rank]]
-        x, y = right[:, at].astype(complex), left[:, at].astype(complex)
-        product = np.vdot(y, x)
-        if abs(product) < DEFECTIVE:
+        order = unpaired(values)
+        order = order[np.argsort(-size(values[order]), kind="stable")][ranks]
+        x, y = right[:, order].astype(complex), left[:, order].astype(complex)
+        product = (y.conj() * x).sum(axis=0)
+        if np.abs(product).min() < DEFECTIVE:
             raise CalculationError(
                 "the critical eigenvalue is defective at its limit and has no derivative with "
                 "respect to the layers; ask for another e-folding time"
             )
-        return cls(complex(values[at]), x, y / product.conjugate())
+        return cls(values[order].astype(complex), x, y / product.conj())
 
-    def change(self, image: Matrix) -> complex:
-        """Change of the eigenvalue where the change of the matrix takes x to ``image``."""
-        return complex(np.vdot(self.left, image))
+    def changes(self, images: Matrix) -> Matrix:
+        """Y^H dR X where the change of the matrix takes X to ``images``."""
+        changes: Matrix = self.left.conj().T @ images
+        return changes
 
 
-class _OwnGrowth:
-    """Growth of the operator itself, where there is any: tolerated, and it changes with the air."""
+class OwnGrowth:
+    """Growth of the operator itself, where there is any: tolerated, and it changes with the air.
+
+    Parameters
+    ----------
+    problem : WaveProblem
+    """
 
     def __init__(self, problem: WaveProblem) -> None:
-        self._found: _Eigenvalue | None = None
+        self._found: Eigenvalues | None = None
         if ColumnVerdict.grows_by_itself(problem):
             operator = problem.parts.whole.to_dense()
-            self._found = _Eigenvalue.of(operator, lambda values: values.real)
+            self._found = Eigenvalues.largest(operator, lambda values: values.real, slice(1))
 
     def between(self, more: Parts, less: Parts) -> float:
         """Difference between two columns [1/s]."""
         if self._found is None:
             return 0.0
         x = self._found.right
-        return self._found.change(more.whole.apply(x) - less.whole.apply(x)).real
+        change = self._found.changes(more.whole.apply(x) - less.whole.apply(x))
+        return float(change[0, 0].real)
 
 
 class _OfSpectrum:
@@ -181,8 +205,9 @@ class _OfSpectrum:
     def __init__(self, state: LostState, tolerance: Tolerance) -> None:
         self._problem, self._dt = state.problem, state.step_s
         self._rate = state.problem.rate(tolerance)
-        self._found = _Eigenvalue.of(state.problem.matrix(self._dt), np.abs, state.rank)
-        self._own = _OwnGrowth(state.problem)
+        chosen = slice(state.rank, state.rank + 1)
+        self._found = Eigenvalues.largest(state.problem.matrix(self._dt), np.abs, chosen)
+        self._own = OwnGrowth(state.problem)
 
     def along_step(self) -> float:
         width = STEP_SHARE * self._dt
@@ -199,7 +224,7 @@ class _OfSpectrum:
         return Stepper(parts, self._problem.tableau, dt).step(self._found.right)
 
     def _logarithmic(self, image: Matrix) -> float:
-        return (self._found.change(image) / self._found.value).real
+        return float((self._found.changes(image)[0, 0] / self._found.values[0]).real)
 
 
 class _OfPowers:
@@ -211,7 +236,7 @@ class _OfPowers:
         matrix = problem.matrix(dt)
         peak = power_peak(matrix, dt, self._rate, tolerance.horizon)
         self._steps, self._slope = peak.steps, power_slope(matrix, peak)
-        self._own = _OwnGrowth(problem)
+        self._own = OwnGrowth(problem)
         self._exponential: tuple[float, int, Matrix] | None = None
         if problem.facts.log_exponential_peak(self._rate) > SMALL_PEAK:
             longest = 10 * max(column.advice.efolding_s, Tolerance.LONGEST_EFOLDING_S)

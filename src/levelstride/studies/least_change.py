@@ -7,10 +7,11 @@ whether the answer holds, is for others to say.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.optimize import LinearConstraint, NonlinearConstraint, linprog, minimize
+from scipy.optimize import Bounds, LinearConstraint, NonlinearConstraint, linprog, minimize
 
 Array = NDArray[np.float64]
 
@@ -184,6 +185,11 @@ def _nearest(rules: Rules, cuts: Cuts, x: Array, level: float, radius: float) ->
     matrix = matrix[:, free]
     standing, lid, start = float(np.exp(low[~free]).sum()), rules.lid_m, rules.start[free]
     least, most = (1.0, 1.0) if rules.lid_kept else (1 / LID_REACH, LID_REACH)
+
+    def change(y: NDArray[Any]) -> tuple[float, Array]:
+        away = y - start
+        return float(away @ away), 2 * away
+
     bounds: list[LinearConstraint | NonlinearConstraint] = [
         LinearConstraint(matrix, -offset, np.inf),
         NonlinearConstraint(
@@ -194,10 +200,10 @@ def _nearest(rules: Rules, cuts: Cuts, x: Array, level: float, radius: float) ->
         ),
     ]
     found = minimize(
-        lambda y: float(((y - start) ** 2).sum()),
+        change,
         x[free],
-        jac=lambda y: 2 * (y - start),
-        bounds=list(zip(low[free], high[free], strict=True)),
+        jac=True,
+        bounds=Bounds(low[free], high[free]),
         constraints=bounds,
         method="SLSQP",
         options={"maxiter": 200, "ftol": 1e-10},

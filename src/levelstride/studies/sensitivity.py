@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,8 +15,9 @@ from levelstride.errors import InputError
 from levelstride.results.mending import InterfaceCost, LayerCost, LayerSensitivity, LostFirst
 from levelstride.splitting.splitting import resolve
 from levelstride.stability.blas import on_one_thread
+from levelstride.stability.joint_states import joint_derivatives
 from levelstride.stability.lost_rows import RowDerivative, lost_rows
-from levelstride.stability.lost_states import lost_states
+from levelstride.stability.lost_states import LostState, lost_states
 from levelstride.stability.sensitivity import Pair, step_derivatives
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
@@ -23,6 +25,7 @@ from levelstride.studies.limit import DEFAULT_SPLIT
 from levelstride.studies.methods import tableau_of
 
 Array = NDArray[np.float64]
+Matrix = NDArray[Any]
 
 TOGETHER = 1.005
 """States whose limits are within this factor of the smallest count as critical together."""
@@ -58,7 +61,7 @@ class Branch:
 
         All above the layer moves with it.
         """
-        return np.cumsum(self.by_height[::-1])[::-1]
+        return _above(self.by_height)
 
 
 @on_one_thread
@@ -113,17 +116,43 @@ def layer_sensitivity(
     verdict = ColumnVerdict(column, splitting, method)
     if found is None:
         found = verdict.stable_step(tolerance)
-    branches = branches_at(column, verdict, found, tolerance, TOGETHER)
+    branches, sides = _near(column, verdict, found, tolerance)
     return LayerSensitivity(
         tableau=method.name,
         split=splitting.name,
         stable_step_s=found.step_s,
         efolding_s=tolerance.efolding_s,
-        layers=_layers(column, found.step_s, branches),
-        interfaces=_interfaces(column, branches),
+        layers=_layers(column, found.step_s, branches, sides),
+        interfaces=_interfaces(column, branches, sides),
         lost_first=tuple(branch.lost for branch in branches),
         method=METHOD,
     )
+
+
+def _near(
+    column: Column, verdict: ColumnVerdict, found: StableStep, tolerance: Tolerance
+) -> tuple[list[Branch], list[Matrix]]:
+    """What is lost together, and the derivatives of the joint states, shape (nlev, k, k) each."""
+    if found.step_s is None:
+        return [], []
+    pairs = moved_pairs(column)
+    states = _states_at(column, verdict, found, tolerance, TOGETHER)
+    of_states = _of_states(states, column, pairs, tolerance)
+    of_rows = _of_rows(column, verdict, found, tolerance, TOGETHER, pairs)
+    sides = [branch.by_height[:, None, None] for branch in of_rows]
+    for problem in dict.fromkeys(state.problem for state in states):
+        here = [i for i, state in enumerate(states) if state.problem is problem]
+        if len(here) == 1:
+            sides.append(of_states[here[0]].by_height[:, None, None])
+        else:
+            sides.append(joint_derivatives([states[i] for i in here], column, pairs, tolerance))
+    return sorted([*of_states, *of_rows], key=lambda branch: branch.lost.step_s), sides
+
+
+def _range(sides: Sequence[Matrix]) -> tuple[Array, Array]:
+    """Smallest and largest derivative of what is lost together, shape (nquantity,) each."""
+    every = np.concatenate([np.linalg.eigvals(one).real for one in sides], axis=1)
+    return every.min(axis=1), every.max(axis=1)
 
 
 def branches_at(
@@ -156,18 +185,36 @@ def branches_at(
     """
     if found.step_s is None:
         return []
+    states = _states_at(column, verdict, found, tolerance, reach)[:most]
+    pairs = moved_pairs(column)
+    branches = _of_states(states, column, pairs, tolerance)
+    branches += _of_rows(column, verdict, found, tolerance, reach, pairs)
+    return sorted(branches, key=lambda branch: branch.lost.step_s)[:most]
+
+
+def _states_at(
+    column: Column,
+    verdict: ColumnVerdict,
+    found: StableStep,
+    tolerance: Tolerance,
+    reach: float,
+) -> list[LostState]:
+    assert found.step_s is not None
     problems, binding = verdict.search.problems(), None
     if found.bracket is not None and found.bracket.low <= reach * found.step_s:
         bracket = found.bracket
-        number = next(i for i, air in enumerate(column.airs) if air is bracket.problem.air)
+        named = bracket.problem.air.name
+        number = next(i for i, air in enumerate(column.airs) if air.name == named)
         binding = replace(bracket, problem=verdict.problem(number, bracket.problem.kappa))
         problems = list(dict.fromkeys([*problems, binding.problem]))
-    states = lost_states(problems, tolerance, found.step_s, reach, binding)[:most]
-    rows = lost_rows(
-        column, verdict.splitting, verdict.tableau, tolerance.rate, found.step_s, reach
-    )[:most]
-    pairs = moved_pairs(column)
-    branches = [
+    return lost_states(problems, tolerance, found.step_s, reach, binding)
+
+
+def _of_states(
+    states: Sequence[LostState], column: Column, pairs: Sequence[Pair], tolerance: Tolerance
+) -> list[Branch]:
+    derivatives = step_derivatives(states, column, pairs, tolerance)
+    return [
         Branch(
             LostFirst(
                 criterion=state.criterion,
@@ -175,12 +222,27 @@ def branches_at(
                 wavenumber_per_m=state.problem.kappa,
                 step_s=state.step_s,
             ),
-            step_derivatives(state, column, pairs, tolerance),
+            by_height,
         )
-        for state in states
+        for state, by_height in zip(states, derivatives, strict=True)
     ]
-    for row in rows:
-        moves = RowDerivative(row, column, verdict.splitting, verdict.tableau, tolerance.rate)
+
+
+def _of_rows(
+    column: Column,
+    verdict: ColumnVerdict,
+    found: StableStep,
+    tolerance: Tolerance,
+    reach: float,
+    pairs: Sequence[Pair],
+) -> list[Branch]:
+    assert found.step_s is not None
+    if found.courant is None or found.courant.step_s > reach * found.step_s:
+        return []
+    splitting, tableau, rate = verdict.splitting, verdict.tableau, tolerance.rate
+    branches = []
+    for row in lost_rows(column, splitting, tableau, rate, found.step_s, reach):
+        moves = RowDerivative(row, column, splitting, tableau, rate)
         lost = LostFirst(
             criterion="courant",
             air=column.airs[row.number].name,
@@ -190,7 +252,7 @@ def branches_at(
         )
         slopes = [moves.between(pair.more, pair.less) / pair.width for pair in pairs]
         branches.append(Branch(lost, np.array(slopes)))
-    return sorted(branches, key=lambda branch: branch.lost.step_s)[:most]
+    return branches
 
 
 def moved_pairs(column: Column) -> list[Pair]:
@@ -212,48 +274,61 @@ def moved_pairs(column: Column) -> list[Pair]:
 
 
 def _layers(
-    column: Column, step: float | None, branches: Sequence[Branch]
+    column: Column, step: float | None, branches: Sequence[Branch], sides: Sequence[Matrix]
 ) -> tuple[LayerCost, ...]:
     levels = column.levels
     heights, thickness = levels.interfaces_m, levels.thickness_m
-    slopes = np.array([branch.by_thickness for branch in branches])
-    costs = []
-    for j in range(levels.nlev):
-        known = step is not None and slopes.size > 0
-        kept = None
-        if known:
-            others = np.delete(slopes[0] * thickness, j).sum() / np.delete(thickness, j).sum()
-            kept = float(slopes[0, j] - others)
-        costs.append(
-            LayerCost(
-                layer=j,
-                bottom_m=float(heights[j]),
-                top_m=float(heights[j + 1]),
-                thickness_m=float(thickness[j]),
-                ratio_to_next=(
-                    float(thickness[j + 1] / thickness[j]) if j + 1 < levels.nlev else None
-                ),
-                step_per_m=float(slopes[0, j]) if known else None,
-                log_sensitivity=float(slopes[0, j] * thickness[j] / step) if known else None,
-                step_per_m_thicker=float(slopes[:, j].min()) if known else None,
-                step_per_m_thinner=float(slopes[:, j].max()) if known else None,
-                step_per_m_lid_kept=kept,
-            )
+    slopes = lowest = highest = kept = np.full(levels.nlev, np.nan)
+    if step is not None and branches:
+        slopes = branches[0].by_thickness
+        lowest, highest = _range([_above(one) for one in sides])
+        by_log = slopes * thickness
+        # the other layers give way in proportion to their thickness
+        kept = slopes - (by_log.sum() - by_log) / (thickness.sum() - thickness)
+    ratios = [*(thickness[1:] / thickness[:-1]).tolist(), None]
+    return tuple(
+        LayerCost(
+            layer=j,
+            bottom_m=float(heights[j]),
+            top_m=float(heights[j + 1]),
+            thickness_m=float(thickness[j]),
+            ratio_to_next=ratios[j],
+            step_per_m=_known(slopes[j]),
+            log_sensitivity=_known(slopes[j] * thickness[j] / (step or 1.0)),
+            step_per_m_thicker=_known(min(lowest[j], slopes[j])),
+            step_per_m_thinner=_known(max(highest[j], slopes[j])),
+            step_per_m_lid_kept=_known(kept[j]),
         )
-    return tuple(costs)
+        for j in range(levels.nlev)
+    )
 
 
-def _interfaces(column: Column, branches: Sequence[Branch]) -> tuple[InterfaceCost, ...]:
+def _interfaces(
+    column: Column, branches: Sequence[Branch], sides: Sequence[Matrix]
+) -> tuple[InterfaceCost, ...]:
     heights, thickness = column.levels.interfaces_m, column.levels.thickness_m
-    slopes = np.array([branch.by_height for branch in branches])
+    slopes = lowest = highest = np.full(thickness.size, np.nan)
+    if branches:
+        slopes = branches[0].by_height
+        lowest, highest = _range(sides)
     return tuple(
         InterfaceCost(
             interface=f,
             height_m=float(heights[f]),
             ratio=float(thickness[f] / thickness[f - 1]),
-            step_per_m=float(slopes[0, f - 1]) if slopes.size else None,
-            step_per_m_raised=float(slopes[:, f - 1].min()) if slopes.size else None,
-            step_per_m_lowered=float(slopes[:, f - 1].max()) if slopes.size else None,
+            step_per_m=_known(slopes[f - 1]),
+            step_per_m_raised=_known(min(lowest[f - 1], slopes[f - 1])),
+            step_per_m_lowered=_known(max(highest[f - 1], slopes[f - 1])),
         )
         for f in range(1, thickness.size)
     )
+
+
+def _above(by_height: Matrix) -> Matrix:
+    """From interfaces moved alone to layers made thicker with all above moved, shape kept."""
+    summed: Matrix = np.cumsum(by_height[::-1], axis=0)[::-1]
+    return summed
+
+
+def _known(value: float) -> float | None:
+    return float(value) + 0.0 if np.isfinite(value) else None
