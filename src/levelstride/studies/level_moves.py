@@ -91,11 +91,15 @@ class Workshop:
         """The user's own level set."""
         return self._searched(np.log(self.column.levels.thickness_m), self.column)
 
-    def at(self, x: Array, lid_m: float | None = None) -> LevelPoint | None:
+    def at(self, x: Array, rules: Rules) -> LevelPoint | None:
         """Search a level set; None where there is no such column or no step is stable."""
+        own = self.column.levels.interfaces_m
         interfaces = np.concatenate([[0.0], np.cumsum(np.exp(x))])
-        if lid_m is not None:
-            interfaces[-1] = lid_m
+        # what is kept is kept to the last digit
+        if rules.lowest_kept:
+            interfaces[1] = own[1]
+        if rules.lid_kept:
+            interfaces[-1] = own[-1]
         try:
             return self._searched(x, with_levels(self.column, interfaces))
         except (InputError, CalculationError):
@@ -112,6 +116,10 @@ class Workshop:
         branches = branches_at(
             point.column, point.verdict, point.found, self.tolerance, REACH, MOST
         )
+        if not branches:
+            raise CalculationError(
+                f"what binds the step at {point.found.step_s:.6g} s could not be followed beyond it"
+            )
         steps = np.array([branch.lost.step_s for branch in branches])
         slopes = np.array([branch.by_thickness for branch in branches]) / steps[:, None]
         at = np.broadcast_to(point.x, slopes.shape)
@@ -149,7 +157,6 @@ def approach(
     was found, which bends the linear models where the step itself bends. With ``reach_only`` any
     set that carries the target ends the search, and so does a promise too small to get there.
     """
-    lid = shop.column.levels.top_m if rules.lid_kept else None
     walk = _Walk(start, shop.cuts(start))
     for _ in range(moves):
         x = propose(rules, walk.cuts, walk.current.x, log_target + np.log(AIM), walk.radius)
@@ -163,7 +170,7 @@ def approach(
             break
         if reach_only and walk.radius >= FIRST_RADIUS and promised * moves < missing:
             break
-        trial = shop.at(x, lid)
+        trial = shop.at(x, rules)
         if trial is None:
             walk.radius /= 3
         elif trial.log_step >= log_target:
@@ -254,7 +261,7 @@ def distance(rules: Rules, x: Array) -> float:
 
 
 def just_carrying(
-    shop: Workshop, given: LevelPoint, found: LevelPoint, log_target: float
+    shop: Workshop, rules: Rules, given: LevelPoint, found: LevelPoint, log_target: float
 ) -> LevelPoint:
     """Go back towards the given set as long as the target is carried.
 
@@ -271,7 +278,7 @@ def just_carrying(
             share = float(np.clip((aim - below) / (best.log_step - below), 0.1, 0.9))
         middle = least + share * (most - least)
         mixed = (1 - middle) * np.exp(given.x) + middle * np.exp(found.x)
-        trial = shop.at(np.log(mixed), shop.column.levels.top_m)
+        trial = shop.at(np.log(mixed), rules)
         if trial is not None and trial.log_step >= log_target:
             most, best = middle, trial
         else:

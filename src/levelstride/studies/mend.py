@@ -127,7 +127,7 @@ def mend(
         came = approach(shop, rules, given, log_target, MOVES)
         longest = came.longest
         if came.nearest is not None:
-            proposed = just_carrying(shop, given, came.nearest, log_target)
+            proposed = just_carrying(shop, rules, given, came.nearest, log_target)
         else:
             releases = tuple(_released(shop, rules, longest, log_target, doing))
     shown = proposed or longest
