@@ -39,17 +39,18 @@ def show_stretch(found: "Stretch", written: Sequence[Path]) -> None:
         _show_verdict(row, f"{i + 1}. " if len(found.rows) > 1 else "")
     for note in found.notes:
         say(f"Note: {note}.")
-    say(f"Written to {written[0].parent}: {_names(written)}")
+    names = _names(written, each=len(found.rows) == 1)
+    say(f"Written to {written[0].parent}: {names}")
     say(f"Caution: {found.caution}")
 
 
-def _names(written: Sequence[Path]) -> str:
-    """The files, level sets counted where there are many."""
+def _names(written: Sequence[Path], *, each: bool) -> str:
+    """The files; level sets each by its name, or only counted."""
     sets = sorted({path.stem for path in written if path.suffix == ".toml"})
     names = [path.name for path in written if path.stem not in sets]
-    if len(sets) <= 2:
+    if each:
         names += [f"{name}.{ending}" for name in sets for ending in ("toml", "csv")]
-    else:
+    elif sets:
         names.append(f"{len(sets)} level sets as column files (.toml) and .csv")
     return ", ".join(names)
 

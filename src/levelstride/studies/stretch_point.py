@@ -21,8 +21,9 @@ from levelstride.stability.step_limit import Bracket
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.studies.advised_step import Choice, choose_step
-from levelstride.studies.level_families import Family, largest_ratio
+from levelstride.studies.level_families import Family
 from levelstride.studies.methods import tableau_of
+from levelstride.studies.stretched_levels import largest_ratio
 from levelstride.studies.work_item import StepChecker
 from levelstride.tableaux.tableau import Tableau
 
