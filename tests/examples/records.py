@@ -2,10 +2,11 @@
 
 from dataclasses import asdict, fields
 
+from levelstride.results.biting import Bites, Counterfactual, FieldProfile, StepOfAir
+from levelstride.results.calibration import SafetyFactor
 from levelstride.results.dataset import (
     Advice,
     AdviceRow,
-    Bites,
     ColumnSummary,
     CurrentStep,
     Limit,
@@ -14,6 +15,7 @@ from levelstride.results.dataset import (
     StepAtTolerance,
     Window,
 )
+from levelstride.results.headroom import UNITS, Headroom, Room
 from levelstride.results.wording import CAUTION
 
 
@@ -81,6 +83,39 @@ def unbounded(**changes):
     )
 
 
+def room(column=None, quantity="slope", **_):
+    values = {"present": 0.1, "carried": 0.25, "lost": 0.2512, "criterion": "spectrum"}
+    if quantity == "wind_m_per_s":
+        values = {"present": 0.0, "unbounded": True, "tried_to": 200.0}
+    if quantity == "updraft_m_per_s":
+        values = {"present": 0.0, "reason": "made up"}
+    return Room(quantity=quantity, **values)
+
+
+def headroom(**changes):
+    values = {
+        "tableau": "ARS(2,3,2)",
+        "split": "sound+buoyancy",
+        "step_s": 24.0,
+        "efolding_s": 86400.0,
+        "rooms": tuple(room(quantity=quantity) for quantity in UNITS),
+        "certified": "made up",
+    }
+    return Headroom(**{**values, **changes})
+
+
+def safety_factor(**changes):
+    values = {
+        "tableau": "ARS(2,3,2)",
+        "split": "sound",
+        "efolding_s": 86400.0,
+        "transient_limit": 1000.0,
+        "lower": 0.8,
+        "upper": None,
+    }
+    return SafetyFactor(**{**values, **changes})
+
+
 def row(of=None, **changes):
     of = of or limit()
     values = {
@@ -96,6 +131,7 @@ def row(of=None, **changes):
         "binding": "spectrum: sound wave of 6.0 km, layers 0-3 (0-140 m)",
         "frequency_error": 0.002,
         "amplitude_change_per_period": -0.011,
+        "safety": 0.9,
     }
     inherited = {field.name: getattr(of, field.name) for field in fields(Limit)}
     return AdviceRow(**{**inherited, **values, **changes})
@@ -121,7 +157,7 @@ def advice(**changes):
             interfaces_m=(0.0, 20.0, 60.0, 120.0),
         ),
         "intervals_s": (600.0, 3600.0),
-        "rows": (row(), row(unbounded(split="all-implicit")), without_step()),
+        "rows": (row(headroom=headroom()), row(unbounded(split="all-implicit")), without_step()),
         "best": 0,
         "current": CurrentStep(
             step_s=22.9,

@@ -2,11 +2,13 @@
 
 import pytest
 
+from examples import records
 from levelstride.column import knobs
 from levelstride.column.read import build
 from levelstride.column.variants import with_levels
 from levelstride.errors import CalculationError, InputError
 from levelstride.operator.terms import CATALOGUE
+from levelstride.results.headroom import UNITS
 from levelstride.splitting.splitting import resolve
 from levelstride.stability.courant import courant_limit, rows_hold
 from levelstride.stability.tolerance import Tolerance
@@ -115,9 +117,9 @@ def test_a_step_that_does_not_hold_now_has_no_headroom(column, step_s):
 
 
 def test_all_quantities_come_in_one_record(column, monkeypatch):
-    monkeypatch.setattr(study, "room", lambda column, name, **_: name)
+    monkeypatch.setattr(study, "room", records.room)
     found = headroom(column, tableau="ars232", split="sound + buoyancy", step_s=3.0)
-    assert found.rooms == tuple(QUANTITIES)
+    assert [room.quantity for room in found.rooms] == list(QUANTITIES) == list(UNITS)
     assert (found.tableau, found.split) == (TABLEAU, SPLIT)
     assert (found.step_s, found.efolding_s) == (3.0, 86400.0)
 
@@ -140,7 +142,7 @@ class Question:
     def trial(self, column):
         return column
 
-    def holds(self, value):
+    def holds(self, value, every=1):
         self.asked.append(value)
         return value <= self._cheap
 

@@ -148,11 +148,14 @@ def _best_sentence(found: "Advice") -> str:
 def _best_details(found: "Advice") -> list[str]:
     """What limits the stable step of the best row, and which of several air states binds it."""
     from levelstride.results.cause import airs
+    from levelstride.results.headroom_words import carried
 
     if found.best is None:
         return []
     row = found.rows[found.best]
     lines = [] if row.cause is None else [f"Cause of its limit: {row.cause}."]
+    if row.headroom is not None:
+        lines.append(f"Its step carries, each by itself: {carried(row.headroom)}.")
     return lines + ([f"Air: {airs(row)}."] if row.stable_step_by_air else [])
 
 

@@ -9,6 +9,7 @@ from dataclasses import dataclass
 from typing import Final, Literal, TypeAlias
 
 from .biting import Bites, Counterfactual, StepOfAir
+from .headroom import Headroom
 
 FORMAT_VERSION: Final = 1
 """Version of the names and dimensions below; raised when one changes its meaning."""
@@ -169,6 +170,10 @@ class AdviceRow(Limit):
         Worst relative frequency error of a resolved gravity wave at the advised step [1].
     amplitude_change_per_period : float or None
         Worst change of amplitude per period of such a wave at the advised step [1].
+    safety : float or None
+        Share of the stable step that was to be advised at most [1].
+    headroom : Headroom or None
+        How far the column may change under the advised step; of the best row of an advice only.
     """
 
     advised_step_s: float | None = None
@@ -183,6 +188,8 @@ class AdviceRow(Limit):
     binding: str = ""
     frequency_error: float | None = None
     amplitude_change_per_period: float | None = None
+    safety: float | None = None
+    headroom: Headroom | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

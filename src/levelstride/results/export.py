@@ -11,6 +11,8 @@ from typing import Any, Final
 
 from .cause import reason_and_cause
 from .dataset import Advice, AdviceRow
+from .headroom import UNITS
+from .headroom_words import carried
 from .wording import headroom, number, percent, step
 
 _BITES: Final = (
@@ -24,6 +26,7 @@ _COLUMNS: Final = (
     "explicit_evaluations_per_hour", "solves_per_hour", "exchanges_per_hour", "measured_s_per_hour",
     "frequency_error", "amplitude_change_per_period", "explicit_share", "gain", "efolding_s",
     "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns", "cause",
+    "safety",
 )  # fmt: skip
 _NUMBERS: Final = re.compile(r"\[\n\s+(?:(?:[-+.\deE]+|null),\n\s+)*(?:[-+.\deE]+|null)\n\s+\]")
 """A list of numbers over several lines; text has no line feeds in JSON, so it is never meant."""
@@ -109,6 +112,10 @@ def _cells(row: AdviceRow, intervals_s: tuple[float, ...]) -> dict[str, str]:
         cells[f"stable_step_s_efolding_{at.efolding_s:.6g}_s"] = at.stable_step_s
     for interval, steps in zip(intervals_s, row.steps_per_interval, strict=False):
         cells[f"steps_per_{interval:.6g}_s"] = steps
+    for quantity in UNITS if row.headroom is not None else ():
+        room = row.headroom.of(quantity) if row.headroom is not None else None
+        cells[f"headroom_{quantity}"] = None if room is None else room.carried
+        cells[f"headroom_{quantity}_tried_to"] = None if room is None else room.tried_to
     return {name: cell(value) for name, value in cells.items()}
 
 
@@ -156,13 +163,19 @@ def _best_lines(advice: Advice) -> list[tuple[str, str]]:
         ("splitting", f"{row.split} implicit" if row.path != "explicit" else row.split),
         ("tableau", row.tableau),
         ("reason", reason_and_cause(row)),
-        ("headroom", headroom(row)),
+        ("headroom", _headroom_line(row)),
         (
             "accuracy",
             f"gravity waves: frequency error {percent(row.frequency_error)}, "
             f"amplitude change per period {percent(row.amplitude_change_per_period)}",
         ),
     ]
+
+
+def _headroom_line(row: AdviceRow) -> str:
+    if row.headroom is None:
+        return headroom(row)
+    return f"{headroom(row)}; it carries, each by itself: {carried(row.headroom)}"
 
 
 def _step_line(row: AdviceRow, intervals_s: tuple[float, ...]) -> str:

@@ -1,6 +1,18 @@
 """How far a column may change before a step no longer carries it, as frozen plain data."""
 
+from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import Final
+
+UNITS: Final[Mapping[str, str]] = {
+    "slope": "1",
+    "wind_m_per_s": "m s-1",
+    "updraft_m_per_s": "m s-1",
+    "vertical_diffusion_m2_per_s": "m2 s-1",
+    "grid_spacing_m": "m",
+    "lowest_layer_m": "m",
+}
+"""Units of the quantities that are varied, as netCDF software reads them."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -10,9 +22,8 @@ class Room:
     Parameters
     ----------
     quantity : str
-        What is varied, its unit in the name: slope, wind_m_per_s, updraft_m_per_s,
-        vertical_diffusion_m2_per_s, grid_spacing_m, lowest_layer_m. Of profiles it is the largest
-        value, the whole profile being scaled.
+        What is varied, one of ``UNITS``. Of profiles it is the largest value, the whole profile
+        being scaled.
     present : float
         Its value in the column.
     carried : float or None
@@ -67,3 +78,7 @@ class Headroom:
     efolding_s: float
     rooms: tuple[Room, ...]
     certified: str
+
+    def of(self, quantity: str) -> Room | None:
+        """Look up the room of one quantity."""
+        return next((room for room in self.rooms if room.quantity == quantity), None)

@@ -6,6 +6,7 @@ from itertools import pairwise
 from typing import Any, Final, TypeAlias
 
 from .dataset import Advice, AdviceRow, ColumnSummary
+from .headroom import UNITS
 
 Values: TypeAlias = Sequence[Any]
 
@@ -67,6 +68,7 @@ _ROW: Final = (
     ("measured_s_per_hour", "s h-1", "measured time per simulated hour, one wave", "float"),
     ("frequency_error", "1", "worst frequency error of resolved gravity waves", "float"),
     ("amplitude_change_per_period", "1", "worst amplitude change of these per period", "float"),
+    ("safety", "1", "share of the stable step that was to be advised at most", "float"),
 )
 _BITES: Final = (
     ("kind", "", "kind of wave that bites", "text"),
@@ -112,6 +114,7 @@ def variables(advice: Advice) -> tuple[Variable, ...]:
         _shares(rows, "energy_share", "field", "share of the energy of what bites by field"),
         _shares(rows, "kind_share", "wave_kind", "share of the energy of what bites by kind"),
         *_profiles(rows, advice.column.layers),
+        *_headroom(rows),
         _by_efolding(rows),
         _per_interval(advice),
         *_ragged(rows),
@@ -190,6 +193,21 @@ def _profiles(rows: Sequence[AdviceRow], layers: int) -> Iterator[Variable]:
             values = [getattr(p[field], name) if field in p else () for p in found]
             long_name = f"{field} of what bites, {text}"
             yield _by_height(f"bites_{field}_{name}", units, long_name, values, length, layers)
+
+
+def _headroom(rows: Sequence[AdviceRow]) -> Iterator[Variable]:
+    """How far the column may change under the advised step; missing but for the best row."""
+    if not any(row.headroom for row in rows):
+        return
+    for quantity, units in UNITS.items():
+        rooms = [row.headroom.of(quantity) if row.headroom else None for row in rows]
+        what = quantity.partition("_m")[0].replace("_", " ")
+        for name, of, text in (
+            ("", "carried", f"{what} up to which the advised step holds"),
+            ("_tried_to", "tried_to", f"{what} up to which it was tried, where nothing bites"),
+        ):
+            values = [None if room is None else getattr(room, of) for room in rooms]
+            yield Variable(f"headroom_{quantity}{name}", ("row",), units, text, values, "float")
 
 
 def _by_height(

@@ -45,8 +45,8 @@ def gather(
     InputError
         If a finding cannot be kept.
     """
-    known = {} if kept is None else _known(items, kept)
-    left = dict.fromkeys(i for i in range(len(items)) if i not in known)
+    before = {} if kept is None else known(items, kept)
+    left = dict.fromkeys(i for i in range(len(items)) if i not in before)
 
     def tell() -> None:
         if progress is not None:
@@ -54,7 +54,7 @@ def gather(
             progress(len(items) - len(left), len(items), on)
 
     tell()
-    yield from known.items()
+    yield from before.items()
     wanted = {i: _item(items[i], kept) for i in left}
     for place, found in share_out(carry_out, wanted, executor):
         if kept is not None and isinstance(found, Finding):
@@ -66,10 +66,11 @@ def gather(
 
 def count_kept(items: Sequence[PlannedItem], kept: Kept) -> int:
     """Count the items that need not be done again."""
-    return len(_known(items, kept))
+    return len(known(items, kept))
 
 
-def _known(items: Sequence[PlannedItem], kept: Kept) -> dict[int, Finding]:
+def known(items: Sequence[PlannedItem], kept: Kept) -> dict[int, Finding]:
+    """Look up the items that need not be done again, by place."""
     found = {i: find_finding(kept, planned.key) for i, planned in enumerate(items)}
     return {i: finding for i, finding in found.items() if finding is not None}
 

@@ -9,6 +9,7 @@ shorter steps on the way from then on.
 
 from __future__ import annotations
 
+import pickle
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
 from math import sqrt
@@ -19,7 +20,7 @@ import numpy as np
 from levelstride.column import knobs
 from levelstride.column.column import Column
 from levelstride.column.variants import with_levels
-from levelstride.errors import InputError
+from levelstride.errors import CalculationError, InputError
 from levelstride.results.headroom import Headroom, Room
 from levelstride.results.wording import number
 from levelstride.splitting.splitting import resolve
@@ -41,6 +42,9 @@ FINEST_SHARE: Final = 0.01
 
 LEAST: Final = 1000.0
 """The smallest value tried where the column has none, as a divisor of the first."""
+
+COARSE: Final = 3
+"""While values are doubled or halved, only every so manieth wave is asked."""
 
 REMEMBERED: Final = 3
 """Columns that are kept for another look."""
@@ -94,6 +98,59 @@ def _with_lowest_layer(column: Column, thickness_m: float) -> Column:
 
 def _up_to(last: float, present: Callable[[Column], float]) -> Callable[[Column], float]:
     return lambda column: max(last, 4.0 * present(column))
+
+
+@dataclass(frozen=True, slots=True)
+class RoomItem:
+    """The room of one quantity that is to be found, as plain data.
+
+    Parameters
+    ----------
+    column : bytes
+        The column, pickled.
+    tableau : str
+        Name.
+    split : str or mapping
+        Name, or term to treatment.
+    step_s : float
+        The step [s].
+    quantity : str
+        One of ``QUANTITIES``.
+    """
+
+    column: bytes
+    tableau: str
+    split: str | Mapping[str, str]
+    step_s: float
+    quantity: str
+
+
+def find_room(item: RoomItem) -> Room:
+    """Find the room of one quantity under an advised step, which holds on the column as it is.
+
+    Returns
+    -------
+    Room
+        The same in whatever process it is found.
+    """
+    column: Column = pickle.loads(item.column)
+    try:
+        return room(
+            column,
+            item.quantity,
+            tableau=item.tableau,
+            split=item.split,
+            step_s=item.step_s,
+            holds_now=True,
+        )
+    except CalculationError as error:
+        return no_room(item, error)
+
+
+def no_room(item: RoomItem, error: Exception) -> Room:
+    """Stand in for a room that could not be found."""
+    present = QUANTITIES[item.quantity].present(pickle.loads(item.column))
+    return Room(quantity=item.quantity, present=present, reason=str(error))
 
 
 QUANTITIES: Final[Mapping[str, Quantity]] = {
@@ -173,11 +230,21 @@ def headroom(
     >>> found.rooms[4].quantity, 500.0 < found.rooms[4].carried < found.rooms[4].present
     ('grid_spacing_m', True)
     """
-    rooms = tuple(
-        room(column, name, tableau=tableau, split=split, step_s=step_s, efolding_s=efolding_s)
-        for name in QUANTITIES
-    )
-    return assembled(column, tableau, split, step_s, efolding_s, rooms)
+    holds_now = None
+    rooms: list[Room] = []
+    for name in QUANTITIES:
+        found = room(
+            column,
+            name,
+            tableau=tableau,
+            split=split,
+            step_s=step_s,
+            efolding_s=efolding_s,
+            holds_now=holds_now,
+        )
+        holds_now = found.reason is None or holds_now
+        rooms.append(found)
+    return assembled(column, tableau, split, step_s, efolding_s, tuple(rooms))
 
 
 def assembled(
@@ -208,6 +275,7 @@ def room(
     split: str | Mapping[str, str],
     step_s: float,
     efolding_s: float | None = None,
+    holds_now: bool | None = None,
 ) -> Room:
     """Find how far one quantity may go; parameters and errors are those of ``headroom``.
 
@@ -215,6 +283,8 @@ def room(
     ----------
     quantity : str
         One of ``QUANTITIES``.
+    holds_now : bool, optional
+        Whether the step holds on the column as it is, if that is known.
     """
     if not 0.0 < step_s < np.inf:
         raise InputError(f"step of the headroom: received {step_s!r} s, it must be above 0")
@@ -222,7 +292,9 @@ def room(
     question = StepQuestion(resolve(split), tableau_of(column, tableau), tolerance, step_s)
     varied = QUANTITIES[quantity]
     present = varied.present(column)
-    if not question.holds(question.trial(column)):
+    if holds_now is None:
+        holds_now = question.holds(question.trial(column))
+    if not holds_now:
         reason = f"the step of {number(step_s)} s does not hold at the present value already"
         return Room(quantity=quantity, present=present, reason=reason)
     return _Bracketing(column, quantity, varied, question).run()
@@ -265,7 +337,7 @@ class _Bracketing:
             trial = self._trial(value)
             if trial is None:
                 break
-            if not self._question.holds(trial):
+            if not self._question.holds(trial, every=COARSE):
                 return sure, value
             sure = value
         return sure, None

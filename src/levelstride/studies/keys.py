@@ -63,7 +63,9 @@ def limit_key(column: Column, tableau: Tableau, splitting: Splitting) -> str:
     )
 
 
-def finding_key(limit: str, column: Column, current_s: float | None) -> str:
+def finding_key(
+    limit: str, column: Column, current_s: float | None, calibrated: float | None = None
+) -> str:
     """Make the key of a finding: all of its limit, and how the step is chosen under it.
 
     Parameters
@@ -74,6 +76,8 @@ def finding_key(limit: str, column: Column, current_s: float | None) -> str:
         The column, for its settings.
     current_s : float or None
         A step that is judged besides [s].
+    calibrated : float or None
+        Share of the stable step that takes the place of ``safety`` [1].
 
     Returns
     -------
@@ -81,6 +85,8 @@ def finding_key(limit: str, column: Column, current_s: float | None) -> str:
         Hexadecimal digits.
     """
     settings = {name: getattr(column.advice, name) for name in _OF_THE_CHOICE}
+    if calibrated is not None:
+        settings |= {"safety": calibrated, "calibrated": True}
     return _digest({"of": "finding", "limit": limit, "settings": settings, "current_s": current_s})
 
 
@@ -98,6 +104,26 @@ def closer_key(limit: str) -> str:
         Hexadecimal digits.
     """
     return _digest({"of": "closer look", "limit": limit})
+
+
+def room_key(limit: str, step_s: float, quantity: str) -> str:
+    """Make the key of the headroom of one quantity under a step.
+
+    Parameters
+    ----------
+    limit : str
+        Key of the limit of its tableau and splitting.
+    step_s : float
+        The step [s].
+    quantity : str
+        What is varied.
+
+    Returns
+    -------
+    str
+        Hexadecimal digits.
+    """
+    return _digest({"of": "headroom", "limit": limit, "step_s": step_s, "quantity": quantity})
 
 
 def _digest(of: Mapping[str, Any]) -> str:

@@ -2,7 +2,7 @@
 
 import pickle
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from math import inf
 
@@ -12,7 +12,7 @@ from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
 from levelstride.operator.wave import Wave
 from levelstride.results.dataset import Limit
-from levelstride.results.wording import number, percent
+from levelstride.results.wording import limit_reason, number, percent
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.spectrum import sampled_wavenumbers
@@ -40,6 +40,8 @@ class WorkItem:
         A step to judge besides [s].
     limit : Limit or None
         The limit, if it is known already.
+    calibrated : float or None
+        Share of the stable step that takes the place of the column's ``safety`` [1].
     """
 
     column: bytes
@@ -47,6 +49,7 @@ class WorkItem:
     split: str | Mapping[str, str]
     current_s: float | None = None
     limit: Limit | None = None
+    calibrated: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -91,13 +94,23 @@ def carry_out(item: WorkItem) -> Finding:
     asked = columns[0].advice
     found = item.limit or _find_limit(item, columns)
     checker = StepChecker(columns, splitting, tableau)
-    choice = choose_step(
-        found, safety=asked.safety, intervals_s=asked.divides_s, check=checker.examine
-    )
+    safety = asked.safety if item.calibrated is None else item.calibrated
+    choice = choose_step(found, safety=safety, intervals_s=asked.divides_s, check=checker.examine)
+    if item.calibrated is not None:
+        choice = _as_calibrated(choice, found, item.calibrated)
     if item.current_s is None:
         return Finding(found, choice)
     current = checker.examine(item.current_s)
     return Finding(found, choice, current, checker.stable(item.current_s))
+
+
+def _as_calibrated(choice: Choice, found: Limit, share: float) -> Choice:
+    """Say that a step is bound by a measured share of the limit, where it is."""
+    if choice.step_s is None or found.unbounded or choice.binding != limit_reason(found):
+        return choice
+    return replace(
+        choice, binding=f"{choice.binding}; at most {percent(share, 3)} of it, as calibrated"
+    )
 
 
 def _find_limit(item: WorkItem, columns: tuple[Column, ...]) -> Limit:
