@@ -80,6 +80,8 @@ def test_the_reference_state_can_be_the_cause():
     ("bites", "text"),
     [
         ({}, "sound wave, layers 0-3 (0-140 m), wave of 6.0 km"),
+        ({"steepest_horizontal": True}, "sound wave, layers 0-3 (0-140 m), steepest wave of "
+         "6.0 km"),
         ({"shortest_vertical": True, "kind": "Lamb"}, "Lamb wave, layers 0-3 (0-140 m), wave of "
          "6.0 km, alternating from layer to layer"),
         ({"wavelength_m": None, "kind": "mixing"}, "mixing, layers 0-3 (0-140 m), every "

@@ -85,7 +85,7 @@ def test_vertical_acoustic_limit_of_stretched_layers(ratio):
         assert found.bites.layer_lowest == 0
         thinnest_m = column.levels.thickness_m[0]
         courant_number = found.stable_step_s * SOUND_M_PER_S / thinnest_m
-        assert 8**0.5 / 2 < courant_number < ratio * 8**0.5 / 2
+        assert 8**0.5 / 2 < courant_number < 8**0.5
 
 
 @pytest.mark.parametrize(
@@ -108,7 +108,8 @@ def test_vertical_advection(tableau, scheme, courant_number, updraft_m_per_s):
         only(
             "vertical-advection",
             updraft={
-                "heights_m": [0.0, 50.0, 550.0, 600.0],
+                # not where third order falls to first
+                "heights_m": [200.0, 250.0, 350.0, 400.0],
                 "speeds_m_per_s": [0.0, updraft_m_per_s, updraft_m_per_s, 0.0],
                 "scheme": scheme,
             },
@@ -120,8 +121,8 @@ def test_vertical_advection(tableau, scheme, courant_number, updraft_m_per_s):
     assert found.stable_step_s * abs(updraft_m_per_s) / 100.0 == pytest.approx(
         courant_number, rel=1e-3
     )
-    assert "courant" in found.criterion
-    assert found.bites.kind == "transport"
+    assert "courant" in found.criterion.split("+")
+    assert found.criterion != "courant" or found.bites.kind == "transport"
 
 
 @pytest.mark.parametrize(
@@ -140,7 +141,7 @@ def test_vertical_diffusion(tableau, reach):
         what_if=False,
     )
     assert found.stable_step_s * 50.0 / 100.0**2 == pytest.approx(reach / 4, rel=1e-3)
-    assert "courant" in found.criterion
+    assert found.criterion == "courant"
     assert found.bites.kind == "mixing"
     assert found.bites.shortest_vertical
 
@@ -174,5 +175,5 @@ def test_horizontal_advection(tableau, scheme, printed, exact):
     courant_number = found.stable_step_s * 20.0 / 1000.0
     assert courant_number == pytest.approx(exact, abs=2e-3)
     assert 0.0 <= courant_number - printed < 0.02
-    assert "courant" in found.criterion
-    assert found.bites.kind == "transport"
+    assert "courant" in found.criterion.split("+")
+    assert found.criterion != "courant" or found.bites.kind == "transport"

@@ -57,7 +57,9 @@ class Bites:
     period_s : float or None
         Period as the step sees it [s]; None where it does not oscillate.
     shortest_horizontal : bool
-        Whether it is the shortest horizontal wave that the grid carries, or the steepest.
+        Whether it is the shortest wave that the grid carries, of two cells.
+    steepest_horizontal : bool
+        Whether it is the wave of largest horizontal gradient.
     shortest_vertical : bool
         Whether it alternates from layer to layer, the shortest vertical wave there is.
     along_diagonal : bool
@@ -82,6 +84,7 @@ class Bites:
     wavelength_m: float | None = None
     period_s: float | None = None
     shortest_horizontal: bool = False
+    steepest_horizontal: bool = False
     shortest_vertical: bool = False
     along_diagonal: bool = False
     energy_by_layer: tuple[float, ...] = ()

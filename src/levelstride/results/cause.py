@@ -184,7 +184,8 @@ def wave_on_grid(bites: Bites) -> str:
     if bites.shortest_horizontal:
         text = "shortest wave"
     elif bites.wavelength_m is not None:
-        text = f"wave of {metres(bites.wavelength_m)}"
+        steepest = "steepest " if bites.steepest_horizontal else ""
+        text = f"{steepest}wave of {metres(bites.wavelength_m)}"
     else:
         text = "every horizontal wave"
     if bites.along_diagonal:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from levelstride.column.column import Column, Horizontal
+from levelstride.column.column import Column
 from levelstride.results.biting import Bites, FieldProfile
 from levelstride.stability.bites import ALTERNATES, anatomy, critical_state
 from levelstride.stability.courant import CourantLimit
@@ -17,6 +17,9 @@ from levelstride.stability.verdict import StableStep
 
 DIGITS = 7
 """Digits of a profile that are kept: it is a picture."""
+
+SAME = 1e-6
+"""Relative difference up to which two wavenumbers are one."""
 
 
 def what_bites(column: Column, found: StableStep, tolerance: Tolerance) -> Bites | None:
@@ -66,7 +69,8 @@ def _of_wave(column: Column, bracket: Bracket, tolerance: Tolerance) -> Bites:
         wavelength_layers=where.wavelength_layers,
         wavelength_m=2 * np.pi / problem.kappa,
         period_s=state.period_s,
-        shortest_horizontal=is_shortest(problem.kappa, column.horizontal),
+        shortest_horizontal=_is(problem.kappa, np.pi / column.horizontal.grid_spacing_m),
+        steepest_horizontal=_is(problem.kappa, steepest_wavenumber(column.horizontal)),
         shortest_vertical=where.alternates,
         along_diagonal=column.horizontal.directions == 2,
         energy_by_layer=_kept(where.energy_by_layer),
@@ -88,22 +92,15 @@ def _of_row(column: Column, courant: CourantLimit) -> Bites:
         energy_share={courant.field: 1.0},
         wavelength_layers=layers,
         wavelength_m=2 * np.pi / courant.kappa if courant.kappa > 0 else None,
-        shortest_horizontal=is_shortest(courant.kappa, column.horizontal),
+        shortest_horizontal=_is(courant.kappa, np.pi / column.horizontal.grid_spacing_m),
+        steepest_horizontal=_is(courant.kappa, steepest_wavenumber(column.horizontal)),
         shortest_vertical=layers is not None and layers <= ALTERNATES,
         along_diagonal=column.horizontal.directions == 2 and courant.kappa > 0,
     )
 
 
-def is_shortest(kappa: float, horizontal: Horizontal) -> bool:
-    """Whether a wave is the shortest that the grid carries, or that of largest gradient.
-
-    Examples
-    --------
-    >>> is_shortest(3.14159265 / 500.0, Horizontal(500.0, "staggered", 1))
-    True
-    """
-    shortest = (np.pi / horizontal.grid_spacing_m, steepest_wavenumber(horizontal))
-    return any(abs(kappa / one - 1) < 1e-6 for one in shortest)
+def _is(kappa: float, other: float) -> bool:
+    return abs(kappa / other - 1) < SAME
 
 
 def _profile(one: Profile) -> FieldProfile:
