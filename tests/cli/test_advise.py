@@ -128,7 +128,12 @@ class TestLimit:
         words = ("--tableau", "ars232", "--split", "sound+buoyancy", "--efolding", "3600")
         code, out, err = run("limit", tiny, *words)
         assert (code, err) == (0, "")
-        assert asked == {"tableau": "ars232", "split": "sound+buoyancy", "efolding_s": 3600.0}
+        assert asked == {
+            "tableau": "ars232",
+            "split": "sound+buoyancy",
+            "efolding_s": 3600.0,
+            "what_if": True,
+        }
         for text in (
             "27.5 s",
             "strict step",
@@ -139,8 +144,19 @@ class TestLimit:
             "30 to 31.5 s",
             "cause: shear",
             "dense eigenvalues",
+            "explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 km",
+            "standard binds, hot by itself unlimited (up to 110 s)",
+            "horizontal divergence 55 -",
+            "horizontal sound terms - no limit",
+            "0 10 60 % 0.5 0.02",
+            "2 90 10 % 0.12 -",
         ):
             assert text in " ".join(out.split())
+
+    def test_what_if_can_be_left_out(self, run, tiny, asked):
+        words = ("--tableau", "ars232", "--split", "sound", "--no-what-if")
+        assert run("limit", tiny, *words)[0] == 0
+        assert asked["what_if"] is False
 
     def test_a_limit_that_never_bites(self, run, tiny, asked):
         words = ("limit", tiny, "--tableau", "ars232", "--split", "all-implicit")

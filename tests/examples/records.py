@@ -33,6 +33,18 @@ def bites(**changes):
         "wavelength_layers": 2.5,
         "wavelength_m": 6000.0,
         "period_s": 12.5,
+        "energy_by_layer": (0.6, 0.3, 0.1),
+        "profiles": (
+            FieldProfile(
+                field="u",
+                heights_m=(10.0, 40.0, 90.0),
+                amplitude=(0.5, 0.25, 0.125),
+                phase_rad=(0.0, 1.5, -1.5),
+            ),
+            FieldProfile(
+                field="theta", heights_m=(20.0, 60.0), amplitude=(0.02, 0.01), phase_rad=(0.5, 0.25)
+            ),
+        ),
     }
     return Bites(**{**values, **changes})
 
@@ -62,6 +74,27 @@ def limit(**changes):
         ),
         "windows": (Window(from_s=30.0, to_s=31.5),),
         "path": "tridiagonal",
+        "cause": "explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 km",
+        "stable_step_by_air": tuple(
+            StepOfAir(air=name, stable_step_s=step_s, unbounded=step_s is None)
+            for name, step_s in (("standard", 27.5), ("hot", None))
+        ),
+        "counterfactuals": (
+            Counterfactual(
+                terms=("horizontal-divergence",),
+                change="implicit",
+                stable_step_s=55.0,
+                unbounded=False,
+                gain=2.0,
+            ),
+            Counterfactual(
+                terms=("horizontal-pressure-gradient", "horizontal-divergence"),
+                change="absent",
+                stable_step_s=None,
+                unbounded=True,
+                gain=None,
+            ),
+        ),
     }
     return Limit(**{**values, **changes})
 
@@ -78,6 +111,8 @@ def unbounded(**changes):
             "growth_per_step": None,
             "explicit_share": None,
             "windows": (),
+            "cause": None,
+            "counterfactuals": (),
             **changes,
         }
     )
