@@ -18,7 +18,7 @@ from .wording import headroom, number, percent, step
 _BITES: Final = (
     "wavenumber_per_m", "growth_per_s", "kind", "layer_lowest", "layer_highest", "bottom_m",
     "top_m", "wavelength_layers", "wavelength_m", "period_s", "shortest_horizontal",
-    "shortest_vertical", "along_diagonal",
+    "steepest_horizontal", "shortest_vertical", "along_diagonal",
 )  # fmt: skip
 _COLUMNS: Final = (
     "tableau", "split", "advised_step_s", "advised_step_fraction", "stable_step_s", "unbounded",

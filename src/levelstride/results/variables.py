@@ -82,10 +82,16 @@ _BITES: Final = (
     ("top_m", "m", "height above ground of the top of what bites", "float"),
     ("wavelength_layers", "1", "vertical wavelength in layers of what bites", "float"),
     ("shortest_horizontal", "1", "whether what bites is the shortest horizontal wave", "flag"),
+    ("steepest_horizontal", "1", "whether what bites has the largest gradient", "flag"),
     ("shortest_vertical", "1", "whether what bites alternates from layer to layer", "flag"),
     ("along_diagonal", "1", "whether what bites lies along the diagonal of the grid", "flag"),
 )
-_FLAGS: Final = ("shortest_horizontal", "shortest_vertical", "along_diagonal")
+_FLAGS: Final = (
+    "shortest_horizontal",
+    "steepest_horizontal",
+    "shortest_vertical",
+    "along_diagonal",
+)
 _FIELD_UNITS: Final = {"theta": "K", "pi": "1"}
 _INDEX_OF: Final = "row that this {} belongs to"
 
