@@ -145,9 +145,9 @@ class TestLimit:
             "cause: shear",
             "dense eigenvalues",
             "explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 km",
-            "standard binds, hot by itself unlimited (up to 110 s)",
+            "standard binds, hot by itself above 550 s",
             "horizontal divergence 55 -",
-            "horizontal sound terms - no limit",
+            "horizontal sound terms - > 550",
             "0 10 60 % 0.5 0.02",
             "2 90 10 % 0.12 -",
         ):

@@ -76,7 +76,7 @@ def limit(**changes):
         "path": "tridiagonal",
         "cause": "explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 km",
         "stable_step_by_air": tuple(
-            StepOfAir(air=name, stable_step_s=step_s, unbounded=step_s is None)
+            StepOfAir(air=name, stable_step_s=step_s, unbounded=step_s is None, scanned_to_s=550.0)
             for name, step_s in (("standard", 27.5), ("hot", None))
         ),
         "counterfactuals": (
@@ -86,6 +86,7 @@ def limit(**changes):
                 stable_step_s=55.0,
                 unbounded=False,
                 gain=2.0,
+                scanned_to_s=550.0,
             ),
             Counterfactual(
                 terms=("horizontal-pressure-gradient", "horizontal-divergence"),
@@ -93,6 +94,7 @@ def limit(**changes):
                 stable_step_s=None,
                 unbounded=True,
                 gain=None,
+                scanned_to_s=550.0,
             ),
         ),
     }

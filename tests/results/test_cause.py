@@ -14,13 +14,13 @@ BITES = records.bites(shortest_horizontal=True, along_diagonal=True)
 
 def what_if(terms, change, gain):
     terms = terms if isinstance(terms, tuple) else (terms,)
-    if gain is None:
-        return Counterfactual(
-            terms=terms, change=change, stable_step_s=None, unbounded=True, gain=None
-        )
-    step_s = 5.0 * gain or None
     return Counterfactual(
-        terms=terms, change=change, stable_step_s=step_s, unbounded=False, gain=gain or None
+        terms=terms,
+        change=change,
+        stable_step_s=5.0 * gain if gain else None,
+        unbounded=gain is None,
+        gain=gain or None,
+        scanned_to_s=100.0,
     )
 
 
@@ -53,7 +53,7 @@ def test_what_one_partner_does_by_itself_is_told():
         what_if(HORIZONTAL, "implicit", None),
     ) == (
         f"explicit horizontal sound terms, {WHERE}; with the horizontal sound terms implicit the "
-        "step would be unlimited (up to 110 s) (a solve that couples columns), with the "
+        "step would be above 100 s (a solve that couples columns), with the "
         "horizontal divergence alone implicit 9 s"
     )
 

@@ -123,7 +123,7 @@ def test_text_names_step_splitting_tableau_reason_headroom_hash_and_caution():
         "tableau:   ARS(2,3,2)",
         "reason:    spectrum: sound wave of 6.0 km, layers 0-3 (0-140 m)",
         "; cause of the limit: explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 "
-        "km; air: standard binds, hot by itself unlimited (up to 110 s)",
+        "km; air: standard binds, hot by itself above 550 s",
         "headroom:  87 % of the stable step 27.5 s",
         "91 % of the strict step 26.25 s",
         "it carries, each by itself: slope to 0.25 (now 0.1), wind beyond 200 m/s (now 0)",

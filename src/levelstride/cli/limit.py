@@ -24,13 +24,13 @@ def limit(
         float | None,
         Parameter(help="Tolerated e-folding time [s]; that of the column file by default."),
     ] = None,
-    what_if: Annotated[
+    no_what_if: Annotated[
         bool,
         Parameter(
-            help="Search as well the step with every explicit term implicit or absent, and of "
-            "every air state by itself."
+            help="Leave out what takes most of the time: the step with every explicit term "
+            "implicit or absent, and of every air state by itself."
         ),
-    ] = True,
+    ] = False,
     json: Json = False,
 ) -> None:
     """Find the longest stable step of one tableau and splitting, and what bites first."""
@@ -48,7 +48,9 @@ def limit(
         raise InputError(f"--efolding {efolding:g}: must be a time above 0 [s]")
     prepare_kernels()
     with progress(f"{read.title}: {tableau} with {split or 'its [split]'}"):
-        found = find_limit(read, tableau=tableau, split=split, efolding_s=efolding, what_if=what_if)
+        found = find_limit(
+            read, tableau=tableau, split=split, efolding_s=efolding, what_if=not no_what_if
+        )
     if json:
         sys.stdout.write(to_json(found))
     else:

@@ -106,9 +106,11 @@ class Counterfactual:
         Stable step then [s]; None with ``unbounded`` if nothing bites, None without it if no step
         is stable.
     unbounded : bool
-        Whether nothing bites then.
+        Whether nothing bites then up to ``scanned_to_s``.
     gain : float or None
         That step over the stable step [1]; None where there is no such step.
+    scanned_to_s : float
+        Longest step scanned [s].
     """
 
     terms: tuple[str, ...]
@@ -116,6 +118,7 @@ class Counterfactual:
     stable_step_s: float | None
     unbounded: bool
     gain: float | None
+    scanned_to_s: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -130,9 +133,12 @@ class StepOfAir:
         Stable step [s]; None with ``unbounded`` if nothing bites, None without it if no step is
         stable.
     unbounded : bool
-        Whether nothing bites.
+        Whether nothing bites up to ``scanned_to_s``.
+    scanned_to_s : float
+        Longest step scanned [s].
     """
 
     air: str
     stable_step_s: float | None
     unbounded: bool
+    scanned_to_s: float

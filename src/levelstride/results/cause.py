@@ -5,7 +5,7 @@ from typing import Final
 
 from .biting import Bites, Change, Counterfactual, StepOfAir
 from .dataset import AdviceRow, Limit
-from .wording import kind_name, layers, metres, number, step
+from .wording import kind_name, layers, metres, step
 
 MATTERS: Final = 1.01
 """Gain from which a change of terms counts as one."""
@@ -45,7 +45,8 @@ def cause(limit: Limit) -> str | None:
     ... )
     >>> slope = ("slope-pressure-gradient", "slope-divergence")
     >>> implicit = Counterfactual(
-    ...     terms=slope, change="implicit", stable_step_s=7.9, unbounded=False, gain=1.6
+    ...     terms=slope, change="implicit", stable_step_s=7.9, unbounded=False, gain=1.6,
+    ...     scanned_to_s=100.0,
     ... )
     >>> cause(Limit(
     ...     tableau="ARS(2,3,2)", split="sound", stable_step_s=5.0, unbounded=False,
@@ -107,18 +108,18 @@ def name_of_terms(terms: tuple[str, ...]) -> str:
     return _PAIRS.get(terms) or " and ".join(term.replace("-", " ") for term in terms)
 
 
-def would_be(one: Counterfactual | StepOfAir, scanned_to_s: float) -> str:
+def would_be(one: Counterfactual | StepOfAir) -> str:
     """Say what the step would be.
 
     Examples
     --------
-    >>> would_be(StepOfAir(air="cold", stable_step_s=4.56789, unbounded=False), 1e4)
+    >>> would_be(StepOfAir(air="", stable_step_s=4.56789, unbounded=False, scanned_to_s=91.0))
     '4.56 s'
-    >>> would_be(StepOfAir(air="cold", stable_step_s=None, unbounded=True), 1e4)
-    'unlimited (up to 10000 s)'
+    >>> would_be(StepOfAir(air="", stable_step_s=None, unbounded=True, scanned_to_s=91.0))
+    'above 91 s'
     """
     if one.unbounded:
-        return f"unlimited (up to {number(scanned_to_s)} s)"
+        return f"above {step(one.scanned_to_s, 3)} s"
     return "nil" if one.stable_step_s is None else f"{step(one.stable_step_s, 3)} s"
 
 
@@ -136,7 +137,7 @@ def airs(limit: Limit) -> str:
         Just the name of an only one; empty if none binds.
     """
     others = [
-        f"{one.air} by itself {would_be(one, limit.scanned_to_s)}"
+        f"{one.air} by itself {would_be(one)}"
         for one in limit.stable_step_by_air
         if one.air != limit.air
     ]
@@ -166,7 +167,7 @@ def reason_and_cause(row: AdviceRow) -> str:
 
 def step_in_table(one: Counterfactual | StepOfAir) -> str:
     """Write a step for a table [s]."""
-    return "no limit" if one.unbounded else step(one.stable_step_s)
+    return f"> {step(one.scanned_to_s, 3)}" if one.unbounded else step(one.stable_step_s)
 
 
 def wave_on_grid(bites: Bites) -> str:
@@ -210,7 +211,7 @@ def _remedy(limit: Limit, terms: tuple[str, ...]) -> str:
         """What the step would be; nothing where that was not asked or gains no more."""
         found = (c for c in limit.counterfactuals if c.terms == terms and c.change == change)
         one = next((c for c in found if _gain(c) >= most), None)
-        return "" if one is None else would_be(one, limit.scanned_to_s)
+        return "" if one is None else would_be(one)
 
     named = name_of_terms(terms)
     if terms == _REFERENCE:
@@ -223,7 +224,7 @@ def _remedy(limit: Limit, terms: tuple[str, ...]) -> str:
     single = [c for c in limit.counterfactuals if c.change == "implicit" and c.terms[0] in terms]
     best = max((c for c in single if len(c.terms) < len(terms)), key=_gain, default=None)
     if best is not None and _gain(best) >= MATTERS:
-        reached = would_be(best, limit.scanned_to_s)
+        reached = would_be(best)
         parts.append(f"with the {name_of_terms(best.terms)} alone implicit {reached}")
     if not parts:
         parts.append(f"without the {named} the step would be {then(terms, 'absent')}")

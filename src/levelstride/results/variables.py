@@ -271,6 +271,7 @@ def _ragged(rows: Sequence[AdviceRow]) -> list[Variable]:
                 ("air", "", "air state by itself", "text"),
                 ("stable_step_s", "s", "stable step of this air state", "float"),
                 ("unbounded", "1", "whether nothing bites in this air state", "flag"),
+                ("scanned_to_s", "s", "longest step scanned in this air state", "float"),
             ),
         ),
         (
@@ -282,6 +283,7 @@ def _ragged(rows: Sequence[AdviceRow]) -> list[Variable]:
                 ("stable_step_s", "s", "stable step then", "float"),
                 ("unbounded", "1", "whether nothing bites then", "flag"),
                 ("gain", "1", "stable step then over the stable step", "float"),
+                ("scanned_to_s", "s", "longest step scanned then", "float"),
             ),
         ),
     )

@@ -14,13 +14,16 @@ from levelstride.results.dataset import Limit
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
-from levelstride.stability.verdict import ColumnVerdict, StableStep
+from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import wave_terms
 from levelstride.studies.what_bites import binding_air
 from levelstride.tableaux.tableau import Tableau
 
 REFERENCE = "reference-state"
 """Stands for a term: what the implicit terms on the air have beyond those on the reference."""
+
+FAR = 20.0
+"""Multiple of the stable step up to which others are sought: beyond it nobody wants to know."""
 
 Terms = tuple[str, ...]
 
@@ -42,6 +45,13 @@ class AsItIs:
     step_s: float | None
     kappa: float | None
     air: str
+
+    @property
+    def far_s(self) -> float:
+        """Longest step of interest [s]."""
+        if self.step_s is None:
+            return LONGEST_STEP_S
+        return min(LONGEST_STEP_S, FAR * self.step_s)
 
 
 def ask_what_if(
@@ -121,9 +131,13 @@ def _counterfactuals(
     for terms, change in _changes(column, splitting, tableau):
         changed, treated = _changed(column, splitting, terms, change)
         step, unbounded = _step(changed, treated, tableau, tolerance, known)
-        gain = None if step is None else step / known.step_s
         yield Counterfactual(
-            terms=terms, change=change, stable_step_s=step, unbounded=unbounded, gain=gain
+            terms=terms,
+            change=change,
+            stable_step_s=step,
+            unbounded=unbounded,
+            gain=None if step is None else step / known.step_s,
+            scanned_to_s=known.far_s,
         )
 
 
@@ -137,7 +151,9 @@ def _steps_by_air(
         if air.name != known.air and not unbounded:
             alone = replace(column, airs=(air,))
             step, unbounded = _step(alone, splitting, tableau, tolerance, known)
-        yield StepOfAir(air=air.name, stable_step_s=step, unbounded=unbounded)
+        yield StepOfAir(
+            air=air.name, stable_step_s=step, unbounded=unbounded, scanned_to_s=known.far_s
+        )
 
 
 def explicit_groups(column: Column, splitting: Splitting) -> list[Terms]:
@@ -215,7 +231,7 @@ def _step(
     The waves are those of the sample and the one that binds as things are, so that a change that
     does not matter leaves the step as it is.
     """
-    verdict = ColumnVerdict(column, splitting, tableau)
+    verdict = ColumnVerdict(column, splitting, tableau, known.far_s)
     if known.kappa is not None:
         extra = known.kappa
         verdict.search.kappas = [sorted({*kappas, extra}) for kappas in verdict.search.kappas]
