@@ -2,7 +2,9 @@ import json
 
 import pytest
 
+import levelstride.studies.advise
 import levelstride.studies.calibrate as study
+from examples import records
 from levelstride.column.observations import read_observations
 from levelstride.errors import InputError
 from levelstride.results.wording import CAUTION
@@ -128,6 +130,47 @@ class TestCalibrate:
         code, _, err = run("calibrate", tiny, "--held", "3", "--tableau", "ars232")
         assert code == 2
         assert "[split]" in err
+
+
+class TestAdviseByCalibration:
+    @pytest.fixture(name="asked")
+    def _asked(self, monkeypatch):
+        asked = []
+
+        def advise_plan(plan, **_):
+            asked.append(plan)
+            return records.advice()
+
+        monkeypatch.setattr(levelstride.studies.advise, "advise_plan", advise_plan)
+        return asked
+
+    @pytest.fixture(name="seen")
+    def _seen(self, run, tiny, tmp_path):
+        seen = tmp_path / "seen.json"
+        run("calibrate", tiny, "--held", 3, "--vary", "slope", "--out", seen, *METHOD)
+        return seen
+
+    def test_the_factor_takes_the_place_of_safety(self, run, tiny, seen, asked):
+        code, out, err = run("advise", tiny, "--calibration", seen, "--workers", 1)
+        assert (code, err) == (0, "")
+        assert "Its step carries, each by itself: slope to 0.25 (now 0.1)" in " ".join(out.split())
+        (plan,) = asked
+        assert plan.safety("ARS(2,3,2)", "sound") == 0.75
+        assert plan.safety("ARS(2,3,3)", "sound+buoyancy") == 0.75
+
+    def test_other_tolerances_are_refused(self, run, tiny, seen, asked):
+        tiny.write_text(tiny.read_text().replace("[advice]", "[advice]\nefolding_s = 3600.0"))
+        code, _, err = run("advise", tiny, "--calibration", seen)
+        assert (code, len(err.splitlines())) == (2, 1)
+        assert "efolding_s = 86400" in err
+        assert not asked
+
+    def test_a_file_that_is_none_is_refused(self, run, tiny, asked):
+        for path, words in ((tiny, "is no calibration file"), ("none.json", "cannot be read")):
+            code, _, err = run("advise", tiny, "--calibration", path)
+            assert (code, len(err.splitlines())) == (2, 1)
+            assert words in err
+        assert not asked
 
 
 @pytest.mark.parametrize(

@@ -70,7 +70,8 @@ def _gap(found: Calibration) -> str:
         return f"{text}; it agrees as well with {named}" if explaining else text
     if not explaining:
         return "the observations contradict every assumption that was varied, each by itself"
-    return f"the gap is explained by {named}, each by itself"
+    each = ", each by itself" if len(explaining) > 1 else ""
+    return f"the gap is explained by {named}{each}"
 
 
 def _factor(found: Calibration) -> str:

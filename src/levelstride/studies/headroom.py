@@ -44,7 +44,7 @@ LEAST: Final = 1000.0
 """The smallest value tried where the column has none, as a divisor of the first."""
 
 COARSE: Final = 3
-"""While values are doubled or halved, only every so manieth wave is asked."""
+"""While values are doubled or halved, only one sampled wave in so many is asked."""
 
 REMEMBERED: Final = 3
 """Columns that are kept for another look."""

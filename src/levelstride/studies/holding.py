@@ -174,7 +174,7 @@ class StepQuestion:
         return None
 
     def holds(self, trial: Trial, every: int = 1) -> bool:
-        """Ask the frozen rows and the sampled waves, or every so manieth, at the very step."""
+        """Ask the frozen rows and one sampled wave in ``every``, at the very step."""
         if self.refusal(trial) is not None:
             return False
         for look in _looks(trial, every):
