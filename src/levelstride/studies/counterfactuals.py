@@ -12,6 +12,7 @@ from levelstride.results.biting import Change, Counterfactual, StepOfAir
 from levelstride.results.cause import cause
 from levelstride.results.dataset import Limit
 from levelstride.splitting.splitting import Splitting
+from levelstride.stability.courant import rows_hold
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableStep
@@ -24,6 +25,12 @@ REFERENCE = "reference-state"
 
 FAR = 20.0
 """Multiple of the stable step up to which others are sought: beyond it nobody wants to know."""
+
+BEYOND = 1.002
+"""Multiple of the stable step at which it is lost for certain, the bisection being to 0.1 %."""
+
+SHARES = (1.0, 0.9, 0.75, 0.5, 0.25)
+"""Shares of the stable step at which every wave is looked at where nothing is gained."""
 
 Terms = tuple[str, ...]
 
@@ -235,8 +242,32 @@ def _step(
     if known.kappa is not None:
         extra = known.kappa
         verdict.search.kappas = [sorted({*kappas, extra}) for kappas in verdict.search.kappas]
+    if known.step_s is not None and _stays(verdict, known.step_s, known.kappa, tolerance):
+        return known.step_s, False
     try:
         step = verdict.stable_step(tolerance, refine=False).step_s
     except CalculationError:
         return None, False
     return step, step is None
+
+
+def _stays(
+    verdict: ColumnVerdict, step_s: float, kappa: float | None, tolerance: Tolerance
+) -> bool:
+    """Whether the stable step is the same: lost just beyond it as before, and kept up to it."""
+    airs = range(len(verdict.column.airs))
+
+    def rows_hold_at(dt: float) -> bool:
+        return all(
+            rows_hold(verdict.column, air, verdict.splitting, verdict.tableau, tolerance.rate, dt)
+            for air in verdict.column.airs
+        )
+
+    beyond = BEYOND * step_s
+    binding = [] if kappa is None else [verdict.problem(air, kappa) for air in airs]
+    if all(one.stable(beyond, tolerance) for one in binding) and rows_hold_at(beyond):
+        return False
+    if not rows_hold_at(step_s):
+        return False
+    waves = verdict.search.problems()
+    return all(one.stable(share * step_s, tolerance) for share in SHARES for one in waves)
