@@ -41,7 +41,7 @@ def item(of):
 
 def test_a_slope_that_the_file_has_too_small_is_found(monkeypatch):
     monkeypatch.setattr(assumptions, "FACTORS", (1.0, 2.0, 4.0))
-    monkeypatch.setattr(study, "EDGE", 1.1)
+    monkeypatch.setattr(study, "EDGE", 1.2)
     small = {
         "levels": {"kind": "geometric", "layers": 3, "top_m": 8000.0, "lowest_layer_m": 200.0},
         "horizontal": {"grid_spacing_m": 1000.0, "directions": 1},
