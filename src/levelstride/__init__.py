@@ -22,11 +22,17 @@ if TYPE_CHECKING:
     from levelstride.column.level_report import level_report
     from levelstride.column.read import build, load
     from levelstride.errors import CalculationError, InputError
+    from levelstride.results.calibration import Calibration
     from levelstride.results.dataset import Advice, AdviceRow, Limit
     from levelstride.results.files import write_advice
+    from levelstride.results.headroom import Headroom
+    from levelstride.results.stretching import Stretch
     from levelstride.studies.advise import advise
+    from levelstride.studies.calibrate import Observed, calibrate
+    from levelstride.studies.headroom import headroom
     from levelstride.studies.limit import limit
     from levelstride.studies.plan import CurrentConfiguration
+    from levelstride.studies.stretch import stretch
 
 __version__ = "0.1.0"
 
@@ -34,15 +40,22 @@ __all__ = [
     "Advice",
     "AdviceRow",
     "CalculationError",
+    "Calibration",
     "Column",
     "CurrentConfiguration",
+    "Headroom",
     "InputError",
     "Limit",
+    "Observed",
+    "Stretch",
     "advise",
     "build",
+    "calibrate",
+    "headroom",
     "level_report",
     "limit",
     "load",
+    "stretch",
     "write_advice",
 ]
 
@@ -50,15 +63,22 @@ _HOMES = {
     "Advice": "results.dataset",
     "AdviceRow": "results.dataset",
     "CalculationError": "errors",
+    "Calibration": "results.calibration",
     "Column": "column.column",
     "CurrentConfiguration": "studies.plan",
+    "Headroom": "results.headroom",
     "InputError": "errors",
     "Limit": "results.dataset",
+    "Observed": "studies.calibrate",
+    "Stretch": "results.stretching",
     "advise": "studies.advise",
     "build": "column.read",
+    "calibrate": "studies.calibrate",
+    "headroom": "studies.headroom",
     "level_report": "column.level_report",
     "limit": "studies.limit",
     "load": "column.read",
+    "stretch": "studies.stretch",
     "write_advice": "results.files",
 }
 

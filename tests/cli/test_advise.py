@@ -143,6 +143,7 @@ class TestLimit:
             "split": "sound+buoyancy",
             "efolding_s": 3600.0,
             "certify": False,
+            "what_if": True,
         }
         for text in (
             "27.5 s",
@@ -154,6 +155,12 @@ class TestLimit:
             "30 to 31.5 s",
             "cause: shear",
             "dense eigenvalues",
+            "explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 km",
+            "standard binds, hot by itself above 550 s",
+            "horizontal divergence 55 -",
+            "horizontal sound terms - > 550",
+            "0 10 60 % 0.5 0.02",
+            "2 90 10 % 0.12 -",
         ):
             assert text in " ".join(out.split())
 
@@ -172,6 +179,11 @@ class TestLimit:
         assert plain["breaks_above"] == "spectrum"
         assert plain["waves"][1]["growth_below_per_s"] is None
         assert "certificate" not in run(*words[:-1])[1]
+
+    def test_what_if_can_be_left_out(self, run, tiny, asked):
+        words = ("--tableau", "ars232", "--split", "sound", "--no-what-if")
+        assert run("limit", tiny, *words)[0] == 0
+        assert asked["what_if"] is False
 
     def test_a_limit_that_never_bites(self, run, tiny, asked):
         words = ("limit", tiny, "--tableau", "ars232", "--split", "all-implicit")

@@ -14,6 +14,7 @@ import psutil
 import pytest
 
 from levelstride.results.kept import KeptItems
+from levelstride.studies.best_row import PARTS
 
 CODE = "import sys; from levelstride.cli import main; sys.exit(main())"
 KEEP = """\
@@ -148,7 +149,7 @@ def test_control_c_says_how_to_go_on_and_the_same_command_does(columns, tmp_path
     first, second = complaints.splitlines()
     assert first == "levelstride: interrupted"
     assert second.endswith("are kept in advice/kept; the same command goes on from there")
-    assert " of 8 pairs of tableau and splitting " in second
+    assert f" of {2 * (4 + PARTS)} parts of the work " in second
     wait_until_gone(process.pid)
     check_readable(out)
     process = begin("advise", columns, "--workers", 2, "--json", folder=tmp_path)
@@ -204,7 +205,7 @@ class TestManyColumns:
         assert code == 0
         names = [one["name"] for one in json.loads(shown)["columns"]]
         assert names == ["columns-column_6", "other-column_6"]
-        assert len(kept_files(tmp_path / "here" / "advice")) == 2
+        assert len(kept_files(tmp_path / "here" / "advice")) == 2 + PARTS
 
     def test_mistakes_of_the_command_come_once_and_write_nothing(self, run, columns, tmp_path):
         for words, line in (

@@ -2,10 +2,11 @@
 
 from dataclasses import asdict, fields
 
+from levelstride.results.biting import Bites, Counterfactual, FieldProfile, StepOfAir
+from levelstride.results.calibration import SafetyFactor
 from levelstride.results.dataset import (
     Advice,
     AdviceRow,
-    Bites,
     Certificate,
     CertifiedWave,
     ColumnSummary,
@@ -17,6 +18,7 @@ from levelstride.results.dataset import (
     StepAtTolerance,
     Window,
 )
+from levelstride.results.headroom import UNITS, Headroom, Room
 from levelstride.results.wording import CAUTION
 
 
@@ -34,6 +36,18 @@ def bites(**changes):
         "wavelength_layers": 2.5,
         "wavelength_m": 6000.0,
         "period_s": 12.5,
+        "energy_by_layer": (0.6, 0.3, 0.1),
+        "profiles": (
+            FieldProfile(
+                field="u",
+                heights_m=(10.0, 40.0, 90.0),
+                amplitude=(0.5, 0.25, 0.125),
+                phase_rad=(0.0, 1.5, -1.5),
+            ),
+            FieldProfile(
+                field="theta", heights_m=(20.0, 60.0), amplitude=(0.02, 0.01), phase_rad=(0.5, 0.25)
+            ),
+        ),
     }
     return Bites(**{**values, **changes})
 
@@ -90,6 +104,29 @@ def limit(**changes):
         ),
         "windows": (Window(from_s=30.0, to_s=31.5),),
         "path": "tridiagonal",
+        "cause": "explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 km",
+        "stable_step_by_air": tuple(
+            StepOfAir(air=name, stable_step_s=step_s, unbounded=step_s is None, scanned_to_s=550.0)
+            for name, step_s in (("standard", 27.5), ("hot", None))
+        ),
+        "counterfactuals": (
+            Counterfactual(
+                terms=("horizontal-divergence",),
+                change="implicit",
+                stable_step_s=55.0,
+                unbounded=False,
+                gain=2.0,
+                scanned_to_s=550.0,
+            ),
+            Counterfactual(
+                terms=("horizontal-pressure-gradient", "horizontal-divergence"),
+                change="absent",
+                stable_step_s=None,
+                unbounded=True,
+                gain=None,
+                scanned_to_s=550.0,
+            ),
+        ),
     }
     return Limit(**{**values, **changes})
 
@@ -106,9 +143,44 @@ def unbounded(**changes):
             "growth_per_step": None,
             "explicit_share": None,
             "windows": (),
+            "cause": None,
+            "counterfactuals": (),
             **changes,
         }
     )
+
+
+def room(column=None, quantity="slope", **_):
+    values = {"present": 0.1, "carried": 0.25, "lost": 0.2512, "criterion": "spectrum"}
+    if quantity == "wind_m_per_s":
+        values = {"present": 0.0, "unbounded": True, "tried_to": 200.0}
+    if quantity == "updraft_m_per_s":
+        values = {"present": 0.0, "reason": "made up"}
+    return Room(quantity=quantity, **values)
+
+
+def headroom(**changes):
+    values = {
+        "tableau": "ARS(2,3,2)",
+        "split": "sound+buoyancy",
+        "step_s": 24.0,
+        "efolding_s": 86400.0,
+        "rooms": tuple(room(quantity=quantity) for quantity in UNITS),
+        "certified": "made up",
+    }
+    return Headroom(**{**values, **changes})
+
+
+def safety_factor(**changes):
+    values = {
+        "tableau": "ARS(2,3,2)",
+        "split": "sound",
+        "efolding_s": 86400.0,
+        "transient_limit": 1000.0,
+        "lower": 0.8,
+        "upper": None,
+    }
+    return SafetyFactor(**{**values, **changes})
 
 
 def row(of=None, **changes):
@@ -126,6 +198,7 @@ def row(of=None, **changes):
         "binding": "spectrum: sound wave of 6.0 km, layers 0-3 (0-140 m)",
         "frequency_error": 0.002,
         "amplitude_change_per_period": -0.011,
+        "safety": 0.9,
     }
     inherited = {field.name: getattr(of, field.name) for field in fields(Limit)}
     return AdviceRow(**{**inherited, **values, **changes})
@@ -151,7 +224,7 @@ def advice(**changes):
             interfaces_m=(0.0, 20.0, 60.0, 120.0),
         ),
         "intervals_s": (600.0, 3600.0),
-        "rows": (row(), row(unbounded(split="all-implicit")), without_step()),
+        "rows": (row(headroom=headroom()), row(unbounded(split="all-implicit")), without_step()),
         "best": 0,
         "current": CurrentStep(
             step_s=22.9,

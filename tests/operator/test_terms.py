@@ -1,5 +1,7 @@
 """Every term against its slow twin, and the energy the partner pairs must keep."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -64,6 +66,17 @@ def test_undamped_windless_operator_conserves_the_energy(seed):
     change = np.vdot(weights * state, tendency).real
     size = np.sqrt(weights) @ np.abs(tendency) * np.sqrt(weights @ np.abs(state) ** 2)
     assert abs(change) <= 1e-13 * size
+
+
+def test_terms_that_are_left_out_are_zero_and_the_others_stay():
+    column = random_column(5, everything=True)
+    air, wave, gone = column.airs[0], random_wave(5, column), {"buoyancy", "slope-divergence"}
+    whole = assemble(column, air, wave)
+    parts = assemble(replace(column, left_out=frozenset(gone)), air, wave)
+    assert list(parts) == list(CATALOGUE)
+    for name, matrix in parts.items():
+        expected = 0.0 if name in gone else 1.0
+        np.testing.assert_array_equal(matrix.to_dense(), expected * whole[name].to_dense())
 
 
 def test_pairs_of_the_catalogue_name_each_other():

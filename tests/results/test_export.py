@@ -65,6 +65,13 @@ def test_json_never_holds_a_number_that_is_not_finite(value):
     assert set(back) == {"value"}
 
 
+def test_lists_of_numbers_stand_on_one_line():
+    text = to_json({"profile": [1.5, None, -2e-30], "name": "[\n 1\n]", "rows": [{"of": [3]}]})
+    assert '"profile": [ 1.5, null, -2e-30 ],' in text
+    assert '"of": [ 3 ]' in text
+    assert json.loads(text)["name"] == "[\n 1\n]"
+
+
 def test_numbers_come_back_from_json_exactly():
     step = math.pi * 7
     assert json.loads(to_json({"stable_step_s": step}))["stable_step_s"] == step
@@ -74,11 +81,17 @@ def test_csv_has_one_line_per_row_and_nothing_for_nothing():
     lines = list(csv.DictReader(io.StringIO(to_csv(records.advice()))))
     assert [line["split"] for line in lines] == ["sound+buoyancy", "all-implicit", "sound"]
     assert lines[0]["bites_kind"] == "sound"
+    assert lines[0]["bites_shortest_horizontal"] == "false"
+    assert lines[0]["cause"].startswith("explicit horizontal divergence, ")
+    assert not [name for name in lines[0] if "profile" in name or "energy_by" in name]
     assert lines[0]["steps_per_600_s"] == "25"
     assert lines[0]["stable_step_s_efolding_3600_s"] == "28.0"
     assert lines[1]["stable_step_s"] == ""
     assert lines[1]["unbounded"] == "true"
     assert lines[2]["advised_step_s"] == ""
+    assert lines[0]["headroom_slope"] == "0.25"
+    assert (lines[0]["headroom_wind_m_per_s"], lines[1]["headroom_slope"]) == ("", "")
+    assert lines[0]["headroom_wind_m_per_s_tried_to"] == "200.0"
     assert "None" not in to_csv(records.advice())
 
 
@@ -109,8 +122,12 @@ def test_text_names_step_splitting_tableau_reason_headroom_hash_and_caution():
         "splitting: sound+buoyancy implicit",
         "tableau:   ARS(2,3,2)",
         "reason:    spectrum: sound wave of 6.0 km, layers 0-3 (0-140 m)",
+        "; cause of the limit: explicit horizontal divergence, layers 0-3 (0-140 m), wave of 6.0 "
+        "km; air: standard binds, hot by itself above 550 s",
         "headroom:  87 % of the stable step 27.5 s",
         "91 % of the strict step 26.25 s",
+        "it carries, each by itself: slope to 0.25 (now 0.1), wind beyond 200 m/s (now 0)",
+        "updraft unknown (now 0)",
         "sha256 " + "ab" * 32,
         "no wind was given, the limit is for air at rest",
         "confirm the step in the full model",

@@ -67,7 +67,28 @@ def test_values_come_back(tmp_path):
         assert list(data["window_row"].values) == [0, 2]
         assert list(data["own_growth_cause"].values) == ["shear"] * 3
         assert list(data["bites_layer_highest"].values) == [3, -1, 3]
+        assert data["cause"].values[0].startswith("explicit horizontal divergence")
+        assert list(data["bites_energy_by_layer"].sel(row=0).values) == [0.6, 0.3, 0.1]
+        assert float(data["bites_u_amplitude"].sel(row=0, layer=40.0)) == 0.25
+        assert data["bites_u_amplitude"].attrs["units"] == "m s-1"
+        theta = data["bites_theta_phase_rad"].sel(row=0)
+        assert list(theta.sel(interior_interface=[20.0, 60.0]).values) == [0.5, 0.25]
+        assert np.isnan(data["bites_u_amplitude"].sel(row=1)).all()
+        assert list(data["bites_along_diagonal"].values) == [0, 0, 0]
+        assert list(data["what_if_row"].values) == [0, 0, 2, 2]
+        assert data["what_if_terms"].values[1] == (
+            "horizontal-pressure-gradient+horizontal-divergence"
+        )
+        assert list(data["what_if_change"].values[:2]) == ["implicit", "absent"]
+        assert float(data["what_if_stable_step_s"].values[0]) == 55.0
+        assert list(data["by_air_air"].values[:2]) == ["standard", "hot"]
+        assert list(data["by_air_unbounded"].values[:2]) == [0, 1]
         assert data.attrs["best"] == 0
+        assert data["headroom_slope"].values[0] == 0.25
+        assert np.isnan(data["headroom_slope"].values[1:]).all()
+        assert np.isnan(data["headroom_wind_m_per_s"].values[0])
+        assert data["headroom_wind_m_per_s_tried_to"].values[0] == 200.0
+        assert data["headroom_wind_m_per_s"].attrs["units"] == "m s-1"
         assert data.attrs["current_verdict"] == "your step is at 83 % of the limit"
 
 

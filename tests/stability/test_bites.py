@@ -89,6 +89,9 @@ def test_the_wavelength_in_layers(field, period):
     state[places, 0] = np.exp(2j * np.pi / period * np.arange(places.size))
     where = anatomy(problem, state / np.linalg.norm(state))
     assert where.wavelength_layers == pytest.approx(period, rel=0.03)
+    assert where.alternates == (period == 2)
+    assert where.energy_by_layer.shape == (24,)
+    assert where.energy_by_layer.sum() == pytest.approx(1.0)
     assert where.energy_share[field] == pytest.approx(1.0)
 
 
@@ -132,6 +135,12 @@ def test_the_critical_state_is_invariant_and_grows_at_the_rate_it_says(staggerin
     assert np.linalg.norm(outside) < 1e-8
     assert state.growth_per_s == pytest.approx(problem.growth(dt), rel=1e-9)
     assert state.growth_per_s > problem.rate(TOLERANCE)
+    # the state that is drawn is one of them, and grows fastest
+    assert np.linalg.norm(state.vector) == pytest.approx(1.0)
+    inside = state.basis @ (state.basis.conj().T @ state.vector)
+    np.testing.assert_allclose(inside, state.vector, atol=1e-8)
+    stepped = problem.matrix(dt) @ state.vector
+    assert np.log(np.linalg.norm(stepped)) / dt == pytest.approx(state.growth_per_s, rel=1e-6)
 
 
 def test_where_only_a_transient_breaks_the_most_amplified_state_is_taken():
@@ -146,6 +155,7 @@ def test_where_only_a_transient_breaks_the_most_amplified_state_is_taken():
     state = critical_state(problem, step, TOLERANCE)
     assert state.basis.shape == (problem.parts.layout.size, 1)
     assert np.linalg.norm(state.basis) == pytest.approx(1.0)
+    np.testing.assert_array_equal(state.vector, state.basis[:, 0])
     assert state.growth_per_s > problem.rate(TOLERANCE)
     where = anatomy(problem, state.basis)
     assert sum(where.energy_share.values()) == pytest.approx(1.0)

@@ -1,5 +1,7 @@
 """Frozen rows of transport and mixing: which one binds, and how it is treated."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -30,6 +32,22 @@ def limit_of(column, split="sound", tableau="ARS(2,3,3)"):
 
 def test_air_at_rest_has_none():
     assert limit_of(column_of(), "all-explicit") is None
+
+
+def test_a_term_that_is_left_out_has_no_rows():
+    column = column_of(diffusion={"vertical_m2_per_s": 50.0}, updraft={"speed_m_per_s": 9.0})
+    without = replace(column, left_out=frozenset({"vertical-diffusion"}))
+    still = replace(without, left_out=without.left_out | {"vertical-advection"})
+    assert limit_of(column).step_s < limit_of(without).step_s
+    assert limit_of(without).kind == "transport"
+    assert limit_of(still) is None
+
+
+def test_the_worst_vertical_angle_is_named():
+    mixing = limit_of(column_of(diffusion={"vertical_m2_per_s": 50.0}))
+    assert mixing.phase == pytest.approx(np.pi)
+    wind = {"kind": "uniform", "speed_m_per_s": 20.0}
+    assert limit_of(column_of(wind=wind)).phase == 0.0
 
 
 def test_the_layer_of_the_strongest_updraft_is_named():

@@ -10,10 +10,12 @@ from levelstride.errors import CalculationError, InputError
 from levelstride.execution.processes import processes
 from levelstride.execution.serial import serial
 from levelstride.results.export import to_json
-from levelstride.studies import work_item
+from levelstride.results.headroom import UNITS
+from levelstride.studies import best_row, headroom, work_item
 from levelstride.studies.advise import CurrentConfiguration, advise
+from levelstride.studies.best_row import PARTS
 from levelstride.studies.methods import pairs_of
-from levelstride.studies.rows import best_row
+from levelstride.studies.rows import best_row as best_of
 from levelstride.studies.work_item import WorkItem, carry_out, smaller
 
 TINY = {
@@ -39,7 +41,7 @@ def _limits(monkeypatch):
     """Let every pair have a made-up limit; what is put in here by name wins."""
     limits = {}
 
-    def limit(column, *, tableau, split, certify=False):
+    def limit(column, *, tableau, split, what_if, certify=False):
         made_up = records.limit(
             tableau=tableau, split=split, stable_step_s=3.0, lowest_slope_gradient=None
         )
@@ -49,6 +51,8 @@ def _limits(monkeypatch):
         return found(column) if callable(found) else found
 
     monkeypatch.setattr(work_item, "limit", limit)
+    monkeypatch.setattr(best_row, "ask_what_if", lambda column, found, *_: found)
+    monkeypatch.setattr(headroom, "room", records.room)
     return limits
 
 
@@ -143,9 +147,12 @@ def test_progress_counts_every_pair(column, limits):
     seen = []
     with serial() as executor:
         advise(column, executor=executor, progress=lambda *counts: seen.append(counts))
-    assert [counts[:2] for counts in seen] == [(0, 4), (1, 4), (2, 4), (3, 4), (4, 4)]
+    counted = [counts[:2] for counts in seen]
+    assert counted == sorted(counted)
+    assert list(dict.fromkeys(counted)) == [(done, 4 + PARTS) for done in range(4 + PARTS + 1)]
     assert seen[0][2] == "ARS(2,3,2) with sound"
-    assert seen[4][2] == ""
+    assert any(counts[2].endswith("headroom of grid spacing") for counts in seen)
+    assert seen[-1][2] == ""
 
 
 def test_a_worker_that_dies_is_a_calculation_that_cannot_be_finished(column):
@@ -167,7 +174,9 @@ def test_over_a_slope_both_gradients_are_searched_and_the_smaller_taken(limits):
         looked_at.append(column.lowest_slope_gradient)
         step_s = {"half": 3.0, "full": 2.0}[column.lowest_slope_gradient]
         return records.limit(
-            stable_step_s=step_s, lowest_slope_gradient=column.lowest_slope_gradient
+            stable_step_s=step_s,
+            split="sound",
+            lowest_slope_gradient=column.lowest_slope_gradient,
         )
 
     limits["ARS(2,3,2)", "sound"] = answer
@@ -186,10 +195,10 @@ def test_the_smaller_limit_is_the_one_without_a_step_then_the_shorter():
 
 def test_the_best_row_is_one_whose_solve_stays_in_the_column():
     coupled = records.row(couples_columns=True)
-    assert best_row([records.without_step(), coupled, records.row()]) == 2
-    assert best_row([records.without_step(), coupled]) == 1
-    assert best_row([records.without_step()]) is None
-    assert best_row([]) is None
+    assert best_of([records.without_step(), coupled, records.row()]) == 2
+    assert best_of([records.without_step(), coupled]) == 1
+    assert best_of([records.without_step()]) is None
+    assert best_of([]) is None
 
 
 def test_pairs_are_named_once_and_an_explicit_method_comes_unsplit(column):
@@ -243,6 +252,61 @@ def test_the_whole_path_gives_the_same_records_whoever_works(column):
         assert row.bites is not None
         assert row.binding
     assert len(here.rows) == 4
+
+
+def test_the_best_row_says_how_far_the_column_may_change(column, limits):
+    found = advise(column)
+    best, *others = found.rows
+    assert best.headroom.step_s == best.advised_step_s
+    assert (best.headroom.tableau, best.headroom.split) == (best.tableau, best.split)
+    assert [room.quantity for room in best.headroom.rooms] == list(UNITS)
+    assert all(row.headroom is None for row in others)
+
+
+def test_headroom_that_cannot_be_found_stops_nothing(column, limits, monkeypatch):
+    def fail(*_, **__):
+        raise CalculationError("no step is stable")
+
+    monkeypatch.setattr(headroom, "room", fail)
+    rooms = advise(column).rows[0].headroom.rooms
+    assert {room.reason for room in rooms} == {"no step is stable"}
+    assert [room.present for room in rooms][-2:] == [3000.0, pytest.approx(600.0)]
+
+
+def test_where_nothing_is_advised_there_is_no_headroom(column, limits):
+    limits["ARS(2,3,2)", "sound"] = records.limit(stable_step_s=None)
+    found = advise(column, tableaux=["ars232"], splits=["sound"])
+    assert found.rows[0].headroom is None
+
+
+def test_a_calibration_takes_the_place_of_safety(column, limits):
+    seen = records.safety_factor(tableau="ARS(2,3,2)", split="sound", lower=0.5, upper=1.1)
+    plain, found = advise(column), advise(column, calibration=seen)
+    for row in found.rows:
+        assert row.safety == 0.5
+        assert row.advised_step_s <= 0.5 * row.stable_step_s
+    assert all(row.safety == 0.9 for row in plain.rows)
+    assert found.provenance.tolerances["calibrated_lower"] == 0.5
+    assert "calibrated_lower" not in plain.provenance.tolerances
+
+
+def test_a_calibrated_share_that_binds_is_named(limits):
+    advice = {key: value for key, value in TINY["advice"].items() if key != "divides_s"}
+    seen = records.safety_factor(tableau="ARS(2,3,2)", split="sound", lower=0.95, upper=None)
+    found = advise(build(TINY | {"advice": advice}), calibration=seen)
+    bound = {(row.tableau, row.split): row for row in found.rows}
+    own, other = bound["ARS(2,3,2)", "sound"], bound["ARS(2,3,3)", "sound"]
+    assert own.advised_step_s == pytest.approx(0.95 * 3.0)
+    assert own.binding.endswith("; at most 95 % of it, as calibrated")
+    assert other.advised_step_s <= 0.9 * 3.0
+
+
+def test_a_calibration_with_another_tolerance_is_refused(column, limits):
+    seen = records.safety_factor(efolding_s=3600.0, transient_limit=10.0)
+    with pytest.raises(InputError) as caught:
+        advise(column, calibration=seen)
+    assert len(caught.value.problems) == 2
+    assert "efolding_s = 3600" in caught.value.problems[0]
 
 
 def test_an_item_is_carried_out_alike_twice(column, limits):

@@ -9,8 +9,9 @@ from levelstride.column.read import build
 from levelstride.errors import CalculationError, InputError
 from levelstride.execution.serial import serial
 from levelstride.results.kept import KeptItems
-from levelstride.studies import keys, work_item
-from levelstride.studies.advise import CurrentConfiguration, advise, advise_plans
+from levelstride.studies import best_row, headroom, keys, work_item
+from levelstride.studies.advise import CurrentConfiguration, advise, advise_plans, count_parts_left
+from levelstride.studies.best_row import PARTS
 from levelstride.studies.gather import count_kept
 from levelstride.studies.plan import plan_advice
 
@@ -32,13 +33,15 @@ def _searched(monkeypatch):
     """Let every search answer at once; returns which were made."""
     made = []
 
-    def limit(column, *, tableau, split, certify=False):
+    def limit(column, *, tableau, split, what_if, certify=False):
         made.append((column.title, tableau, split))
         return records.limit(
             tableau=tableau, split=split, stable_step_s=3.0, lowest_slope_gradient=None
         )
 
     monkeypatch.setattr(work_item, "limit", limit)
+    monkeypatch.setattr(best_row, "ask_what_if", lambda column, found, *_: found)
+    monkeypatch.setattr(headroom, "room", records.room)
     return made
 
 
@@ -152,10 +155,10 @@ def test_items_are_kept_the_moment_they_end(tmp_path, monkeypatch, searched):
     kept = KeptItems(tmp_path)
     answer = work_item.limit
 
-    def break_off(column, *, tableau, split, certify):
+    def break_off(column, **asked):
         if len(searched) == 3:
             raise KeyboardInterrupt
-        return answer(column, tableau=tableau, split=split)
+        return answer(column, **asked)
 
     monkeypatch.setattr(work_item, "limit", break_off)
     with serial() as executor, pytest.raises(KeyboardInterrupt):
@@ -167,19 +170,19 @@ def test_progress_begins_with_what_was_kept(tmp_path):
     kept, seen = KeptItems(tmp_path), []
     advise(build(TINY), tableaux=["ars232"], kept=kept)
     advise(build(TINY), kept=kept, progress=lambda *told: seen.append(told))
-    assert [told[:2] for told in seen] == [(2, 4), (3, 4), (4, 4)]
-    assert seen[0][2] == "ARS(2,3,3) with sound"
+    assert seen[0] == (2, 4 + PARTS, "ARS(2,3,3) with sound")
+    assert seen[-1] == (4 + PARTS, 4 + PARTS, "")
 
 
 def test_many_columns_share_the_work_and_one_that_fails_stops_no_other(monkeypatch, searched):
     answer = work_item.limit
 
-    def fail(column, *, tableau, split, certify):
+    def fail(column, **asked):
         if column.title == "bad":
             raise InputError("mend this")
         if column.title == "worse":
             raise RuntimeError("a fault")
-        return answer(column, tableau=tableau, split=split)
+        return answer(column, **asked)
 
     monkeypatch.setattr(work_item, "limit", fail)
     titles = ("one", "bad", "worse", "two")
@@ -194,5 +197,40 @@ def test_many_columns_share_the_work_and_one_that_fails_stops_no_other(monkeypat
     assert isinstance(found[1], InputError)
     assert isinstance(found[2], RuntimeError)
     assert not isinstance(found[1], CalculationError)
-    assert seen[0] == (0, 16, "one: ARS(2,3,2) with sound")
-    assert seen[-1][:2] == (16, 16)
+    total = 4 * (4 + PARTS)
+    assert seen[0] == (0, total, "one: ARS(2,3,2) with sound")
+    assert seen[-1][:2] == (total, total)
+
+
+def test_the_headroom_of_the_best_row_is_kept_by_step(tmp_path, monkeypatch):
+    asked, answer = [], headroom.room
+
+    def count(column, quantity, **options):
+        asked.append((quantity, options["step_s"]))
+        return answer(column, quantity, **options)
+
+    monkeypatch.setattr(headroom, "room", count)
+    kept = KeptItems(tmp_path)
+    plan = plan_advice(build(TINY))
+    assert count_parts_left(plan, kept) == 4 + PARTS
+    first = advise(build(TINY), kept=kept)
+    assert len(asked) == PARTS - 1
+    assert count_parts_left(plan, kept) == 0
+    assert advise(build(TINY), kept=kept).rows[0].headroom == first.rows[0].headroom
+    assert len(asked) == PARTS - 1
+    advise(changed("advice.safety", 0.5), kept=kept)
+    assert len(asked) == 2 * (PARTS - 1)
+    next((tmp_path / "kept").glob("*.json")).unlink()
+    assert 0 < count_parts_left(plan, kept) <= 1 + PARTS
+
+
+def test_a_calibration_changes_the_choice_and_not_the_limit(tmp_path, searched):
+    kept = KeptItems(tmp_path)
+    advise(build(TINY), kept=kept)
+    searched.clear()
+    seen = records.safety_factor(lower=0.7)
+    items = plan_advice(build(TINY), calibration=seen).items
+    assert count_kept(items, kept) == 0
+    advise(build(TINY), kept=kept, calibration=seen)
+    assert not searched
+    assert count_kept(items, kept) == 4

@@ -54,8 +54,8 @@ def test_every_promised_key_is_there_and_every_number_is_finite(found):
 
 def test_names_come_back_in_standard_spelling(found):
     assert (found.tableau, found.split) == ("ARS(2,3,2)", "sound")
-    again = limit(column_of(), tableau="ARS 2,3,2", split=" Sound ")
-    assert again == found
+    again = limit(column_of(), tableau="ARS 2,3,2", split=" Sound ", what_if=False)
+    assert replace(found, counterfactuals=(), cause=again.cause) == again
 
 
 def test_the_numbers_hang_together(found):
@@ -78,6 +78,27 @@ def test_the_numbers_hang_together(found):
     assert found.own_growth == ()
 
 
+def test_what_bites_is_told_in_full(found):
+    bites, column = found.bites, column_of()
+    assert bites.shortest_horizontal
+    assert bites.steepest_horizontal
+    assert not bites.along_diagonal
+    assert sum(bites.energy_by_layer) == pytest.approx(1.0, abs=1e-6)
+    held = bites.energy_by_layer[bites.layer_lowest : bites.layer_highest + 1]
+    assert sum(held) >= 0.9
+    assert [profile.field for profile in bites.profiles] == ["u", "w", "theta", "pi"]
+    for profile in bites.profiles:
+        centred = profile.field in ("u", "pi")
+        heights = column.levels.centres_m if centred else column.levels.interfaces_m[1:-1]
+        np.testing.assert_allclose(profile.heights_m, heights)
+        assert len(profile.amplitude) == len(profile.phase_rad) == heights.size
+    assert found.stable_step_by_air == ()
+    assert found.cause.startswith("explicit horizontal sound terms, layers ")
+    blamed = [c for c in found.counterfactuals if c.terms == ("horizontal-divergence",)]
+    assert [c.change for c in blamed] == ["implicit", "absent"]
+    assert min(c.gain for c in blamed) > 1.5
+
+
 def test_it_says_how_it_was_checked(found):
     assert "dense eigenvalues" in found.certified
     assert "narrower windows of instability can be missed" in found.certified
@@ -86,7 +107,7 @@ def test_it_says_how_it_was_checked(found):
 
 def test_the_gain_is_over_the_explicit_step(found):
     column = column_of()
-    explicit = limit(column, tableau="ARS(2,3,2)", split="all-explicit")
+    explicit = limit(column, tableau="ARS(2,3,2)", split="all-explicit", what_if=False)
     assert explicit.gain == 1.0
     assert found.gain == pytest.approx(found.stable_step_s / explicit.stable_step_s, rel=2e-3)
     assert found.gain > 1.0
@@ -105,7 +126,7 @@ def test_the_explicit_share_compares_with_the_reach_of_the_explicit_part(found):
 
 def test_a_tableau_without_reach_has_no_explicit_share():
     """ARS(2,2,2) grows at every point of the imaginary axis."""
-    found = limit(column_of(), tableau="ARS(2,2,2)", split="sound")
+    found = limit(column_of(), tableau="ARS(2,2,2)", split="sound", what_if=False)
     assert found.stable_step_s > 0
     assert found.explicit_share is None
 
@@ -113,16 +134,20 @@ def test_a_tableau_without_reach_has_no_explicit_share():
 def test_wind_given_or_not(found):
     assert found.wind_note == NO_WIND
     windy = column_of(wind={"kind": "uniform", "speed_m_per_s": 10.0})
-    assert limit(windy, tableau="ARS(2,3,2)", split="sound").wind_note is None
+    assert limit(windy, tableau="ARS(2,3,2)", split="sound", what_if=False).wind_note is None
 
 
 def test_the_slope_gradient_of_the_lowest_layer():
     column = column_of(terrain={"slope": 0.3}, horizontal={"grid_spacing_m": 500.0})
-    half = limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy")
-    full = limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy", lowest_slope_gradient="full")
+    asked = {"tableau": "ARS(2,3,2)", "split": "sound+buoyancy", "what_if": False}
+    half = limit(column, **asked)
+    full = limit(column, **asked, lowest_slope_gradient="full")
     assert (half.lowest_slope_gradient, full.lowest_slope_gradient) == ("half", "full")
     assert full.stable_step_s <= half.stable_step_s * 1.001
-    assert limit(column_of(), tableau="ARS(2,3,2)", split="sound").lowest_slope_gradient is None
+    assert (
+        limit(column_of(), tableau="ARS(2,3,2)", split="sound", what_if=False).lowest_slope_gradient
+        is None
+    )
 
 
 def test_both_horizontal_terms_implicit_couple_columns():
@@ -147,7 +172,7 @@ def test_own_growth_is_reported_with_its_cause_and_leaves_no_strict_step():
             "temperatures_k": [310.0, 250.0, 240.0],
         }
     )
-    found = limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy")
+    found = limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy", what_if=False)
     assert [(own.air, own.cause) for own in found.own_growth] == [("hot afternoon", "convection")]
     assert found.own_growth[0].growth_per_s > 1e-4
     assert found.strict_step_s is None
@@ -159,8 +184,9 @@ def test_several_air_states_give_the_step_of_the_worst():
         {"kind": "isothermal", "name": name, "temperature_k": kelvin}
         for name, kelvin in (("cold", 210.0), ("hot", 310.0))
     ]
-    both = limit(column_of(air=airs), tableau="ARS(2,3,2)", split="sound")
-    hot = limit(column_of(air=airs[1]), tableau="ARS(2,3,2)", split="sound")
+    asked = {"tableau": "ARS(2,3,2)", "split": "sound", "what_if": False}
+    both = limit(column_of(air=airs), **asked)
+    hot = limit(column_of(air=airs[1]), **asked)
     assert both.air == "hot"
     assert both.stable_step_s == pytest.approx(hot.stable_step_s, rel=2e-3)
 
@@ -187,10 +213,10 @@ def test_mixing_that_binds_is_told_as_a_row():
 
 def test_the_columns_own_split_and_tolerance_are_the_defaults():
     column = column_of(split="sound+buoyancy", advice={"efolding_s": 3600.0})
-    found = limit(column, tableau="IMKG242b")
+    found = limit(column, tableau="IMKG242b", what_if=False)
     assert (found.split, found.efolding_s) == ("sound+buoyancy", 3600.0)
     assert found.stable_step_s == found.stable_step_by_efolding[1].stable_step_s
-    longer = limit(column, tableau="IMKG242b", efolding_s=600.0)
+    longer = limit(column, tableau="IMKG242b", efolding_s=600.0, what_if=False)
     assert longer.efolding_s == 600.0
     assert longer.stable_step_s > found.stable_step_s
 
@@ -198,7 +224,7 @@ def test_the_columns_own_split_and_tolerance_are_the_defaults():
 def test_a_mapping_of_terms_to_treatments():
     column = column_of(upper_damping={"rate_per_s": 0.1, "base_m": 4000.0})
     split = {"name": "sound", "upper-damping": "after-step-implicit"}
-    found = limit(column, tableau="ARS(2,3,2)", split=split)
+    found = limit(column, tableau="ARS(2,3,2)", split=split, what_if=False)
     assert found.split == "sound, upper-damping after-step-implicit"
 
 

@@ -72,7 +72,9 @@ def test_upwind_amplification_is_the_textbook_one():
 @pytest.mark.parametrize("updraft_m_per_s", [1.0, -2.0])
 def test_explicit_upwind_transport_carries_the_courant_limit(updraft_m_per_s):
     column = transport_column(6, updraft_m_per_s=updraft_m_per_s)
-    found = limit(column, tableau="ARS(1,1,1)", split=explicit_only("vertical-advection"))
+    found = limit(
+        column, tableau="ARS(1,1,1)", split=explicit_only("vertical-advection"), what_if=False
+    )
     assert found.stable_step_s * abs(updraft_m_per_s) / 10.0 == pytest.approx(1.0, rel=1e-3)
     assert found.criterion == "courant"
     assert found.bites.kind == "transport"
@@ -213,7 +215,7 @@ def test_forward_backward_has_its_classical_limit(staggering):
     forward-backward order on every wave without vertical motion, the Lamb wave of isothermal air.
     """
     column = isothermal_column(5, 20e3, TEMPERATURE_K, staggering=staggering)
-    found = limit(column, tableau="ARS(1,1,1)", split="sound+buoyancy+divergence")
+    found = limit(column, tableau="ARS(1,1,1)", split="sound+buoyancy+divergence", what_if=False)
     largest_gradient = 2 / column.horizontal.grid_spacing_m
     assert largest_gradient * SOUND_M_PER_S * found.stable_step_s == pytest.approx(2.0, rel=2e-3)
     assert found.bites.kind == "Lamb"
@@ -232,7 +234,7 @@ def test_forward_backward_has_its_classical_limit(staggering):
 )
 def test_explicit_methods_reach_their_imaginary_axis_limit(tableau, reach):
     column = isothermal_column(4, 10e3, TEMPERATURE_K, ratio=1.3)
-    found = limit(column, tableau=tableau, split="all-explicit")
+    found = limit(column, tableau=tableau, split="all-explicit", what_if=False)
     kappa = np.pi / 3000.0
     fastest = wave_terms(column, column.airs[0], kappa).facts.largest_eigenvalue
     assert found.stable_step_s * fastest == pytest.approx(reach, rel=1e-2)
@@ -243,7 +245,7 @@ def test_explicit_methods_reach_their_imaginary_axis_limit(tableau, reach):
 @pytest.mark.parametrize("tableau", ["ARS(1,1,1)", "ARS(2,2,2)", "ARK3(2)4L[2]SA"])
 def test_all_implicit_never_bites_with_an_a_stable_tableau(tableau):
     column = isothermal_column(5, 20e3, TEMPERATURE_K, ratio=1.5)
-    found = limit(column, tableau=tableau, split="all-implicit")
+    found = limit(column, tableau=tableau, split="all-implicit", what_if=False)
     assert found.stable_step_s is None
     assert found.unbounded
     assert found.criterion == "none"

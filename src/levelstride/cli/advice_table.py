@@ -46,6 +46,8 @@ def show_advice(found: "Advice", written: tuple[Path, ...]) -> None:
         marked=found.best,
     )
     say(_best_sentence(found), strong=True)
+    for line in _best_details(found):
+        say(line)
     if found.current is not None:
         say(f"Today: {found.current.verdict}.")
     for note in _notes(found):
@@ -141,6 +143,20 @@ def _best_sentence(found: "Advice") -> str:
         f"Most simulated time per cost: {row.tableau} with {row.split}, step "
         f"{step(row.advised_step_s)} s, {headroom(row)}{coupled}. It is bound by {row.binding}."
     )
+
+
+def _best_details(found: "Advice") -> list[str]:
+    """What limits the stable step of the best row, and which of several air states binds it."""
+    from levelstride.results.cause import airs
+    from levelstride.results.headroom_words import carried
+
+    if found.best is None:
+        return []
+    row = found.rows[found.best]
+    lines = [] if row.cause is None else [f"Cause of its limit: {row.cause}."]
+    if row.headroom is not None:
+        lines.append(f"Its step carries, each by itself: {carried(row.headroom)}.")
+    return lines + ([f"Air: {airs(row)}."] if row.stable_step_by_air else [])
 
 
 def show_outcomes(outcomes: "Sequence[ColumnOutcome]", written: Path) -> None:

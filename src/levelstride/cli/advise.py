@@ -39,6 +39,10 @@ def advise(
         str | None,
         Parameter(help="Splitting of the step you run today; that of the column file by default."),
     ] = None,
+    calibration: Annotated[
+        Path | None,
+        Parameter(help="Calibration file: what your model carries of the stable step."),
+    ] = None,
     out: Annotated[Path, Parameter(help="Folder for the files; made if missing.")] = Path("advice"),
     workers: Annotated[
         int | None, Parameter(help="Processes to share the work; one per core by default.")
@@ -53,6 +57,7 @@ def advise(
     """Try tableaux and splittings and advise a step for each, the cheapest first."""
     from levelstride.column.many import column_files
     from levelstride.errors import InputError
+    from levelstride.results.calibration_file import read_safety_factor
     from levelstride.studies.plan import plan_advice
 
     if not columns:
@@ -60,13 +65,14 @@ def advise(
     files = column_files(columns)
     usable_workers(workers, cluster)
     _check_options(current, tableau, split)
+    factor = None if calibration is None else read_safety_factor(calibration)
 
     def plan(source: str) -> "Plan":
         from levelstride.column.read import load
 
         read = load(source)
         judged = _current(read.split, source, current, tableau, split)
-        return plan_advice(read, tableaux, splits, judged, certify=certify)
+        return plan_advice(read, tableaux, splits, judged, factor, certify=certify)
 
     work = _Work(out, workers, cluster, json)
     if len(files) == 1 and not Path(columns[0]).is_dir():

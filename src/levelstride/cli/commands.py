@@ -7,6 +7,8 @@ COMMANDS: Final[Mapping[str, str]] = {
     "check": "Read a column file and report on its levels and air.",
     "limit": "Find the longest stable step of one tableau and splitting, and what bites first.",
     "advise": "Try tableaux and splittings and advise a step for each, the cheapest first.",
+    "stretch": "Stretch the levels and find how far a step goes with them, and what limits it.",
+    "calibrate": "Compare steps that a model survived or lost with the linear limit.",
     "tableaux": "List the IMEX tableaux, or show one with its audit.",
     "schema": "Print the JSON Schema of the column file, for editors.",
 }

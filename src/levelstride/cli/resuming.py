@@ -39,19 +39,20 @@ class Resumable:
             return
         if self._done:
             error.add_note(
-                f"{self._done} of {self._total} pairs of tableau and splitting are kept in "
+                f"{self._done} of {self._total} parts of the work are kept in "
                 f"{self.kept.folder}; the same command goes on from there"
             )
         else:
-            error.add_note(f"none of {self._total} pairs of tableau and splitting was finished yet")
+            error.add_note(f"none of {self._total} parts of the work was finished yet")
 
     def left(self, plans: "Sequence[Plan]") -> int:
-        """Count the items of plans that are still to be done."""
-        from levelstride.studies.gather import count_kept
+        """Count the parts of plans that are still to be done."""
+        from levelstride.studies.advise import count_parts, count_parts_left
 
-        items = [planned for plan in plans for planned in plan.items]
-        self._total, self._done = len(items), count_kept(items, self.kept)
-        return self._total - self._done
+        self._total = count_parts(plans)
+        left = sum(count_parts_left(plan, self.kept) for plan in plans)
+        self._done = self._total - left
+        return left
 
     def progress(self, done: int, total: int, on: str) -> None:
         """Take note of progress and show it."""

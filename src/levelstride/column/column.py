@@ -123,6 +123,8 @@ class Column:
         What is asked of the advice.
     definition : mapping
         The resolved file as plain data; building it again gives the same column.
+    left_out : frozenset of str
+        Terms that its equations lack, for asking what if; none as it is read.
     """
 
     title: str
@@ -148,6 +150,7 @@ class Column:
     split: Mapping[str, str] | str | None
     advice: Advice
     definition: Mapping[str, Any]
+    left_out: frozenset[str] = frozenset()
 
     def __post_init__(self) -> None:
         for name in ("slope_f", "diffusivity_c", "diffusivity_f", "upper_damping_f"):

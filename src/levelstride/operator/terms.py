@@ -10,7 +10,7 @@ from typing import Final
 from levelstride.column.air import Background
 from levelstride.column.column import Column
 from levelstride.operator import buoyancy, mixing, pressure, slope, transport
-from levelstride.operator.bands import Banded
+from levelstride.operator.bands import Banded, total
 from levelstride.operator.setting import Setting, layout_of
 from levelstride.operator.wave import Wave
 
@@ -79,12 +79,15 @@ def assemble(column: Column, air: Background, wave: Wave) -> dict[str, Banded]:
     -------
     dict of str to Banded
         In stored unknowns (see ``Layout``), real where the term allows it. Terms the column does
-        not have are zero matrices.
+        not have, or that are left out of it, are zero matrices.
     """
     setting = Setting(column, air, wave, layout_of(column))
     to_stored = 1.0 / setting.layout.phase
     built = {}
     for name, term in CATALOGUE.items():
+        if name in column.left_out:
+            built[name] = total(setting.layout.size, ())
+            continue
         matrix = term.build(setting).trimmed().similar(to_stored)
         built[name] = matrix.real() if matrix.is_real else matrix
     return built

@@ -5,8 +5,11 @@ Numbers that do not exist are ``None``. Lengths are in m, times in s, wavenumber
 """
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import Final, Literal, TypeAlias
+
+from .biting import Bites, Counterfactual, StepOfAir
+from .headroom import Headroom
 
 FORMAT_VERSION: Final = 1
 """Version of the names and dimensions below; raised when one changes its meaning."""
@@ -28,48 +31,6 @@ class StepAtTolerance:
 
     efolding_s: float
     stable_step_s: float | None
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Bites:
-    """The disturbance that grows first beyond the limit.
-
-    Parameters
-    ----------
-    wavenumber_per_m : float
-        Wavenumber along one axis [1/m].
-    growth_per_s : float
-        Growth rate at 1.001 times the limit [1/s].
-    kind : str
-        Kind of wave: sound, gravity, Lamb or computational.
-    layer_lowest, layer_highest : int
-        Layers that hold 90 % of the energy, both included.
-    bottom_m, top_m : float
-        Heights of these layers above the ground [m].
-    energy_share : mapping of str to float
-        Share of the energy by field [1].
-    kind_share : mapping of str to float
-        Share of the energy by kind of wave [1].
-    wavelength_layers : float or None
-        Vertical wavelength in layers [1].
-    wavelength_m : float or None
-        Horizontal wavelength along one axis, 2 pi over the wavenumber [m].
-    period_s : float or None
-        Period as the step sees it [s]; None where it does not oscillate.
-    """
-
-    wavenumber_per_m: float
-    growth_per_s: float
-    kind: str
-    layer_lowest: int
-    layer_highest: int
-    bottom_m: float
-    top_m: float
-    energy_share: Mapping[str, float] = field(default_factory=dict)
-    kind_share: Mapping[str, float] = field(default_factory=dict)
-    wavelength_layers: float | None = None
-    wavelength_m: float | None = None
-    period_s: float | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -233,6 +194,12 @@ class Limit:
         What was assumed about the wind, if none was given.
     certificate : Certificate or None
         The check of both sides at every sampled wave, if it was asked for.
+    cause : str or None
+        What limits the step, where, and what would help, in one sentence; None if nothing bites.
+    stable_step_by_air : tuple of StepOfAir
+        Stable step of each of several air states by itself; empty where it was not asked for.
+    counterfactuals : tuple of Counterfactual
+        Stable step if explicit terms were implicit or absent; empty where it was not asked for.
     """
 
     tableau: str
@@ -257,6 +224,9 @@ class Limit:
     couples_columns: bool = False
     wind_note: str | None = None
     certificate: Certificate | None = None
+    cause: str | None = None
+    stable_step_by_air: tuple[StepOfAir, ...] = ()
+    counterfactuals: tuple[Counterfactual, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -285,6 +255,10 @@ class AdviceRow(Limit):
         Worst relative frequency error of a resolved gravity wave at the advised step [1].
     amplitude_change_per_period : float or None
         Worst change of amplitude per period of such a wave at the advised step [1].
+    safety : float or None
+        Share of the stable step that was to be advised at most [1].
+    headroom : Headroom or None
+        How far the column may change under the advised step; of the best row of an advice only.
     """
 
     advised_step_s: float | None = None
@@ -299,6 +273,8 @@ class AdviceRow(Limit):
     binding: str = ""
     frequency_error: float | None = None
     amplitude_change_per_period: float | None = None
+    safety: float | None = None
+    headroom: Headroom | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

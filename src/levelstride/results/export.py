@@ -4,25 +4,33 @@ import csv
 import io
 import json
 import math
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import fields, is_dataclass
 from typing import Any, Final
 
+from .cause import reason_and_cause
 from .dataset import Advice, AdviceRow
+from .headroom import UNITS
+from .headroom_words import carried
 from .wording import headroom, number, percent, step
 
 _BITES: Final = (
     "wavenumber_per_m", "growth_per_s", "kind", "layer_lowest", "layer_highest", "bottom_m",
-    "top_m", "wavelength_layers", "wavelength_m", "period_s",
+    "top_m", "wavelength_layers", "wavelength_m", "period_s", "shortest_horizontal",
+    "steepest_horizontal", "shortest_vertical", "along_diagonal",
 )  # fmt: skip
 _COLUMNS: Final = (
     "tableau", "split", "advised_step_s", "advised_step_fraction", "stable_step_s", "unbounded",
     "scanned_to_s", "strict_step_s", "criterion", "binding", "steps_per_hour", "cost_per_hour",
     "explicit_evaluations_per_hour", "solves_per_hour", "exchanges_per_hour", "measured_s_per_hour",
     "frequency_error", "amplitude_change_per_period", "explicit_share", "gain", "efolding_s",
-    "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns",
+    "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns", "cause",
+    "safety",
 )  # fmt: skip
 _WORST: Final = ("wavenumber_per_m", "growth_below_per_s", "tolerated_per_s")
+_NUMBERS: Final = re.compile(r"\[\n\s+(?:(?:[-+.\deE]+|null),\n\s+)*(?:[-+.\deE]+|null)\n\s+\]")
+"""A list of numbers over several lines; text has no line feeds in JSON, so it is never meant."""
 
 
 def to_plain(record: Any) -> Any:
@@ -51,7 +59,7 @@ def to_plain(record: Any) -> Any:
 
 
 def to_json(record: Any) -> str:
-    """Write a record as JSON (RFC 8259), finite numbers only.
+    """Write a record as JSON (RFC 8259), finite numbers only; a list of numbers is one line.
 
     Parameters
     ----------
@@ -65,13 +73,14 @@ def to_json(record: Any) -> str:
 
     Examples
     --------
-    >>> print(to_json({"stable_step_s": 27.5, "strict_step_s": float("nan")}), end="")
+    >>> print(to_json({"stable_step_s": float("nan"), "intervals_s": [600.0, 3600.0]}), end="")
     {
-      "stable_step_s": 27.5,
-      "strict_step_s": null
+      "stable_step_s": null,
+      "intervals_s": [ 600.0, 3600.0 ]
     }
     """
-    return json.dumps(to_plain(record), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    text = json.dumps(to_plain(record), indent=2, ensure_ascii=False, allow_nan=False)
+    return _NUMBERS.sub(lambda found: " ".join(found[0].split()), text) + "\n"
 
 
 def to_csv(advice: Advice) -> str:
@@ -107,6 +116,10 @@ def _cells(row: AdviceRow, intervals_s: tuple[float, ...]) -> dict[str, str]:
         cells[f"stable_step_s_efolding_{at.efolding_s:.6g}_s"] = at.stable_step_s
     for interval, steps in zip(intervals_s, row.steps_per_interval, strict=False):
         cells[f"steps_per_{interval:.6g}_s"] = steps
+    for quantity in UNITS if row.headroom is not None else ():
+        room = row.headroom.of(quantity) if row.headroom is not None else None
+        cells[f"headroom_{quantity}"] = None if room is None else room.carried
+        cells[f"headroom_{quantity}_tried_to"] = None if room is None else room.tried_to
     return {name: cell(value) for name, value in cells.items()}
 
 
@@ -153,14 +166,20 @@ def _best_lines(advice: Advice) -> list[tuple[str, str]]:
         ("step", _step_line(row, advice.intervals_s)),
         ("splitting", f"{row.split} implicit" if row.path != "explicit" else row.split),
         ("tableau", row.tableau),
-        ("reason", row.binding),
-        ("headroom", headroom(row)),
+        ("reason", reason_and_cause(row)),
+        ("headroom", _headroom_line(row)),
         (
             "accuracy",
             f"gravity waves: frequency error {percent(row.frequency_error)}, "
             f"amplitude change per period {percent(row.amplitude_change_per_period)}",
         ),
     ]
+
+
+def _headroom_line(row: AdviceRow) -> str:
+    if row.headroom is None:
+        return headroom(row)
+    return f"{headroom(row)}; it carries, each by itself: {carried(row.headroom)}"
 
 
 def _step_line(row: AdviceRow, intervals_s: tuple[float, ...]) -> str:

@@ -2,7 +2,8 @@
 
 from math import floor, log10
 
-from .dataset import AdviceRow, Bites, Limit, OwnGrowth
+from .biting import Bites
+from .dataset import AdviceRow, Limit, OwnGrowth
 
 CAUTION = (
     "Linear theory on a single column: confirm the step in the full model and under your own "
@@ -85,9 +86,20 @@ def wave(bites: Bites) -> str:
     """
     if bites.kind in _ROW_KINDS:
         return f"{bites.kind} in {layers(bites)}"
-    name = _KIND_NAMES.get(bites.kind, f"{bites.kind} wave")
+    name = kind_name(bites.kind)
     length = f" of {metres(bites.wavelength_m)}" if bites.wavelength_m is not None else ""
     return f"{name}{length}, {layers(bites)}"
+
+
+def kind_name(kind: str) -> str:
+    """Name a kind of wave.
+
+    Examples
+    --------
+    >>> kind_name("Lamb"), kind_name("transport")
+    ('Lamb wave', 'transport')
+    """
+    return _KIND_NAMES.get(kind, kind)
 
 
 def layers(bites: Bites) -> str:

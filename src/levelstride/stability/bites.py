@@ -25,6 +25,10 @@ ALIKE = 0.9
 SHARE = 0.9
 """Share of the energy that the named layers hold."""
 
+ALTERNATES = 2.25
+"""Vertical wavelength in layers up to which a state counts as alternating from layer to layer: an
+envelope over ten layers makes 2.2 of 2."""
+
 
 @dataclass(frozen=True, eq=False)
 class CriticalState:
@@ -34,6 +38,8 @@ class CriticalState:
     ----------
     basis : ndarray, shape (nstate, nvector)
         Orthonormal in the energy.
+    vector : ndarray, shape (nstate,)
+        The fastest growing or most amplified state itself, of energy norm one.
     growth_per_s : float
         [1/s]
     period_s : float or None
@@ -41,6 +47,7 @@ class CriticalState:
     """
 
     basis: Matrix
+    vector: Matrix
     growth_per_s: float
     period_s: float | None
 
@@ -59,6 +66,8 @@ class Anatomy:
         Shortest run of layers that holds 90 % of the energy, counted from 0 at the ground.
     wavelength_layers : float or None
         Vertical wavelength within that run [layers].
+    energy_by_layer : ndarray, shape (nlev,)
+        Shares of the energy; that of an interface is shared by the two layers it parts.
     """
 
     energy_share: dict[str, float]
@@ -66,6 +75,12 @@ class Anatomy:
     layer_lowest: int
     layer_highest: int
     wavelength_layers: float | None
+    energy_by_layer: NDArray[np.float64]
+
+    @property
+    def alternates(self) -> bool:
+        """Whether the state changes sign from layer to layer, the shortest vertical wave."""
+        return self.wavelength_layers is not None and self.wavelength_layers <= ALTERNATES
 
 
 def critical_state(problem: WaveProblem, step: float, tolerance: Tolerance) -> CriticalState:
@@ -92,7 +107,7 @@ def critical_state(problem: WaveProblem, step: float, tolerance: Tolerance) -> C
     basis = basis[:, singular > 1e-8 * singular[0]]
     turn = abs(float(np.angle(values[fastest])))
     period = 2 * np.pi * dt / turn if turn > 1e-9 else None
-    return CriticalState(basis, float(growth[fastest]), period)
+    return CriticalState(basis, vectors[:, fastest], float(growth[fastest]), period)
 
 
 def _most_amplified(
@@ -104,7 +119,8 @@ def _most_amplified(
     largest = np.abs(power).max()
     _, _, right = np.linalg.svd(power / largest if largest > 0 else power)
     growth = peak.log_norm / (peak.steps * dt)
-    return CriticalState(right[:1].conj().T, float(growth), None)
+    vector = right[0].conj()
+    return CriticalState(vector[:, None], vector, float(growth), None)
 
 
 def anatomy(problem: WaveProblem, basis: Matrix) -> Anatomy:
@@ -120,13 +136,15 @@ def anatomy(problem: WaveProblem, basis: Matrix) -> Anatomy:
     energy = (np.abs(basis) ** 2).sum(axis=1)
     energy /= energy.sum()
     fields = {name: float(energy[layout.places(name)].sum()) for name in FIELDS}
-    lowest, highest = layers_holding(_energy_by_layer(layout, energy), SHARE)
+    by_layer = _energy_by_layer(layout, energy)
+    lowest, highest = layers_holding(by_layer, SHARE)
     return Anatomy(
         {name: share for name, share in fields.items() if layout.places(name).size},
         _kind_shares(problem, basis),
         lowest,
         highest,
         _wavelength(layout, basis, fields, lowest, highest),
+        by_layer,
     )
 
 

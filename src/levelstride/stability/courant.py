@@ -10,7 +10,7 @@ the tolerated growth.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -37,6 +37,9 @@ VERTICAL = ("vertical-advection", "vertical-diffusion")
 SCAN_RATIO = 1.05
 BISECTION = 1.0005
 
+NEAR_FASTEST = 0.9
+"""Rows whose largest symbol is at least this share of the largest of all get more angles."""
+
 
 @dataclass(frozen=True, slots=True)
 class CourantLimit:
@@ -52,6 +55,8 @@ class CourantLimit:
         Layer, or the layer below the interface.
     kappa : float
         Wavenumber along one axis of the worst horizontal angle [1/m].
+    phase : float
+        Vertical angle from layer to layer of the worst symbol, from 0 to pi [rad].
     kind : str
         ``transport`` or ``mixing``, whichever the worst symbol owes more to.
     rate_per_s : float
@@ -62,6 +67,7 @@ class CourantLimit:
     field: str
     layer: int
     kappa: float
+    phase: float
     kind: str
     rate_per_s: float
 
@@ -154,6 +160,47 @@ def courant_limit(
         None if nothing bites up to ``largest_s``.
     """
     found = []
+    for rows, factor in _row_sets(column, air, splitting, tableau):
+        limit = _limit_of(rows, column, factor, rate, largest_s)
+        if limit is not None:
+            found.append(limit)
+    return min(found, key=lambda limit: limit.step_s, default=None)
+
+
+def rows_hold(
+    column: Column,
+    air: Background,
+    splitting: Splitting,
+    tableau: Tableau,
+    rate: float,
+    step_s: float,
+) -> bool:
+    """Whether no frozen row of the explicit one-way terms grows at one step.
+
+    Parameters
+    ----------
+    column, air, splitting, tableau, rate
+        As for ``courant_limit``, which looks at all steps up to its answer.
+    step_s : float
+        The step [s].
+    """
+    for rows, factor in _row_sets(column, air, splitting, tableau):
+        chosen = np.arange(rows.index.size)
+        for angles in (ANGLES, 2 * ANGLES):
+            symbols = rows.symbol(column, chosen, angles)
+            own = np.maximum(symbols.real.max(axis=(1, 2)), 0.0)
+            excess = factor(step_s * symbols).max(axis=(1, 2)) / np.exp(step_s * (rate + own))
+            if excess.max() > 1 + 1e-12:
+                return False
+            fastest = np.abs(symbols).max(axis=(1, 2))
+            chosen = chosen[fastest >= NEAR_FASTEST * fastest.max()]
+    return True
+
+
+def _row_sets(
+    column: Column, air: Background, splitting: Splitting, tableau: Tableau
+) -> Iterator[tuple[_Rows, Factor]]:
+    """Frozen rows of the stages and of the terms after the step, with their amplification."""
     polynomial = explicit_polynomial(tableau)
     factors: dict[str, Factor] = {
         "explicit": lambda z: np.abs(np.polynomial.polynomial.polyval(z, polynomial)),
@@ -162,16 +209,13 @@ def courant_limit(
     for treatment, factor in factors.items():
         rows = _frozen_rows(column, air, splitting, treatment)
         if rows is not None:
-            limit = _limit_of(rows, column, factor, rate, largest_s)
-            if limit is not None:
-                found.append(limit)
-    return min(found, key=lambda limit: limit.step_s, default=None)
+            yield rows, factor
 
 
 def _frozen_rows(
     column: Column, air: Background, splitting: Splitting, treatment: str
 ) -> _Rows | None:
-    names = {n for n in splitting.terms(treatment) if CATALOGUE[n].one_way}
+    names = {n for n in splitting.terms(treatment) if CATALOGUE[n].one_way} - column.left_out
     layout = layout_of(column)
     setting = Setting(column, air, Wave(0.0, column.horizontal), layout)
     reach = np.arange(-3, 4)
@@ -253,6 +297,7 @@ def _describe(
         field=_field_of(layout, index),
         layer=int(layout.layer_of[index]),
         kappa=kappa,
+        phase=abs(phi),
         kind="transport" if abs(transport) > abs(mixing) else "mixing",
         rate_per_s=float(growth[row, i, j]),
     )

@@ -1,21 +1,17 @@
 """Have work items done by whoever does them, and keep what is found as it is found."""
 
 from collections.abc import Callable, Iterator, Sequence
-from concurrent.futures import BrokenExecutor, Executor, Future
+from concurrent.futures import Executor
 from dataclasses import replace
-from queue import SimpleQueue
-from typing import Final, TypeAlias
+from typing import TypeAlias
 
-from levelstride.errors import CalculationError
 from levelstride.studies.keys import Kept, find_finding, find_limit, keep_finding
 from levelstride.studies.plan import PlannedItem
+from levelstride.studies.share_out import share_out
 from levelstride.studies.work_item import Finding, WorkItem, carry_out
 
 Progress: TypeAlias = Callable[[int, int, str], None]
 """Told how many items are done, of how many, and what is being worked on."""
-
-AHEAD: Final = 2000
-"""Number of items handed to an executor before the first of them has ended, at most."""
 
 
 def gather(
@@ -49,8 +45,8 @@ def gather(
     InputError
         If a finding cannot be kept.
     """
-    known = {} if kept is None else _known(items, kept)
-    left = dict.fromkeys(i for i in range(len(items)) if i not in known)
+    before = {} if kept is None else known(items, kept)
+    left = dict.fromkeys(i for i in range(len(items)) if i not in before)
 
     def tell() -> None:
         if progress is not None:
@@ -58,8 +54,9 @@ def gather(
             progress(len(items) - len(left), len(items), on)
 
     tell()
-    yield from known.items()
-    for place, found in _carried_out({i: _item(items[i], kept) for i in left}, executor):
+    yield from before.items()
+    wanted = {i: _item(items[i], kept) for i in left}
+    for place, found in share_out(carry_out, wanted, executor):
         if kept is not None and isinstance(found, Finding):
             keep_finding(kept, found, items[place].key, items[place].of_limit)
         del left[place]
@@ -69,10 +66,11 @@ def gather(
 
 def count_kept(items: Sequence[PlannedItem], kept: Kept) -> int:
     """Count the items that need not be done again."""
-    return len(_known(items, kept))
+    return len(known(items, kept))
 
 
-def _known(items: Sequence[PlannedItem], kept: Kept) -> dict[int, Finding]:
+def known(items: Sequence[PlannedItem], kept: Kept) -> dict[int, Finding]:
+    """Look up the items that need not be done again, by place."""
     found = {i: find_finding(kept, planned.key) for i, planned in enumerate(items)}
     return {i: finding for i, finding in found.items() if finding is not None}
 
@@ -80,40 +78,3 @@ def _known(items: Sequence[PlannedItem], kept: Kept) -> dict[int, Finding]:
 def _item(planned: PlannedItem, kept: Kept | None) -> WorkItem:
     limit = None if kept is None else find_limit(kept, planned.of_limit)
     return planned.item if limit is None else replace(planned.item, limit=limit)
-
-
-def _carried_out(
-    items: dict[int, WorkItem], executor: Executor | None
-) -> Iterator[tuple[int, Finding | Exception]]:
-    if executor is None:
-        for place, item in items.items():
-            try:
-                found: Finding | Exception = carry_out(item)
-            except Exception as error:
-                found = error
-            yield place, found
-        return
-    ended: SimpleQueue[Future[Finding]] = SimpleQueue()
-    begun: dict[Future[Finding], int] = {}
-    for place, item in items.items():
-        future = executor.submit(carry_out, item)
-        begun[future] = place
-        future.add_done_callback(ended.put)
-        while not ended.empty() or len(begun) >= AHEAD:
-            future = ended.get()
-            yield begun.pop(future), _outcome(future)
-    while begun:
-        future = ended.get()
-        yield begun.pop(future), _outcome(future)
-
-
-def _outcome(future: "Future[Finding]") -> Finding | Exception:
-    try:
-        return future.result()
-    except BrokenExecutor as error:
-        return CalculationError(
-            f"a worker ended before its work was done ({error}); if memory is short, "
-            "use fewer workers"
-        )
-    except Exception as error:
-        return error

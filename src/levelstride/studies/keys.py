@@ -68,7 +68,9 @@ def limit_key(
     )
 
 
-def finding_key(limit: str, column: Column, current_s: float | None) -> str:
+def finding_key(
+    limit: str, column: Column, current_s: float | None, calibrated: float | None = None
+) -> str:
     """Make the key of a finding: all of its limit, and how the step is chosen under it.
 
     Parameters
@@ -79,6 +81,8 @@ def finding_key(limit: str, column: Column, current_s: float | None) -> str:
         The column, for its settings.
     current_s : float or None
         A step that is judged besides [s].
+    calibrated : float or None
+        Share of the stable step that takes the place of ``safety`` [1].
 
     Returns
     -------
@@ -86,7 +90,45 @@ def finding_key(limit: str, column: Column, current_s: float | None) -> str:
         Hexadecimal digits.
     """
     settings = {name: getattr(column.advice, name) for name in _OF_THE_CHOICE}
+    if calibrated is not None:
+        settings |= {"safety": calibrated, "calibrated": True}
     return _digest({"of": "finding", "limit": limit, "settings": settings, "current_s": current_s})
+
+
+def closer_key(limit: str) -> str:
+    """Make the key of a closer look at the row with a limit.
+
+    Parameters
+    ----------
+    limit : str
+        Key of the limit.
+
+    Returns
+    -------
+    str
+        Hexadecimal digits.
+    """
+    return _digest({"of": "closer look", "limit": limit})
+
+
+def room_key(limit: str, step_s: float, quantity: str) -> str:
+    """Make the key of the headroom of one quantity under a step.
+
+    Parameters
+    ----------
+    limit : str
+        Key of the limit of its tableau and splitting.
+    step_s : float
+        The step [s].
+    quantity : str
+        What is varied.
+
+    Returns
+    -------
+    str
+        Hexadecimal digits.
+    """
+    return _digest({"of": "headroom", "limit": limit, "step_s": step_s, "quantity": quantity})
 
 
 def _digest(of: Mapping[str, Any]) -> str:
@@ -96,22 +138,29 @@ def _digest(of: Mapping[str, Any]) -> str:
 
 def find_finding(kept: Kept, key: str) -> Finding | None:
     """Look up a finding; None if there is none that can be read."""
-    return _read(Finding, kept.find(key))
+    return find_record(kept, Finding, key)
 
 
 def find_limit(kept: Kept, key: str) -> Limit | None:
     """Look up a limit; None if there is none that can be read."""
-    return _read(Limit, kept.find(key))
+    return find_record(kept, Limit, key)
 
 
 def keep_finding(kept: Kept, finding: Finding, key: str, of_limit: str) -> None:
     """Keep a finding and, by itself, its limit, which other settings may want again."""
     if kept.find(of_limit) is None:
-        kept.keep(of_limit, to_plain_exact(finding.limit))
-    kept.keep(key, to_plain_exact(finding))
+        keep_record(kept, of_limit, finding.limit)
+    keep_record(kept, key, finding)
 
 
-def _read(kind: type[Record], plain: Any) -> Record | None:
+def keep_record(kept: Kept, key: str, record: Any) -> None:
+    """Keep a record of plain data."""
+    kept.keep(key, to_plain_exact(record))
+
+
+def find_record(kept: Kept, kind: type[Record], key: str) -> Record | None:
+    """Look up a record of this kind; None if there is none that can be read."""
+    plain = kept.find(key)
     if plain is None:
         return None
     try:

@@ -10,22 +10,23 @@ import numpy as np
 
 from levelstride.column.column import Column, LowestSlopeGradient
 from levelstride.errors import CalculationError
-from levelstride.results.dataset import Bites, Limit, OwnGrowth, StepAtTolerance, Window
+from levelstride.results.cause import cause
+from levelstride.results.dataset import Limit, OwnGrowth, StepAtTolerance, Window
 from levelstride.results.wording import number
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.amplification import explicit_polynomial
-from levelstride.stability.bites import anatomy, critical_state
 from levelstride.stability.blas import on_one_thread
-from levelstride.stability.courant import CourantLimit
 from levelstride.stability.march_search import CERTAIN_UNKNOWNS
 from levelstride.stability.own_growth import cause_of_growth
-from levelstride.stability.step_limit import SCAN_RATIO, Bracket, Watch
+from levelstride.stability.step_limit import SCAN_RATIO, Watch
 from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import WaveProblem
 from levelstride.stepper.imex import Stepper
 from levelstride.studies.certified import in_words, record
+from levelstride.studies.counterfactuals import ask_what_if
 from levelstride.studies.methods import tableau_of
+from levelstride.studies.what_bites import binding_air, what_bites
 from levelstride.tableaux.lookup import find, names
 from levelstride.tableaux.tableau import Tableau
 
@@ -54,6 +55,7 @@ def limit(
     split: str | Mapping[str, str] | None = None,
     efolding_s: float | None = None,
     lowest_slope_gradient: LowestSlopeGradient | None = None,
+    what_if: bool = True,
     certify: bool = False,
     progress: Progress | None = None,
 ) -> Limit:
@@ -71,6 +73,9 @@ def limit(
         Tolerated e-folding time [s]; by default the column's own.
     lowest_slope_gradient : {"half", "full"}, optional
         By default the column's own.
+    what_if : bool
+        Whether to search as well the step with every explicit term changed in turn and the step of
+        every air state, which takes several times as long.
     progress : callable, optional
         Told how many parts of the work are done, of how many, and what is being worked on.
     certify : bool
@@ -96,7 +101,9 @@ def limit(
     ...     "air": {"kind": "isothermal", "temperature_k": 250.0},
     ...     "horizontal": {"grid_spacing_m": 2000.0},
     ... })
-    >>> found = levelstride.limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy")
+    >>> found = levelstride.limit(
+    ...     column, tableau="ARS(2,3,2)", split="sound+buoyancy", what_if=False
+    ... )
     >>> found.stable_step_s > 1.0, found.path
     (True, 'tridiagonal')
     """
@@ -106,7 +113,7 @@ def limit(
     method = tableau_of(column, tableau)
     tolerance = Tolerance(efolding_s or column.advice.efolding_s, column.advice.transient_limit)
     verdict = ColumnVerdict(column, splitting, method)
-    parts = _Parts(progress, PARTS + certify)
+    parts = _Parts(progress, PARTS + certify + what_if)
     found, certificate = verdict.stable_step(tolerance, watch=parts.begin("stable step")), None
     if certify:
         parts.begin("both sides of the limit at every wave")
@@ -122,7 +129,7 @@ def limit(
     certified = _certified(found, tolerance, verdict)
     if certificate is not None:
         certified = f"{in_words(certificate, tolerance)}; found by {certified}"
-    return Limit(
+    answer = Limit(
         tableau=method.name,
         split=splitting.name,
         stable_step_s=found.step_s,
@@ -133,11 +140,11 @@ def limit(
         criterion=_criterion(found, tolerance),
         explicit_share=_explicit_share(verdict, found),
         gain=gain,
-        bites=_bites(column, found, tolerance),
+        bites=what_bites(column, found, tolerance),
         certified=certified,
         efolding_s=tolerance.efolding_s,
         growth_per_step=float(np.expm1(found.step_s * tolerance.rate)) if found.step_s else None,
-        air=_binding_air(found),
+        air=binding_air(found),
         lowest_slope_gradient=column.lowest_slope_gradient if np.any(column.slope_f) else None,
         own_growth=_own_growth(verdict),
         windows=tuple(Window(from_s=low, to_s=high) for low, high in windows),
@@ -147,6 +154,10 @@ def limit(
         wind_note=None if column.wind_given else NO_WIND,
         certificate=None if certificate is None else record(certificate),
     )
+    if what_if:
+        parts.begin("steps with other terms")
+        return ask_what_if(column, answer, splitting, method, tolerance)
+    return replace(answer, cause=cause(answer))
 
 
 class _Parts:
@@ -242,56 +253,6 @@ def _representative(tableau: Tableau) -> Tableau:
         if np.abs(difference).max() < 1e-13:
             return other
     return tableau
-
-
-def _binding_air(found: StableStep) -> str:
-    if found.waves_bind and found.bracket is not None:
-        return found.bracket.problem.air.name
-    return found.courant_air if found.courant_binds else ""
-
-
-def _bites(column: Column, found: StableStep, tolerance: Tolerance) -> Bites | None:
-    if found.waves_bind and found.bracket is not None:
-        return _wave_bites(column, found.bracket, tolerance)
-    if found.courant_binds and found.courant is not None:
-        return _row_bites(column, found.courant)
-    return None
-
-
-def _wave_bites(column: Column, bracket: Bracket, tolerance: Tolerance) -> Bites:
-    problem = bracket.problem
-    state = critical_state(problem, bracket.low, tolerance)
-    where = anatomy(problem, state.basis)
-    faces = column.levels.interfaces_m
-    return Bites(
-        wavenumber_per_m=problem.kappa,
-        growth_per_s=state.growth_per_s,
-        kind=max(where.kind_share, key=lambda kind: where.kind_share[kind]),
-        layer_lowest=where.layer_lowest,
-        layer_highest=where.layer_highest,
-        bottom_m=float(faces[where.layer_lowest]),
-        top_m=float(faces[where.layer_highest + 1]),
-        energy_share=where.energy_share,
-        kind_share=where.kind_share,
-        wavelength_layers=where.wavelength_layers,
-        wavelength_m=2 * np.pi / problem.kappa,
-        period_s=state.period_s,
-    )
-
-
-def _row_bites(column: Column, courant: CourantLimit) -> Bites:
-    faces = column.levels.interfaces_m
-    return Bites(
-        wavenumber_per_m=courant.kappa,
-        growth_per_s=courant.rate_per_s,
-        kind=courant.kind,
-        layer_lowest=courant.layer,
-        layer_highest=courant.layer,
-        bottom_m=float(faces[courant.layer]),
-        top_m=float(faces[courant.layer + 1]),
-        energy_share={courant.field: 1.0},
-        wavelength_m=2 * np.pi / courant.kappa if courant.kappa > 0 else None,
-    )
 
 
 def _certified(found: StableStep, tolerance: Tolerance, verdict: ColumnVerdict) -> str:

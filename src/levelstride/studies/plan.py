@@ -7,6 +7,7 @@ from math import inf
 
 from levelstride.column.column import Column
 from levelstride.errors import InputError
+from levelstride.results.calibration import SafetyFactor
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.studies.keys import finding_key, limit_key
 from levelstride.studies.methods import pairs_of, tableau_of
@@ -67,6 +68,8 @@ class Plan:
         One per pair, in their order, and one more if the current step is of none of them.
     current : CurrentConfiguration or None
         A step to be judged as well.
+    calibration : SafetyFactor or None
+        What a model carries of the stable step, measured.
     certify : bool
         Whether limits are certified at every sampled wave.
     """
@@ -75,7 +78,15 @@ class Plan:
     pairs: tuple[tuple[Tableau, Splitting], ...]
     items: tuple[PlannedItem, ...]
     current: CurrentConfiguration | None
+    calibration: SafetyFactor | None = None
     certify: bool = False
+
+    def safety(self, tableau: str, split: str) -> float:
+        """Share of the stable step of a pair to advise at most [1]."""
+        safety = self.column.advice.safety
+        if self.calibration is None:
+            return safety
+        return self.calibration.share(tableau, split, safety)
 
 
 def plan_advice(
@@ -83,6 +94,7 @@ def plan_advice(
     tableaux: Sequence[str] | None = None,
     splits: Sequence[str] | None = None,
     current: CurrentConfiguration | None = None,
+    calibration: SafetyFactor | None = None,
     *,
     certify: bool = False,
 ) -> Plan:
@@ -96,6 +108,9 @@ def plan_advice(
         Names; those of the column file by default.
     current : CurrentConfiguration, optional
         A step in use today, to be judged as well.
+    calibration : SafetyFactor, optional
+        Takes the place of ``safety`` for its own tableau and splitting, and can only lower it for
+        others.
     certify : bool
         Whether to certify limits at every sampled wave.
 
@@ -107,8 +122,10 @@ def plan_advice(
     Raises
     ------
     InputError
-        If a name is unknown or the current step is not positive.
+        If a name is unknown, the current step is not positive, or the calibration was made with
+        other tolerances.
     """
+    _check_calibration(column, calibration)
     pairs = pairs_of(column, tableaux, splits)
     judged = _judged_pair(column, current)
     names = [_names(pair) for pair in pairs]
@@ -124,10 +141,31 @@ def plan_advice(
         ):  # fmt: skip
             split = current.split if tableau.kind == "additive" else splitting.name
             item = replace(item, split=split, current_s=current.step_s)
+        calibrated = None
+        if calibration is not None:
+            safety = column.advice.safety
+            calibrated = calibration.share(tableau.name, splitting.name, safety)
+            item = replace(item, calibrated=calibrated)
         of_limit = limit_key(column, tableau, splitting, certify=certify)
-        key = finding_key(of_limit, column, item.current_s)
+        key = finding_key(of_limit, column, item.current_s, calibrated)
         items.append(PlannedItem(item, f"{tableau.name} with {splitting.name}", key, of_limit))
-    return Plan(column, tuple(pairs), tuple(items), current, certify)
+    return Plan(column, tuple(pairs), tuple(items), current, calibration, certify)
+
+
+def _check_calibration(column: Column, calibration: SafetyFactor | None) -> None:
+    """Refuse shares of a stable step that tolerates another growth."""
+    if calibration is None:
+        return
+    problems = []
+    for name in ("efolding_s", "transient_limit"):
+        measured, asked = getattr(calibration, name), getattr(column.advice, name)
+        if measured != asked:
+            problems.append(
+                f"--calibration: was made with {name} = {measured:g}, but {column.source} has "
+                f"advice.{name} = {asked:g}; make both the same"
+            )
+    if problems:
+        raise InputError(*problems)
 
 
 def _judged_pair(

@@ -1,11 +1,11 @@
 """The rows of an advice, made of what was found for every pair."""
 
 from collections.abc import Sequence
-from dataclasses import fields
+from dataclasses import fields, replace
 from math import inf
 
 from levelstride.column.column import Column
-from levelstride.results.dataset import Advice, AdviceRow, CurrentStep, Limit
+from levelstride.results.dataset import Advice, AdviceRow, CurrentStep, Limit, Provenance
 from levelstride.results.wording import CAUTION, limit_reason, number, percent, step
 from levelstride.splitting.splitting import Splitting
 from levelstride.studies.advised_step import whole_steps
@@ -43,7 +43,7 @@ def answer(plan: Plan, findings: Sequence[Finding]) -> Advice:
     """
     column = plan.column
     rows = [
-        _row(column, *pair, finding)
+        replace(_row(column, *pair, finding), safety=plan.safety(pair[0].name, pair[1].name))
         for pair, finding in zip(plan.pairs, findings[: len(plan.pairs)], strict=True)
     ]
     rows.sort(key=_order)
@@ -56,8 +56,18 @@ def answer(plan: Plan, findings: Sequence[Finding]) -> Advice:
         current=None if plan.current is None else _judge(plan.current, findings),
         wind_note=wind_note(column),
         caution=CAUTION,
-        provenance=provenance(column, f"{EVERY_WAVE if plan.certify else CERTIFIED}; {SCAN}"),
+        provenance=_provenance(plan),
     )
+
+
+def _provenance(plan: Plan) -> Provenance:
+    made = provenance(plan.column, f"{EVERY_WAVE if plan.certify else CERTIFIED}; {SCAN}")
+    seen = plan.calibration
+    if seen is None:
+        return made
+    bounds = {"calibrated_lower": seen.lower, "calibrated_upper": seen.upper}
+    known = {name: bound for name, bound in bounds.items() if bound is not None}
+    return replace(made, tolerances={**made.tolerances, **known})
 
 
 def best_row(rows: Sequence[AdviceRow]) -> int | None:

@@ -6,14 +6,13 @@ from dataclasses import dataclass, replace
 from functools import lru_cache
 from math import inf
 
-import numpy as np
-
 from levelstride.accuracy.wave_errors import ResolvedWaves, StepErrors, resolved_waves
-from levelstride.column.column import Column, LowestSlopeGradient
+from levelstride.column.column import Column
+from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
 from levelstride.operator.wave import Wave
 from levelstride.results.dataset import Limit
-from levelstride.results.wording import number, percent
+from levelstride.results.wording import limit_reason, number, percent
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.spectrum import sampled_wavenumbers
@@ -41,6 +40,8 @@ class WorkItem:
         A step to judge besides [s].
     limit : Limit or None
         The limit, if it is known already.
+    calibrated : float or None
+        Share of the stable step that takes the place of the column's ``safety`` [1].
     certify : bool
         Whether the limit is certified at every sampled wave.
     """
@@ -50,6 +51,7 @@ class WorkItem:
     split: str | Mapping[str, str]
     current_s: float | None = None
     limit: Limit | None = None
+    calibrated: float | None = None
     certify: bool = False
 
 
@@ -89,26 +91,42 @@ def carry_out(item: WorkItem) -> Finding:
     Finding
         The same in whatever process it is found.
     """
-    columns = _columns(item.column)
+    columns = unpacked(item.column)
     splitting = resolve(item.split)
     tableau = tableau_of(columns[0], item.tableau)
     asked = columns[0].advice
     found = item.limit or _find_limit(item, columns)
-    checker = _Checker(columns, splitting, tableau)
-    choice = choose_step(
-        found, safety=asked.safety, intervals_s=asked.divides_s, check=checker.examine
-    )
+    checker = StepChecker(columns, splitting, tableau)
+    safety = asked.safety if item.calibrated is None else item.calibrated
+    choice = choose_step(found, safety=safety, intervals_s=asked.divides_s, check=checker.examine)
+    if item.calibrated is not None:
+        choice = _as_calibrated(choice, found, item.calibrated)
     if item.current_s is None:
         return Finding(found, choice)
     current = checker.examine(item.current_s)
     return Finding(found, choice, current, checker.stable(item.current_s))
 
 
+def _as_calibrated(choice: Choice, found: Limit, share: float) -> Choice:
+    """Say that a step is bound by a measured share of the limit, where it is."""
+    if choice.step_s is None or found.unbounded or choice.binding != limit_reason(found):
+        return choice
+    return replace(
+        choice, binding=f"{choice.binding}; at most {percent(share, 3)} of it, as calibrated"
+    )
+
+
 def _find_limit(item: WorkItem, columns: tuple[Column, ...]) -> Limit:
     try:
         return smaller(
             [
-                limit(column, tableau=item.tableau, split=item.split, certify=item.certify)
+                limit(
+                    column,
+                    tableau=item.tableau,
+                    split=item.split,
+                    certify=item.certify,
+                    what_if=False,
+                )
                 for column in columns
             ]
         )
@@ -140,13 +158,9 @@ def _no_limit(item: WorkItem, reason: str) -> Limit:
 
 
 @lru_cache(maxsize=4)
-def _columns(packed: bytes) -> tuple[Column, ...]:
+def unpacked(packed: bytes) -> tuple[Column, ...]:
     """Unpack a column; over a slope, once for each treatment of the lowest slope gradient."""
-    column: Column = pickle.loads(packed)
-    if not np.any(column.slope_f):
-        return (column,)
-    gradients: tuple[LowestSlopeGradient, ...] = ("half", "full")
-    return tuple(replace(column, lowest_slope_gradient=gradient) for gradient in gradients)
+    return lowest_slope_gradients(pickle.loads(packed))
 
 
 @lru_cache(maxsize=8)
@@ -155,7 +169,7 @@ def _resolved(column: Column) -> tuple[ResolvedWaves, ...]:
     return tuple(w for air in column.airs for w in resolved_waves(column, air, waves))
 
 
-class _Checker:
+class StepChecker:
     """Examines steps of one tableau and splitting at every sampled wave."""
 
     def __init__(self, columns: tuple[Column, ...], splitting: Splitting, tableau: Tableau) -> None:

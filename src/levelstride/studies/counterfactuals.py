@@ -1,0 +1,273 @@
+"""What if: the stable step with explicit terms implicit or absent, and of every air by itself."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+from levelstride.column.column import Column
+from levelstride.errors import CalculationError
+from levelstride.operator.terms import CATALOGUE
+from levelstride.results.biting import Change, Counterfactual, StepOfAir
+from levelstride.results.cause import cause
+from levelstride.results.dataset import Limit
+from levelstride.splitting.splitting import Splitting
+from levelstride.stability.courant import rows_hold
+from levelstride.stability.spectrum import sampled_wavenumbers
+from levelstride.stability.tolerance import Tolerance
+from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableStep
+from levelstride.stability.wave_problem import wave_terms
+from levelstride.studies.what_bites import binding_air
+from levelstride.tableaux.tableau import Tableau
+
+REFERENCE = "reference-state"
+"""Stands for a term: what the implicit terms on the air have beyond those on the reference."""
+
+FAR = 20.0
+"""Multiple of the stable step up to which others are sought: beyond it nobody wants to know."""
+
+BEYOND = 1.002
+"""Multiple of the stable step at which it is lost for certain, the bisection being to 0.1 %."""
+
+SHARES = (1.0, 0.9, 0.75, 0.5, 0.25)
+"""Shares of the stable step at which every wave is looked at where nothing is gained."""
+
+Terms = tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class AsItIs:
+    """What is known of the stable step as things are.
+
+    Parameters
+    ----------
+    step_s : float or None
+        Stable step [s]; None if nothing bites.
+    kappa : float or None
+        Wavenumber of the wave that binds [1/m]; None if none does.
+    air : str
+        Air state that binds.
+    """
+
+    step_s: float | None
+    kappa: float | None
+    air: str
+
+    @property
+    def far_s(self) -> float:
+        """Longest step of interest [s]."""
+        if self.step_s is None:
+            return LONGEST_STEP_S
+        return min(LONGEST_STEP_S, FAR * self.step_s)
+
+
+def ask_what_if(
+    column: Column, found: Limit, splitting: Splitting, tableau: Tableau, tolerance: Tolerance
+) -> Limit:
+    """Add to a limit its counterfactuals, the step of every air state, and the cause they show.
+
+    Parameters
+    ----------
+    column : Column
+        The column with the slope gradient the limit was found for.
+    found : Limit
+        The limit.
+    splitting : Splitting
+    tableau : Tableau
+    tolerance : Tolerance
+
+    Returns
+    -------
+    Limit
+        The same, completed.
+    """
+    if found.stable_step_s is None and not found.unbounded:
+        return found
+    kappa = None if found.bites is None else found.bites.wavenumber_per_m or None
+    known = AsItIs(found.stable_step_s, kappa, found.air)
+    completed = replace(
+        found,
+        counterfactuals=tuple(_counterfactuals(column, splitting, tableau, tolerance, known)),
+        stable_step_by_air=tuple(_steps_by_air(column, splitting, tableau, tolerance, known)),
+    )
+    return replace(completed, cause=cause(completed))
+
+
+def counterfactuals(
+    column: Column,
+    splitting: Splitting,
+    tableau: Tableau,
+    tolerance: Tolerance,
+    found: StableStep,
+) -> tuple[Counterfactual, ...]:
+    """Search the stable step with every explicit term changed in turn.
+
+    Each term that is explicit, in the stages or once per step, and not zero on this column is made
+    implicit and left out of the equations, by itself and together with its partner in the energy
+    if that is explicit too. An explicit method has no implicit part, so there terms are only left
+    out. On a reference state, the reference is taken away as well: the implicit terms are then
+    built on the air itself.
+
+    Parameters
+    ----------
+    column : Column
+    splitting : Splitting
+    tableau : Tableau
+    tolerance : Tolerance
+    found : StableStep
+        The stable step as things are.
+
+    Returns
+    -------
+    tuple of Counterfactual
+        In the order of the catalogue, partners together after each of them; empty if nothing
+        bites.
+    """
+    kappa = None if found.bracket is None else found.bracket.problem.kappa
+    known = AsItIs(found.step_s, kappa, binding_air(found))
+    return tuple(_counterfactuals(column, splitting, tableau, tolerance, known))
+
+
+def _counterfactuals(
+    column: Column, splitting: Splitting, tableau: Tableau, tolerance: Tolerance, known: AsItIs
+) -> Iterator[Counterfactual]:
+    if known.step_s is None:
+        return
+    if tableau.kind == "explicit":
+        splitting = splitting.without_implicit()
+    for terms, change in _changes(column, splitting, tableau):
+        changed, treated = _changed(column, splitting, terms, change)
+        step, unbounded = _step(changed, treated, tableau, tolerance, known)
+        yield Counterfactual(
+            terms=terms,
+            change=change,
+            stable_step_s=step,
+            unbounded=unbounded,
+            gain=None if step is None else step / known.step_s,
+            scanned_to_s=known.far_s,
+        )
+
+
+def _steps_by_air(
+    column: Column, splitting: Splitting, tableau: Tableau, tolerance: Tolerance, known: AsItIs
+) -> Iterator[StepOfAir]:
+    if len(column.airs) == 1:
+        return
+    for air in column.airs:
+        step, unbounded = known.step_s, known.step_s is None
+        if air.name != known.air and not unbounded:
+            alone = replace(column, airs=(air,))
+            step, unbounded = _step(alone, splitting, tableau, tolerance, known)
+        yield StepOfAir(
+            air=air.name, stable_step_s=step, unbounded=unbounded, scanned_to_s=known.far_s
+        )
+
+
+def explicit_groups(column: Column, splitting: Splitting) -> list[Terms]:
+    """Explicit terms that act on this column, partners in one group.
+
+    Parameters
+    ----------
+    column : Column
+    splitting : Splitting
+
+    Returns
+    -------
+    list of tuple of str
+        In the order of the catalogue.
+    """
+    acting = [
+        term
+        for term in CATALOGUE
+        if splitting.treatment[term] in ("explicit", "after-step") and _acts(column, term)
+    ]
+    groups: list[Terms] = []
+    for term in acting:
+        partner = CATALOGUE[term].partner
+        if partner is None or partner == term or partner not in acting:
+            groups.append((term,))
+        elif acting.index(partner) > acting.index(term):
+            groups.append((term, partner))
+    return groups
+
+
+def _changes(
+    column: Column, splitting: Splitting, tableau: Tableau
+) -> Iterator[tuple[Terms, Change]]:
+    changes: tuple[Change, ...] = ("implicit", "absent")
+    if tableau.kind == "explicit":
+        changes = ("absent",)
+    for group in explicit_groups(column, splitting):
+        singles = [(term,) for term in group] if len(group) > 1 else []
+        for terms in (*singles, group):
+            for change in changes:
+                yield terms, change
+    if column.reference is not None and splitting.implicit:
+        yield (REFERENCE,), "absent"
+
+
+def _acts(column: Column, term: str) -> bool:
+    return any(
+        not wave_terms(column, air, float(kappa)).terms[term].is_zero
+        for air in column.airs
+        for kappa in sampled_wavenumbers(column.horizontal)
+    )
+
+
+def _changed(
+    column: Column, splitting: Splitting, terms: Terms, change: Change
+) -> tuple[Column, Splitting]:
+    if terms == (REFERENCE,):
+        return replace(column, reference=None), splitting
+    if change == "absent":
+        return replace(column, left_out=column.left_out | set(terms)), splitting
+    for term in terms:
+        splitting = splitting.with_treatment(term, "implicit")
+    return column, splitting
+
+
+def _step(
+    column: Column,
+    splitting: Splitting,
+    tableau: Tableau,
+    tolerance: Tolerance,
+    known: AsItIs,
+) -> tuple[float | None, bool]:
+    """Stable step, and whether nothing bites; no step at all if none is stable.
+
+    The waves are those of the sample and the one that binds as things are, so that a change that
+    does not matter leaves the step as it is.
+    """
+    verdict = ColumnVerdict(column, splitting, tableau, known.far_s)
+    if known.kappa is not None:
+        extra = known.kappa
+        verdict.search.kappas = [sorted({*kappas, extra}) for kappas in verdict.search.kappas]
+    if known.step_s is not None and _stays(verdict, known.step_s, known.kappa, tolerance):
+        return known.step_s, False
+    try:
+        step = verdict.stable_step(tolerance, refine=False).step_s
+    except CalculationError:
+        return None, False
+    return step, step is None
+
+
+def _stays(
+    verdict: ColumnVerdict, step_s: float, kappa: float | None, tolerance: Tolerance
+) -> bool:
+    """Whether the stable step is the same: lost just beyond it as before, and kept up to it."""
+    airs = range(len(verdict.column.airs))
+
+    def rows_hold_at(dt: float) -> bool:
+        return all(
+            rows_hold(verdict.column, air, verdict.splitting, verdict.tableau, tolerance.rate, dt)
+            for air in verdict.column.airs
+        )
+
+    beyond = BEYOND * step_s
+    binding = [] if kappa is None else [verdict.problem(air, kappa) for air in airs]
+    if all(one.stable(beyond, tolerance) for one in binding) and rows_hold_at(beyond):
+        return False
+    if not rows_hold_at(step_s):
+        return False
+    waves = verdict.search.problems()
+    return all(one.stable(share * step_s, tolerance) for share in SHARES for one in waves)
