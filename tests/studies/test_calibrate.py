@@ -13,10 +13,11 @@ from levelstride.execution.serial import serial
 from levelstride.results.calibration_file import read_safety_factor, write_calibration
 from levelstride.results.wording import CAUTION
 from levelstride.splitting.splitting import resolve
-from levelstride.studies import assumptions
+from levelstride.studies import assumptions, calibration_setup
 from levelstride.studies import calibrate as study
-from levelstride.studies.assumptions import ASSUMPTIONS, LimitItem, stable_step
+from levelstride.studies.assumptions import ASSUMPTIONS
 from levelstride.studies.calibrate import Observed, agreement, calibrate
+from levelstride.studies.calibration_setup import LimitItem, stable_step
 
 TINY = {
     "title": "tiny",
@@ -257,7 +258,7 @@ def test_a_search_that_finds_no_step_counts_as_none(monkeypatch):
     def none(*_):
         raise CalculationError("no step")
 
-    monkeypatch.setattr(assumptions.ColumnVerdict, "stable_step", none)
+    monkeypatch.setattr(calibration_setup.ColumnVerdict, "stable_step", none)
     assert stable_step(item(sloping(0.1))) == 0.0
 
 

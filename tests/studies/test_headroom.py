@@ -15,8 +15,10 @@ from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
 from levelstride.studies import headroom as study
 from levelstride.studies import holding
-from levelstride.studies.headroom import QUANTITIES, headroom, room
+from levelstride.studies.headroom import headroom, room
 from levelstride.studies.level_families import Family
+from levelstride.studies.quantities import QUANTITIES
+from levelstride.studies.stretched_levels import NoMemberError
 from levelstride.tableaux.lookup import find
 
 TINY = {
@@ -199,6 +201,17 @@ def test_a_value_that_no_column_can_have_ends_the_range():
     assert bracketing(Question(1e9, 1e9), changed=changed).tried_to == 8.0
     found = bracketing(Question(1e9, 1e9), present=9.0, changed=changed)
     assert found.reason == "no other value is possible: too large"
+    at_the_end = bracketing(Question(1e9, 1e9), present=100.0)
+    assert at_the_end.reason == "no other value is possible: the range ends there"
+
+
+def test_a_level_set_that_the_family_has_not_ends_the_range():
+    def changed(_, value):
+        if value > 10.0:
+            raise NoMemberError("no power does")
+        return value
+
+    assert bracketing(Question(1e9, 1e9), changed=changed).tried_to == 8.0
 
 
 def test_frozen_rows_are_asked_at_one_step_as_at_all():

@@ -12,10 +12,11 @@ from levelstride.splitting.splitting import resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.tolerance import Tolerance
 from levelstride.studies.counterfactuals import ask_what_if
-from levelstride.studies.headroom import QUANTITIES, RoomItem, assembled, find_room, no_room
+from levelstride.studies.headroom import RoomItem, assembled, find_room, no_room
 from levelstride.studies.keys import Kept, closer_key, find_record, keep_record, room_key
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.plan import Plan, PlannedItem
+from levelstride.studies.quantities import QUANTITIES
 from levelstride.studies.share_out import outcome
 from levelstride.studies.work_item import WorkItem, unpacked
 

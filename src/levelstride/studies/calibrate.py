@@ -26,14 +26,8 @@ from levelstride.results.calibration import (
 from levelstride.results.wording import CAUTION, number
 from levelstride.splitting.splitting import resolve
 from levelstride.stability.verdict import SAME
-from levelstride.studies.assumptions import (
-    LimitItem,
-    Setup,
-    Value,
-    Varied,
-    chosen,
-    stable_step,
-)
+from levelstride.studies.assumptions import Value, Varied, chosen
+from levelstride.studies.calibration_setup import LimitItem, Setup, stable_step
 from levelstride.studies.calibration_words import contradictions, verdict
 from levelstride.studies.gather import Progress
 from levelstride.studies.limit import DEFAULT_SPLIT, SCAN

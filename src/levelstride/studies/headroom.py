@@ -17,9 +17,7 @@ from typing import Final
 
 import numpy as np
 
-from levelstride.column import knobs
 from levelstride.column.column import Column
-from levelstride.column.variants import with_levels
 from levelstride.errors import CalculationError, InputError
 from levelstride.results.headroom import Headroom, Room
 from levelstride.results.wording import number
@@ -27,18 +25,16 @@ from levelstride.splitting.splitting import resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.tolerance import Tolerance
 from levelstride.studies.holding import Objection, StepQuestion, Trial
-from levelstride.studies.level_families import Family
 from levelstride.studies.limit import SCAN
 from levelstride.studies.methods import tableau_of
+from levelstride.studies.quantities import QUANTITIES, Quantity
+from levelstride.studies.stretched_levels import NoMemberError
 
 BRACKET: Final = 1.01
 """Ratio of the value lost to the value carried, at most."""
 
 PROOFS: Final = 8
 """Full searches of one quantity, at most; one where the first agrees with the sampled waves."""
-
-FINEST_SHARE: Final = 0.01
-"""Grid spacing that is tried at last, as a share of the present one [1]."""
 
 LEAST: Final = 1000.0
 """The smallest value tried where the column has none, as a divisor of the first."""
@@ -54,50 +50,6 @@ CERTIFIED: Final = (
     "row; doubled or halved up to there, so that a loss that is regained within a factor two can "
     "be missed"
 )
-
-
-@dataclass(frozen=True, slots=True)
-class Quantity:
-    """Something about a column that may change.
-
-    Parameters
-    ----------
-    present : callable
-        Its value in a column.
-    changed : callable
-        Makes a column with another value.
-    end : callable
-        Value of a column that is tried at last.
-    start : float
-        Value tried first where the column has none; 0 where smaller values are harder.
-    """
-
-    present: Callable[[Column], float]
-    changed: Callable[[Column, float], Column]
-    end: Callable[[Column], float]
-    start: float = 0.0
-
-    @property
-    def smaller(self) -> bool:
-        """Whether smaller values are harder."""
-        return self.start == 0.0
-
-
-def _lowest_layer(column: Column) -> float:
-    return float(column.levels.thickness_m[0])
-
-
-def _thinnest_lowest_layer(column: Column) -> float:
-    """The end of the family of level sets, or whatever the air and the tables allow before it."""
-    return Family(column.levels.interfaces_m).coordinates(3)[-1]
-
-
-def _with_lowest_layer(column: Column, thickness_m: float) -> Column:
-    return with_levels(column, Family(column.levels.interfaces_m).at(thickness_m))
-
-
-def _up_to(last: float, present: Callable[[Column], float]) -> Callable[[Column], float]:
-    return lambda column: max(last, 4.0 * present(column))
 
 
 @dataclass(frozen=True, slots=True)
@@ -151,35 +103,6 @@ def no_room(item: RoomItem, error: Exception) -> Room:
     """Stand in for a room that could not be found."""
     present = QUANTITIES[item.quantity].present(pickle.loads(item.column))
     return Room(quantity=item.quantity, present=present, reason=str(error))
-
-
-QUANTITIES: Final[Mapping[str, Quantity]] = {
-    "slope": Quantity(
-        knobs.largest_slope, knobs.with_largest_slope, _up_to(3.0, knobs.largest_slope), 0.2
-    ),
-    "wind_m_per_s": Quantity(
-        knobs.largest_wind, knobs.with_largest_wind, _up_to(200.0, knobs.largest_wind), 20.0
-    ),
-    "updraft_m_per_s": Quantity(
-        knobs.largest_updraft,
-        knobs.with_largest_updraft,
-        _up_to(100.0, knobs.largest_updraft),
-        2.0,
-    ),
-    "vertical_diffusion_m2_per_s": Quantity(
-        knobs.largest_diffusivity,
-        knobs.with_largest_diffusivity,
-        _up_to(1e4, knobs.largest_diffusivity),
-        10.0,
-    ),
-    "grid_spacing_m": Quantity(
-        lambda column: column.horizontal.grid_spacing_m,
-        knobs.with_grid_spacing,
-        lambda column: FINEST_SHARE * column.horizontal.grid_spacing_m,
-    ),
-    "lowest_layer_m": Quantity(_lowest_layer, _with_lowest_layer, _thinnest_lowest_layer),
-}
-"""What is varied, in the order of the answer."""
 
 
 @on_one_thread
@@ -309,7 +232,7 @@ class _Bracketing:
         self._empty = Room(quantity=name, present=self._present)
         self._trials: dict[float, Trial | None] = {}
         self._objections: dict[float, Objection | None] = {}
-        self._last_problem = ""
+        self._last_problem = "the range ends there"
 
     def run(self) -> Room:
         """Bracket, bisect and prove; what the proof refuses is bisected again."""
@@ -398,8 +321,8 @@ class _Bracketing:
             return self._question.trial(self._column)
         try:
             return self._question.trial(self._varied.changed(self._column, value))
-        except InputError as error:
-            self._last_problem = error.problems[0]
+        except (InputError, NoMemberError) as error:
+            self._last_problem = str(error).splitlines()[0]
             return None
 
     def _found(self, carried: float, lost: float) -> Room:
