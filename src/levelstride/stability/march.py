@@ -29,10 +29,10 @@ Array = NDArray[np.float64]
 FIRST_STEPS = 8
 """Steps up to the first look at the norm; even tenfold growth a step stays far from overflow."""
 
-GLANCE, CLOSE = 1000, 8000
-"""Steps after which a quiet wave counts as stable in a scan, and at a limit."""
+GLANCE = 1000
+"""Steps after which a quiet wave counts as stable."""
 
-MOST_STEPS = 20000
+MOST_STEPS = 4000
 """Steps after which full matrices tell growth that is still unclear at less cost."""
 
 EFOLDINGS = 3.0
@@ -83,10 +83,12 @@ class March:
     Parameters
     ----------
     tolerance : Tolerance
+    most : int
+        Steps after which what is unclear stays so, where not all the time is asked for.
     """
 
-    def __init__(self, tolerance: Tolerance) -> None:
-        self._tolerance = tolerance
+    def __init__(self, tolerance: Tolerance, most: int = MOST_STEPS) -> None:
+        self._tolerance, self._most = tolerance, most
         self._steppers: dict[tuple[int, ...], LaneStepper] = {}
 
     def look(
@@ -110,7 +112,7 @@ class March:
                 return [Look(Seen.GROWS, np.inf)]
             return [self.look([problem], dt, enough)[0] for problem in problems]
         with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-            return _Course(problems, stepper, self._tolerance).run(enough)
+            return _Course(problems, stepper, self._tolerance).run(enough, self._most)
 
     def _stepper(self, problems: Sequence[WaveProblem], dt: float) -> LaneStepper:
         key = tuple(id(problem) for problem in problems)
@@ -138,11 +140,11 @@ class _Course:
         self._log, self._highest = np.zeros(nlane), np.zeros(nlane)
         self._steps = 0
 
-    def run(self, enough: int | None) -> list[Look]:
+    def run(self, enough: int | None, most: int) -> list[Look]:
         found: list[Look | None] = [None] * len(self._problems)
         last = int(np.ceil(EFOLDINGS * self._tolerance.efolding_s / self._dt))
         if enough is not None:
-            last = min(last, MOST_STEPS)
+            last = min(last, most)
         enough = last if enough is None else min(enough, last)
         while True:
             rates = self._go_on(max(self._steps, FIRST_STEPS))

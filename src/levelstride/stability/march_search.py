@@ -13,7 +13,7 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 
 from levelstride.stability.by_growth import first_failure
-from levelstride.stability.march import CLOSE, EFOLDINGS, GLANCE, MOST_STEPS, QUIET, March, Seen
+from levelstride.stability.march import EFOLDINGS, QUIET, March, Seen
 from levelstride.stability.step_limit import (
     BISECTION,
     NEAR_MINIMUM,
@@ -53,6 +53,12 @@ DOUBTFUL = 0.5
 
 SLOW_STRIDE = 1.8
 """Factor between steps that are asked about slow growth."""
+
+CLOSE, MOST_SHORTER = 4000, 3
+"""Steps that bear out a limit, and how often it is shortened where they do not."""
+
+LONG_MARCH = 20000
+"""Steps of the longest march that costs less than full matrices of every wave do."""
 
 NEARBY = 1.5
 """How far below a limit that is known roughly, as a factor, the scan begins."""
@@ -95,7 +101,8 @@ class MarchSearch:
     ) -> None:
         self._watch = watch
         self._waves, self._tolerance = waves, tolerance
-        self._march = March(tolerance)
+        self._dense = waves.problem(0, waves.kappas[0][0]).size <= DENSE_UNKNOWNS
+        self._march = March(tolerance) if self._dense else March(tolerance, LONG_MARCH)
         self._limits: dict[int, float] = {}
         self._filled: dict[int, float] = {}
         self._largest_s = waves.largest_s
@@ -136,12 +143,11 @@ class MarchSearch:
         """Whether a step keeps waves stable, as far as marching tells."""
         return not any(self._fails(group, dt) for group in _groups(problems))
 
-    def _fails(
-        self, problems: Sequence[WaveProblem], dt: float, enough: int = GLANCE
-    ) -> list[WaveProblem]:
+    def _fails(self, problems: Sequence[WaveProblem], dt: float) -> list[WaveProblem]:
         """Waves that a march refutes; what it leaves open is asked about and noted at once."""
-        looks = self._march.look(problems, dt, enough)
-        failing = [p for p, look in zip(problems, looks, strict=True) if look.seen is Seen.GROWS]
+        looks = self._march.look(problems, dt)
+        told = {Seen.GROWS} if self._dense else {Seen.GROWS, Seen.UNCLEAR}
+        failing = [p for p, look in zip(problems, looks, strict=True) if look.seen in told]
         if failing:
             return failing
         unclear = [(look.rate, i) for i, look in enumerate(looks) if look.seen is Seen.UNCLEAR]
@@ -154,7 +160,7 @@ class MarchSearch:
 
         About its growth, and about the norms of its powers too if these may be what is too large.
         """
-        if dt > self._smallest():
+        if dt > self._smallest() or not self._dense:
             return
         powers = powers or problem.size <= CERTAIN_UNKNOWNS
         grows = problem.growth(dt) > problem.rate(self._tolerance)
@@ -180,7 +186,7 @@ class MarchSearch:
             for problem in sorted(slow, key=lambda problem: -problem.growth(dt)):
                 self._ask(problem, dt)
             return
-        if EFOLDINGS * tolerance.efolding_s / dt <= MOST_STEPS:
+        if EFOLDINGS * tolerance.efolding_s / dt <= LONG_MARCH:
             rates = [
                 -np.inf if look.seen is Seen.QUIET else look.rate
                 for look in self._march.look(problems, dt, None)
@@ -245,26 +251,24 @@ class MarchSearch:
                 failing, high, low = still, low, low / 2
                 if low < SMALLEST_FIRST_STEP:
                     raise no_step(failing[0].kappa)
-        failing, low, high = self._bisect(failing, low, high, GLANCE)
-        if still := self._fails(failing, low, CLOSE):
-            factor = BISECTION
-            while still:
-                failing, high, factor = still, low, factor**2
-                low = high / factor
-                still = self._fails(failing, low, CLOSE)
-            failing, low, high = self._bisect(failing, low, high, CLOSE)
+        failing, low, high = self._bisect(failing, low, high)
+        for _ in range(MOST_SHORTER):
+            looks = self._march.look(failing, low, CLOSE)
+            if all(look.seen is Seen.QUIET for look in looks):
+                break
+            low, high = low / BISECTION, low
         for problem in failing:
             self._note(Bracket(low, high, problem))
 
     def _bisect(
-        self, failing: Sequence[WaveProblem], low: float, high: float, enough: int
+        self, failing: Sequence[WaveProblem], low: float, high: float
     ) -> tuple[Sequence[WaveProblem], float, float]:
         before = self._smallest()
         while high / low > BISECTION:
             if low >= self._smallest() < before:
                 break  # slow growth was found below: nothing here matters any more
             middle = float(np.sqrt(low * high))
-            still = self._fails(failing, middle, enough)
+            still = self._fails(failing, middle)
             if still:
                 failing, high = still, middle
             else:
@@ -390,7 +394,7 @@ class MarchSearch:
         """Ask full matrices about the binding wave on the stable side of its limit."""
         assert self.best is not None
         problem, low = self.best.problem, self.best.low
-        if problem.size > DENSE_UNKNOWNS or not self._asks_judge:
+        if not (self._dense and self._asks_judge):
             return
         if problem.growth_is_known(low) and problem.size > CERTAIN_UNKNOWNS:
             return  # told already, and the powers of a step that marches quietly are small
