@@ -314,6 +314,7 @@ def test_whoever_watches_is_told_what_is_worked_on():
         tableau="ARS(2,3,2)",
         split="sound+buoyancy",
         certify=True,
+        what_if=False,
         progress=lambda done, total, on: told.append((done, total, on)),
     )
     done = [part for part, _, _ in told]
