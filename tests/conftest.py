@@ -2,9 +2,16 @@
 
 import os
 
+import pytest
 from hypothesis import settings
 
 # A change is judged by the same examples each time; whoever develops meets new ones.
 settings.register_profile("same-examples", derandomize=True, deadline=None)
 if os.environ.get("CI"):
     settings.load_profile("same-examples")
+
+
+@pytest.fixture(autouse=True)
+def _width_of_a_file(monkeypatch):
+    """Output is as wide as in a file, whatever terminal the tests run in."""
+    monkeypatch.delenv("COLUMNS", raising=False)

@@ -34,7 +34,7 @@ if TYPE_CHECKING:
     from levelstride.studies.plan import CurrentConfiguration
     from levelstride.studies.stretch import stretch
 
-__version__ = "0.1.0"
+__version__ = "0.2.0"
 
 __all__ = [
     "Advice",

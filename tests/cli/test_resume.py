@@ -28,7 +28,7 @@ for number in range(int(sys.argv[2]), 1_000_000):
 """
 
 
-KILLS = 3
+KILLS = 2
 """Number of times that a whole command is killed; what keeps the items is killed more often."""
 
 

@@ -102,19 +102,21 @@ def agrees_with_the_plain_search(seed):
     ]
     first_s = None if found is None else found.low / 30
     plain = plain_stable_step(waves, TOLERANCE.efolding_s, 1000.0, LONGEST_S, first_s)
-    if found is None or plain is None:
-        assert found is plain
-    else:
+    if found is not None and (plain is None or found.low < (1 - AGREES) * plain):
+        # a window narrower than the ratio of the plain scan, which full matrices confirm
+        assert found.problem.violated(found.high, TOLERANCE)
+    elif plain is not None:
+        assert found is not None, f"{tableau.name}, {splitting.name}: {plain} s"
         assert found.low == pytest.approx(plain, rel=AGREES), f"{tableau.name}, {splitting.name}"
 
 
-@pytest.mark.parametrize("seed", range(60))
+@pytest.mark.parametrize("seed", range(30))
 def test_never_stable_where_full_matrices_say_unstable(seed):
     never_above_full_matrices(seed)
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("seed", range(60, 400))
+@pytest.mark.parametrize("seed", range(30, 400))
 def test_never_stable_where_full_matrices_say_unstable_many_times(seed):
     never_above_full_matrices(seed)
 
