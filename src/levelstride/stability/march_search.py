@@ -101,6 +101,7 @@ class MarchSearch:
     ) -> None:
         self._watch = watch
         self._waves, self._tolerance = waves, tolerance
+        self._sparsely = waves.problem(0, waves.kappas[0][0]).size > CERTAIN_UNKNOWNS
         self._dense = waves.problem(0, waves.kappas[0][0]).size <= DENSE_UNKNOWNS
         self._march = March(tolerance) if self._dense else March(tolerance, LONG_MARCH)
         self._limits: dict[int, float] = {}
@@ -365,9 +366,10 @@ class MarchSearch:
             low, step = step, step * SCAN_RATIO
 
     def _look_for_slow_growth(self) -> None:
-        """Ask every wave about growth too slow for a glance, at a few steps below the limit.
+        """Ask about growth too slow for a glance, at a few steps below the limit.
 
-        Such growth comes and goes over factors of the step, not over percents.
+        Such growth comes and goes over factors of the step, not over percents, and neighbouring
+        waves share it: with many unknowns every second one is asked.
         """
         assert self.best is not None
         problems = self._waves.problems()
@@ -375,7 +377,7 @@ class MarchSearch:
         first = max(NOT_SMALL / slow if slow else np.inf, self._known_s)
         step = self._smallest() / SLOW_STRIDE
         while step > first:
-            for group in _groups(problems):
+            for group in _groups(problems[:: 2 if self._sparsely else 1]):
                 self._ask_about_slow_growth(group, step)
             step = min(step, self._smallest())
             step /= SLOW_STRIDE
