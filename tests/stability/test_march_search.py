@@ -58,7 +58,7 @@ def test_the_answer_is_that_of_full_matrices(tableau, split, monkeypatch):
     assert breaks(verdict, found.low) == []
 
 
-@pytest.mark.parametrize("staggering", ["lorenz", "charney-phillips"])
+@pytest.mark.parametrize("staggering", ["lorenz"])
 def test_over_slopes_and_in_wind(staggering, monkeypatch):
     monkeypatch.setattr(march_search, "CERTAIN_UNKNOWNS", 0)
     column = tower(
@@ -110,13 +110,13 @@ def agrees_with_the_plain_search(seed):
         assert found.low == pytest.approx(plain, rel=AGREES), f"{tableau.name}, {splitting.name}"
 
 
-@pytest.mark.parametrize("seed", range(30))
+@pytest.mark.parametrize("seed", range(20))
 def test_never_stable_where_full_matrices_say_unstable(seed):
     never_above_full_matrices(seed)
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("seed", range(30, 400))
+@pytest.mark.parametrize("seed", range(20, 400))
 def test_never_stable_where_full_matrices_say_unstable_many_times(seed):
     never_above_full_matrices(seed)
 

@@ -236,6 +236,7 @@ def test_work_items_are_plain_data(column):
     assert pickle.loads(pickle.dumps(item)) == item
 
 
+@pytest.mark.slow
 def test_the_whole_path_gives_the_same_records_whoever_works(column):
     with serial() as executor:
         here = advise(column, executor=executor)

@@ -38,11 +38,12 @@ def processes(workers: int) -> Iterator[Executor]:
         yield executor
     except BaseException:
         executor.shutdown(wait=False, cancel_futures=True)
-        workers_left = set(multiprocessing.active_children()) - before
-        for worker in workers_left:
-            worker.terminate()
-        for worker in workers_left:
-            worker.join()
+        # the pool may be starting a worker at this very moment: look until none is left
+        while workers_left := set(multiprocessing.active_children()) - before:
+            for worker in workers_left:
+                worker.terminate()
+            for worker in workers_left:
+                worker.join()
         raise
     executor.shutdown(wait=True)
 
