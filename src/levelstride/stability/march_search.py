@@ -42,11 +42,8 @@ SHORT, NOT_SMALL = 0.3, 0.15
 CERTAIN_UNKNOWNS = 250
 """Up to so many unknowns full matrices are asked about every wave at the answer."""
 
-LADDER_UNKNOWNS = 120
-"""Up to so many unknowns they are asked about every wave at steps below the answer too."""
-
-DENSE_UNKNOWNS = 1300
-"""Up to so many unknowns full matrices judge the answer at the binding wave."""
+LADDER_UNKNOWNS, DENSE_UNKNOWNS = 120, 1300
+"""The same about every wave at steps below the answer too; and about the binding wave alone."""
 
 DOUBTFUL = 0.5
 """Share of the tolerated rate from which growth of a wave that is not quiet is looked into."""
@@ -200,8 +197,6 @@ class MarchSearch:
             if rates[i] >= DOUBTFUL * tolerance.rate:
                 self._ask(problems[i], dt)
 
-    # -- the scan ------------------------------------------------------------------------------
-
     def _scan(self, problems: Sequence[WaveProblem], turn: float, first: float = 0.0) -> None:
         """Look at ever longer steps until one fails or the smallest limit known is passed."""
         if not problems:
@@ -281,8 +276,6 @@ class MarchSearch:
         if self.best is None or bracket.low < self.best.low:
             self.best = bracket
 
-    # -- the answer ----------------------------------------------------------------------------
-
     def _settle(self, *, refine: bool) -> None:
         """Refine the waves, look closely below the limit, ask every wave again, judge."""
         while self.best is not None:
@@ -317,7 +310,8 @@ class MarchSearch:
             assert best is not None
             kappas = self._waves.kappas[air]
             self._find_limits([self._waves.problem(air, kappa) for kappa in kappas])
-            limits = [self._limit(self._waves.problem(air, kappa)) for kappa in kappas]
+            problems = [self._waves.problem(air, kappa) for kappa in kappas]
+            limits = [self._limits.get(id(problem), np.inf) for problem in problems]
             added = between(kappas, limits, self._smallest())
             if not added:
                 return
@@ -327,10 +321,6 @@ class MarchSearch:
 
     def _smallest(self) -> float:
         return np.inf if self.best is None else self.best.low
-
-    def _limit(self, problem: WaveProblem) -> float:
-        """Limit of one wave; inf if it is beyond all that matters."""
-        return self._limits.get(id(problem), np.inf)
 
     def _find_limits(self, problems: list[WaveProblem]) -> None:
         """Find the limit of every wave that fails within what matters for refinement."""
