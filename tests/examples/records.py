@@ -4,17 +4,15 @@ from dataclasses import asdict, fields
 
 from levelstride.results.biting import Bites, Counterfactual, FieldProfile, StepOfAir
 from levelstride.results.calibration import SafetyFactor
+from levelstride.results.certificate import Certificate, CertifiedWave, RefutedStep
 from levelstride.results.dataset import (
     Advice,
     AdviceRow,
-    Certificate,
-    CertifiedWave,
     ColumnSummary,
     CurrentStep,
     Limit,
     OwnGrowth,
     Provenance,
-    RefutedStep,
     StepAtTolerance,
     Window,
 )

@@ -1,12 +1,12 @@
 """A certificate as a record, and in words."""
 
-from levelstride.results import dataset
+from levelstride.results import certificate as records
 from levelstride.results.wording import number
 from levelstride.stability.certificate import DENSE, SOLVED, Certificate
 from levelstride.stability.tolerance import Tolerance
 
 
-def record(certificate: Certificate) -> dataset.Certificate:
+def record(certificate: Certificate) -> records.Certificate:
     """Turn a certificate into the record of it.
 
     Parameters
@@ -14,12 +14,12 @@ def record(certificate: Certificate) -> dataset.Certificate:
     certificate : levelstride.stability.certificate.Certificate
         One that holds.
     """
-    return dataset.Certificate(
+    return records.Certificate(
         below_s=certificate.low,
         above_s=certificate.high,
         breaks_above="+".join(certificate.breaks_high),
         waves=tuple(
-            dataset.CertifiedWave(
+            records.CertifiedWave(
                 air=wave.problem.air.name,
                 wavenumber_per_m=wave.problem.kappa,
                 growth_below_per_s=_finite(wave.growth_low),
@@ -31,7 +31,7 @@ def record(certificate: Certificate) -> dataset.Certificate:
         ),
         worst=certificate.waves.index(certificate.worst),
         refuted=tuple(
-            dataset.RefutedStep(
+            records.RefutedStep(
                 step_s=refuted.step_s,
                 air=refuted.problem.air.name,
                 wavenumber_per_m=refuted.problem.kappa,
