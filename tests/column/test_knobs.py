@@ -32,6 +32,11 @@ def test_the_lowest_slope_gradient_of_a_column_stays():
     assert knobs.with_value(full, "terrain.slope", 0.3).lowest_slope_gradient == "full"
 
 
+def test_terms_that_are_left_out_stay_left_out():
+    without = replace(column(terrain={"slope": 0.1}), left_out=frozenset({"slope-divergence"}))
+    assert knobs.with_value(without, "terrain.slope", 0.3).left_out == without.left_out
+
+
 def test_a_second_air_state_is_named_by_its_place():
     airs = [{"kind": "isothermal", "temperature_k": t, "name": f"{t:g}"} for t in (250.0, 270.0)]
     changed = knobs.with_value(column(air=airs), "air[1].temperature_k", 280.0)

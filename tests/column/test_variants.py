@@ -1,4 +1,4 @@
-from dataclasses import fields
+from dataclasses import fields, replace
 from pathlib import Path
 
 import numpy as np
@@ -99,6 +99,13 @@ def test_other_levels_are_another_column(plain):
     assert made.airs[0].theta_c.shape == (4,)
     assert column.definition["levels"]["kind"] == "uniform"
     assert made.advice.splits == column.advice.splits
+
+
+def test_terms_that_are_left_out_stay_left_out(plain):
+    column = replace(build(plain), left_out=frozenset({"buoyancy", "stratification"}))
+    heights = np.array([0.0, 20.0, 60.0, 500.0, 9000.0])
+    assert with_levels(column, heights).left_out == column.left_out
+    assert with_levels(build(plain), heights).left_out == frozenset()
 
 
 @pytest.mark.parametrize(

@@ -200,6 +200,9 @@ def _inside(place: Any, name: str, key: str) -> Any:
 
 
 def _again(column: Column, definition: Mapping[str, Any]) -> Column:
-    """Build a column anew, with the lowest slope gradient that it has now."""
-    made = build(definition, source=column.source)
-    return replace(made, lowest_slope_gradient=column.lowest_slope_gradient)
+    """Build a column anew, with what it has beside its definition now."""
+    return replace(
+        build(definition, source=column.source),
+        lowest_slope_gradient=column.lowest_slope_gradient,
+        left_out=column.left_out,
+    )

@@ -1,6 +1,7 @@
 """Columns that differ from a given one in their level set alone."""
 
 from collections.abc import Mapping
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -40,7 +41,7 @@ def with_levels(column: Column, interfaces_m: Array) -> Column:
 
     Air, wind, updraft, slope, mixing and the absorbing layer are evaluated anew on the levels; a
     slope with linear decay and the absorbing layer reach to the new lid. Levels that were given by
-    pressure are heights from here on.
+    pressure are heights from here on. Terms that the column leaves out stay left out.
 
     Parameters
     ----------
@@ -54,7 +55,7 @@ def with_levels(column: Column, interfaces_m: Array) -> Column:
     -------
     Column
         Its definition lists the interfaces and can be built, or written as a column file and
-        loaded, again; its digest is that of this definition.
+        loaded, again; its digest is that of this definition. What is left out is no part of it.
 
     Raises
     ------
@@ -75,4 +76,4 @@ def with_levels(column: Column, interfaces_m: Array) -> Column:
     """
     made = levels_definition(column.definition, interfaces_m)
     made["terrain"]["lowest_slope_gradient"] = column.lowest_slope_gradient
-    return build(made, source=column.source)
+    return replace(build(made, source=column.source), left_out=column.left_out)
