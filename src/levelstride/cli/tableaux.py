@@ -143,15 +143,7 @@ def _pairs(tableau: "Tableau", report: "Audit") -> list[tuple[str, str]]:
         ("stiffly accurate", "yes" if tableau.stiffly_accurate else "no"),
     ]
     if tableau.kind == "explicit":
-        implicit = (
-            "coupling order",
-            "implicit order",
-            "implicit solves",
-            "value at infinity",
-            "A-stable",
-            "stiffly accurate",
-        )
-        pairs = [pair for pair in pairs if pair[0] not in implicit]
+        pairs = [pair for pair in pairs if pair[0] not in _IMPLICIT]
     for entry in report.negative_diagonals:
         pole = f"pole at z = {number(entry.pole)}, which damping terms can meet"
         pairs.append(("negative diagonal", f"stage {entry.stage}: {number(entry.value)}, {pole}"))
