@@ -6,18 +6,21 @@ from math import inf
 
 import pytest
 
-from levelstride.column.knobs import largest_slope, largest_wind
+from levelstride.column.knobs import largest_slope, largest_wind, lowest_slope_gradients
 from levelstride.column.read import build
 from levelstride.errors import CalculationError, InputError
 from levelstride.execution.serial import serial
 from levelstride.results.calibration_file import read_safety_factor, write_calibration
 from levelstride.results.wording import CAUTION
 from levelstride.splitting.splitting import resolve
+from levelstride.stability.tolerance import Tolerance
+from levelstride.stability.verdict import ColumnVerdict
 from levelstride.studies import assumptions, calibration_setup
 from levelstride.studies import calibrate as study
 from levelstride.studies.assumptions import ASSUMPTIONS
 from levelstride.studies.calibrate import Observed, agreement, calibrate
 from levelstride.studies.calibration_setup import LimitItem, stable_step
+from levelstride.tableaux.lookup import find
 
 TINY = {
     "title": "tiny",
@@ -109,6 +112,46 @@ def test_a_range_narrower_than_what_is_tried_first_is_found(limits):
     found = asked(seen([2.0], [2.06]), vary=["slope"])
     (agreeing,) = named(found, "slope").ranges
     assert 1 / 2.06 < agreeing.from_value <= agreeing.to_value <= 1 / 2.0 * 1.001
+
+
+def test_values_between_are_searched_near_and_the_ends_told_in_full(limits):
+    """A search near a known step finds 2 % too much here: what is told is not led astray."""
+    asked_near = []
+
+    def step(column, asked):
+        true = 1.0 / max(largest_slope(column), 0.01)
+        asked_near.append(asked.near_s)
+        return true if asked.near_s is None else 1.02 * true
+
+    limits["step"] = step
+    found = named(asked(seen([2.0], [3.0]), vary=["slope"]), "slope")
+    (agreeing,) = found.ranges
+    assert 1 / 3 < agreeing.from_value <= agreeing.to_value <= 1 / 2 * 1.001
+    assert agreeing.to_value == pytest.approx(1 / 2, rel=0.03)
+    told = {trial.value: trial.stable_steps_s for trial in found.trials}
+    for end in (agreeing.from_value, agreeing.to_value):
+        assert told[end] == (1.0 / end,)
+    assert all(near is None or 1.0 < near < 5.0 for near in asked_near)
+    assert len([near for near in asked_near if near is not None]) > 8
+
+
+def test_a_search_near_a_step_finds_what_the_full_one_finds():
+    levels = {"kind": "geometric", "layers": 27, "top_m": 8000.0, "lowest_layer_m": 60.0}
+    windy = column(levels=levels, wind={"kind": "uniform", "speed_m_per_s": 10.0})
+    whole = stable_step(item(windy))
+    for off in (0.8, 1.3):
+        near = stable_step(replace(item(windy), near_s=off * whole))
+        assert near == pytest.approx(whole, rel=2e-3)
+
+
+def test_over_a_slope_the_harder_gradient_counts():
+    levels = {"kind": "uniform", "layers": 3, "top_m": 3000.0}
+    steep = column(levels=levels, terrain={"slope": 0.6})
+    both = [
+        ColumnVerdict(one, resolve(SPLIT), find(TABLEAU)).stable_step(Tolerance(86400.0, 1000.0))
+        for one in lowest_slope_gradients(steep)
+    ]
+    assert stable_step(item(steep)) == min(found.step_s for found in both)
 
 
 def test_two_ranges_stay_two(limits):
@@ -255,7 +298,7 @@ def test_progress_and_executors(limits):
 
 
 def test_a_search_that_finds_no_step_counts_as_none(monkeypatch):
-    def none(*_):
+    def none(*_, **__):
         raise CalculationError("no step")
 
     monkeypatch.setattr(calibration_setup.ColumnVerdict, "stable_step", none)

@@ -61,6 +61,30 @@ def test_the_step_holds_on_one_side_and_not_on_the_other(column, step_s, quantit
     assert found.wavelength_m is not None
 
 
+def test_columns_that_march_are_bracketed_as_well():
+    levels = {"kind": "geometric", "layers": 27, "top_m": 8000.0, "lowest_layer_m": 100.0}
+    many = build(TINY | {"levels": levels})
+    asked = {"tableau": TABLEAU, "split": SPLIT, "step_s": 2.0, "holds_now": True}
+    found = room(many, "grid_spacing_m", **asked)
+    assert found.carried <= 1.01 * found.lost
+    finer = knobs.with_grid_spacing(many, found.carried)
+    assert 2.0 <= 1.001 * stable_step(finer) < 2.04
+    assert found.criterion
+
+
+@pytest.mark.parametrize("layers", [5, 27])
+def test_a_wave_that_grows_is_found_among_many(layers):
+    levels = {"kind": "geometric", "layers": layers, "top_m": 8000.0, "lowest_layer_m": 100.0}
+    verdict = ColumnVerdict(build(TINY | {"levels": levels}), resolve(SPLIT), find(TABLEAU))
+    problems = verdict.search.problems()
+    waves = holding.Waves(verdict, TOLERANCE)
+    for dt in (2.0, 4.0, 40.0):
+        growing = [problem for problem in problems if not problem.stable(dt, TOLERANCE)]
+        found = waves.growing(problems, dt)
+        assert found in growing if growing else found is None
+        assert all(waves.surely_stable(p, dt) == (p not in growing) for p in problems[:3])
+
+
 def test_the_lowest_layer_is_that_of_the_family_of_level_sets(column):
     step_s = 0.8 * stable_step(column, split="all-explicit")
     found = room(column, "lowest_layer_m", tableau=TABLEAU, split="all-explicit", step_s=step_s)
@@ -138,23 +162,28 @@ class Question:
 
     def __init__(self, cheap, full):
         self._cheap, self._full = cheap, full
+        self._refuses_beyond = float("inf")
         self.asked, self.proofs = [], 0
-        self.worst = False
 
     def trial(self, column):
         return column
 
     def holds(self, value, every=1):
         self.asked.append(value)
-        return value <= self._cheap
+        if value > self._cheap:
+            self._refuses_beyond = min(self._refuses_beyond, self._cheap)
+        return value <= self._refuses_beyond
 
     def refusal(self, value):
-        return "a wave" if self.worst and value > self._full else None
+        self.asked.append(value)
+        return "a wave" if value > self._refuses_beyond else None
 
     def objection(self, value):
         self.proofs += 1
-        self.worst = value > self._full
-        return holding.Objection("spectrum", 1.0) if self.worst else None
+        if value <= self._full:
+            return None
+        self._refuses_beyond = min(self._refuses_beyond, self._full)
+        return holding.Objection("spectrum", 1.0)
 
 
 def bracketing(question, present=0.0, end=100.0, changed=lambda _, value: value):
@@ -172,10 +201,12 @@ def test_a_bracket_holds_the_limit(limit, present, monkeypatch):
     assert len(question.asked) < 25
 
 
-def test_what_the_full_search_refuses_is_bisected_again():
-    question = Question(13.7, 9.2)
+@pytest.mark.parametrize("full", [13.6, 13.0, 9.2, 0.3])
+def test_what_the_full_search_refuses_is_bisected_again(full, monkeypatch):
+    monkeypatch.setattr(study._Bracketing, "_refusal", lambda *_: None)
+    question = Question(13.7, full)
     found = bracketing(question)
-    assert found.carried <= 9.2 <= found.lost <= 1.02 * found.carried
+    assert found.carried <= full <= found.lost <= 1.02 * found.carried
     assert question.proofs <= 3
 
 
@@ -183,7 +214,7 @@ def test_the_end_of_the_range_is_proven_too(monkeypatch):
     monkeypatch.setattr(study._Bracketing, "_refusal", lambda *_: None)
     assert bracketing(Question(1e9, 1e9)).tried_to == 100.0
     found = bracketing(Question(1e9, 30.0))
-    assert found.carried <= 30.0 <= found.lost
+    assert found.carried <= 30.0 <= found.lost <= 1.02 * found.carried
 
 
 def test_where_nothing_is_carried_it_says_so():

@@ -11,7 +11,7 @@ from concurrent.futures import Executor
 from dataclasses import dataclass, replace
 from itertools import pairwise
 from math import inf, isfinite, sqrt
-from typing import Final
+from typing import Final, TypeAlias
 
 from levelstride.column.column import Column
 from levelstride.errors import InputError
@@ -37,6 +37,9 @@ from levelstride.studies.summary import provenance, wind_note
 
 EDGE: Final = 1.01
 """Ratio to which the end of a consistent range is found."""
+
+Near: TypeAlias = tuple[float | None, ...]
+"""Steps near which limits are known to lie, one per column [s]."""
 
 AGREES, TOO_LOW, TOO_HIGH, BOTH = "agrees", "too low", "too high", "both"
 
@@ -249,14 +252,21 @@ class _Work:
             explains=bool(agreeing),
         )
 
-    def _trials(self, varied: Varied, values: Sequence[Value]) -> list[AssumptionTrial]:
-        """Try values; what a column cannot take is left out."""
+    def _trials(
+        self, varied: Varied, values: Sequence[Value], near_s: Sequence[Near] | None = None
+    ) -> list[AssumptionTrial]:
+        """Try values, near known steps if there are any; what a column cannot take is left out."""
         wanted, kept = [], []
-        for value in values:
+        for value, near in zip(values, near_s or [()] * len(values), strict=True):
             try:
-                wanted.append((f"{varied.name}: {value.label}", varied.items(value)))
+                items = varied.items(value)
             except InputError:
                 continue
+            if near:
+                items = tuple(
+                    replace(item, near_s=step) for item, step in zip(items, near, strict=True)
+                )
+            wanted.append((f"{varied.name}: {value.label}", items))
             kept.append(value)
         return [
             AssumptionTrial(
@@ -269,26 +279,45 @@ class _Work:
         ]
 
     def _refined(self, varied: Varied, trials: list[AssumptionTrial]) -> list[AssumptionTrial]:
-        """Halve every interval across which the agreement changes, down to 1 %."""
+        """Halve every interval across which the agreement changes, down to 1 %.
+
+        Values between are searched near the steps of their neighbours. Where they end a range in
+        the end, they are searched in full; if that changes the agreement, it goes on.
+        """
         smallest = min((t.value for t in trials if t.value), default=0.0)
+        roughly: set[float] = set()
         while True:
             trials.sort(key=lambda trial: trial.value or 0.0)
             between = [
-                _middle(one.value or 0.0, other.value or 0.0)
+                (_middle(one.value or 0.0, other.value or 0.0), _near(one, other))
                 for one, other in pairwise(trials)
                 if self._agreement(one) != self._agreement(other)
                 and _apart(one.value or 0.0, other.value or 0.0, smallest)
             ]
-            if not between:
-                return trials
-            found = self._trials(varied, [varied.value(at) for at in between])
-            if not found:
-                return trials
+            found = self._trials(varied, [varied.value(at) for at, _ in between],
+                                 [near for _, near in between])  # fmt: skip
             trials += found
+            roughly |= {trial.value for trial in found if trial.value is not None}
+            if found:
+                continue
+            told = {end for r in _ranges(trials) for end in (r.from_value, r.to_value)} & roughly
+            if not told:
+                return trials
+            roughly -= told
+            trials = [trial for trial in trials if trial.value not in told]
+            trials += self._trials(varied, [varied.value(at) for at in sorted(told)])
 
     def _agreement(self, trial: AssumptionTrial) -> str:
         steps = [inf if step is None else step for step in trial.stable_steps_s]
         return agreement(self._observed, steps)
+
+
+def _near(one: AssumptionTrial, other: AssumptionTrial) -> Near:
+    """Steps near which those between two values lie, one per column: the shorter of two."""
+    return tuple(
+        min((step for step in steps if step), default=None)
+        for steps in zip(one.stable_steps_s, other.stable_steps_s, strict=True)
+    )
 
 
 def _middle(low: float, high: float) -> float:

@@ -5,7 +5,9 @@ from __future__ import annotations
 import pickle
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 from math import inf
+from typing import Final
 
 from levelstride.column.column import Column
 from levelstride.column.knobs import lowest_slope_gradients
@@ -13,9 +15,12 @@ from levelstride.errors import CalculationError
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.tolerance import Tolerance
-from levelstride.stability.verdict import ColumnVerdict
+from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict
 from levelstride.studies.methods import tableau_of
 from levelstride.tableaux.tableau import Tableau
+
+REACH: Final = 1.05
+"""Multiple of the limit of one slope gradient up to which the other is searched."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,17 +37,23 @@ class LimitItem:
         Every term with its treatment.
     efolding_s : float
         Tolerated e-folding time [s].
+    near_s : float or None
+        A step near which the limit is known to lie, for a shorter search [s]; None for the full
+        one.
     """
 
     column: bytes
     tableau: str
     treatment: Mapping[str, str]
     efolding_s: float
+    near_s: float | None = None
 
 
 @on_one_thread
 def stable_step(item: LimitItem) -> float:
     """Find a stable step, over a slope the smaller of both treatments of its lowest gradient.
+
+    The harder treatment comes first; the other one is searched no further than matters.
 
     Parameters
     ----------
@@ -54,17 +65,28 @@ def stable_step(item: LimitItem) -> float:
     float
         The step [s]; inf where nothing bites, 0 where no step is stable.
     """
-    column: Column = pickle.loads(item.column)
-    tableau, splitting = tableau_of(column, item.tableau), resolve(item.treatment)
-    tolerance = Tolerance(item.efolding_s, column.advice.transient_limit)
+    columns = _columns(item.column)
+    tableau, splitting = tableau_of(columns[0], item.tableau), resolve(item.treatment)
+    tolerance = Tolerance(item.efolding_s, columns[0].advice.transient_limit)
     least = inf
-    for one in lowest_slope_gradients(column):
+    for one in columns[::-1]:
+        verdict = ColumnVerdict(one, splitting, tableau, min(LONGEST_STEP_S, REACH * least))
         try:
-            found = ColumnVerdict(one, splitting, tableau).stable_step(tolerance).step_s
+            found = verdict.stable_step(tolerance, near_s=item.near_s).step_s
         except CalculationError:
             return 0.0
         least = min(least, inf if found is None else found)
     return least
+
+
+@lru_cache(maxsize=4)
+def _columns(pickled: bytes) -> tuple[Column, ...]:
+    """Both treatments of the lowest slope gradient; the same objects each time.
+
+    What is known of their waves is then known to the next search of the same column.
+    """
+    column: Column = pickle.loads(pickled)
+    return lowest_slope_gradients(column)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -17,6 +17,7 @@ from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import wave_terms
+from levelstride.studies.holding import Waves
 from levelstride.studies.what_bites import binding_air
 from levelstride.tableaux.tableau import Tableau
 
@@ -242,32 +243,46 @@ def _step(
     if known.kappa is not None:
         extra = known.kappa
         verdict.search.kappas = [sorted({*kappas, extra}) for kappas in verdict.search.kappas]
-    if known.step_s is not None and _stays(verdict, known.step_s, known.kappa, tolerance):
-        return known.step_s, False
+    kept_s = 0.0
+    if known.step_s is not None:
+        asked = _Asked(verdict, tolerance)
+        lost_beyond = asked.loses(BEYOND * known.step_s, known.kappa)
+        if asked.keeps(known.step_s):
+            if lost_beyond:
+                return known.step_s, False
+            kept_s = known.step_s
     try:
-        step = verdict.stable_step(tolerance, refine=False).step_s
+        step = verdict.stable_step(tolerance, refine=False, known_s=kept_s).step_s
     except CalculationError:
         return None, False
     return step, step is None
 
 
-def _stays(
-    verdict: ColumnVerdict, step_s: float, kappa: float | None, tolerance: Tolerance
-) -> bool:
-    """Whether the stable step is the same: lost just beyond it as before, and kept up to it."""
-    airs = range(len(verdict.column.airs))
+class _Asked:
+    """A changed column that is asked about single steps."""
 
-    def rows_hold_at(dt: float) -> bool:
+    def __init__(self, verdict: ColumnVerdict, tolerance: Tolerance) -> None:
+        self._verdict, self._tolerance = verdict, tolerance
+        self._waves = Waves(verdict, tolerance)
+
+    def loses(self, step_s: float, kappa: float | None) -> bool:
+        """Whether a step is lost at one wave or in a frozen row."""
+        airs = range(len(self._verdict.column.airs)) if kappa is not None else ()
+        problems = [self._verdict.problem(air, kappa or 0.0) for air in airs]
+        if not all(self._waves.surely_stable(problem, step_s) for problem in problems):
+            return True
+        return not self._rows_hold(step_s)
+
+    def keeps(self, step_s: float) -> bool:
+        """Whether a step is kept at every wave and in every frozen row, and shorter ones too."""
+        if not self._rows_hold(step_s):
+            return False
+        problems = self._verdict.search.problems()
+        return all(self._waves.growing(problems, share * step_s) is None for share in SHARES)
+
+    def _rows_hold(self, step_s: float) -> bool:
+        verdict, rate = self._verdict, self._tolerance.rate
         return all(
-            rows_hold(verdict.column, air, verdict.splitting, verdict.tableau, tolerance.rate, dt)
+            rows_hold(verdict.column, air, verdict.splitting, verdict.tableau, rate, step_s)
             for air in verdict.column.airs
         )
-
-    beyond = BEYOND * step_s
-    binding = [] if kappa is None else [verdict.problem(air, kappa) for air in airs]
-    if all(one.stable(beyond, tolerance) for one in binding) and rows_hold_at(beyond):
-        return False
-    if not rows_hold_at(step_s):
-        return False
-    waves = verdict.search.problems()
-    return all(one.stable(share * step_s, tolerance) for share in SHARES for one in waves)

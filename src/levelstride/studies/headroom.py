@@ -1,16 +1,16 @@
 """How steep, windy, mixed, fine and thin a column may become before a step fails on it.
 
 Each quantity is varied by itself. It is doubled, or halved, until the step no longer holds, and
-the change is then bisected to 1 %. On the way a column is asked at the very step only, at the
-sampled waves and the frozen rows. The value found is proven by the full search over all shorter
-steps and the waves between; where that refuses it, the wave that it found is searched over all
-shorter steps on the way from then on.
+the change is then bisected to 1 %. On the way a column is asked at the very step only, and only
+about what refused another one before; at the value found, about the sampled waves and the frozen
+rows. That value is proven by the full search over all shorter steps and the waves between; where
+that refuses it, the wave that it found is searched over all shorter steps from then on.
 """
 
 from __future__ import annotations
 
 import pickle
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from math import sqrt
 from typing import Final
@@ -239,16 +239,16 @@ class _Bracketing:
         sure, lost = self._bracket()
         if lost is None and sure == self._present:
             return replace(self._empty, reason=f"no other value is possible: {self._last_problem}")
-        low, high, agrees = sure, lost, self._holds
+        low, high, near = sure, lost, False
         for _ in range(PROOFS):
             if high is not None:
-                low, high = self._bisected(low, high, agrees)
+                low, high = self._settled(low, high, near=near)
             if low == 0.0:
                 return replace(self._empty, lost=high, reason=f"even {number(high)} is too much")
             objection = self._objection(low)
             if objection is None:
                 return self._unbounded(low) if high is None else self._found(low, high)
-            low, high, agrees = self._present, low, self._not_refused
+            low, high, near = self._present, low, True
         reason = f"{PROOFS} full searches refused what sampled waves carry, the last {number(high)}"
         return replace(self._empty, lost=high, reason=reason)
 
@@ -272,24 +272,46 @@ class _Bracketing:
             return max(value / 2, self._end)
         return min(value * 2, self._end)
 
-    def _bisected(
-        self, sure: float, lost: float, agrees: Callable[[float], bool]
-    ) -> tuple[float, float]:
-        """Narrow a bracket; its lower end is 0 if there is nothing to be found above that."""
-        low, high = sure, lost
+    def _settled(self, sure: float, lost: float, *, near: bool) -> tuple[float, float]:
+        """Narrow a bracket by what refused before, and ask everything at the value found.
+
+        Where something else refuses that, it is asked from then on. The lower end is 0 if there is
+        nothing to be found above that.
+        """
+        while True:
+            low, lost = self._bisected(sure, lost, near=near)
+            if low in (0.0, sure) or self._holds(low):
+                return low, lost
+            lost, near = low, True
+
+    def _bisected(self, sure: float, lost: float, *, near: bool) -> tuple[float, float]:
+        """Narrow a bracket by what refused before; ``near`` if only its upper end is near."""
+        low, high = self._from_above(sure, lost) if near else (sure, lost)
         if low == 0.0:
             low = high / 2
-            while not agrees(low):
+            while not self._not_refused(low):
                 low, high = low / 2, low
                 if low < self._varied.start / LEAST:
                     return 0.0, high
         while max(low / high, high / low) > BRACKET:
             middle = sqrt(low * high)
-            if agrees(middle):
+            if self._not_refused(middle):
                 low = middle
             else:
                 high = middle
         return low, high
+
+    def _from_above(self, sure: float, lost: float) -> tuple[float, float]:
+        """Go back from a value that is lost, ever further, until one is not refused."""
+        away = 1 / BRACKET if lost > sure else BRACKET
+        while True:
+            value = lost * away
+            passed = (value - sure) * (lost - sure) <= 0.0
+            if passed or value < self._varied.start / LEAST:
+                return sure, lost
+            if self._not_refused(value):
+                return value, lost
+            lost, away = value, away**2
 
     def _holds(self, value: float) -> bool:
         trial = self._trial(value)
@@ -337,5 +359,5 @@ class _Bracketing:
         look = None if trial is None else question.refusal(trial)
         if trial is None or look is None:
             return None
-        at = trial.refused_at(look, question.step_s, question.tolerance) or question.step_s
-        return trial.objection(look, at, question.tolerance)
+        at = trial.refused_at(look, question.step_s) or question.step_s
+        return trial.objection(look, at)

@@ -1,12 +1,13 @@
 """Does one step hold on a column? Asked of many columns that differ a little.
 
 The full search proves that a step holds, and costs hundreds of looks. Most columns that a study
-asks about are refused by a wave that refused another one before, and need one look.
+asks about are refused by a wave that refused another one before, and need one look. Where unknowns
+are many, waves are marched side by side, and full matrices are asked what that leaves open.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from math import pi
@@ -14,12 +15,21 @@ from math import pi
 from levelstride.column.column import Column
 from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
+from levelstride.operator.setting import layout_of
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.courant import rows_hold
+from levelstride.stability.march import March, Seen
+from levelstride.stability.march_search import (
+    DENSE_UNKNOWNS,
+    LONG_MARCH,
+    TOGETHER,
+    MarchSearch,
+)
 from levelstride.stability.spectrum import sampled_wavenumbers
-from levelstride.stability.step_limit import StepSearch
+from levelstride.stability.step_limit import Bracket, StepSearch
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import SAME, ColumnVerdict, StableStep
+from levelstride.stability.wave_problem import WaveProblem
 from levelstride.tableaux.tableau import Tableau
 
 REACH = 1.05
@@ -64,6 +74,79 @@ class Objection:
     wavelength_m: float | None
 
 
+class Waves:
+    """Asks waves of one column about single steps.
+
+    Parameters
+    ----------
+    verdict : ColumnVerdict
+        Of the column.
+    tolerance : Tolerance
+    """
+
+    def __init__(self, verdict: ColumnVerdict, tolerance: Tolerance) -> None:
+        self._verdict, self._tolerance = verdict, tolerance
+        size = layout_of(verdict.column).size
+        self._judges = size <= DENSE_UNKNOWNS
+        most = {} if self._judges else {"most": LONG_MARCH}
+        self._march = March(tolerance, **most) if verdict.marches else None
+
+    def growing(self, problems: Sequence[WaveProblem], dt: float) -> WaveProblem | None:
+        """Find a wave that grows at a step: the fastest of those that march together.
+
+        Parameters
+        ----------
+        problems : sequence of WaveProblem
+        dt : float
+            [s]
+
+        Returns
+        -------
+        WaveProblem or None
+            None if all are stable, as far as marching tells where unknowns are many.
+        """
+        if self._march is None:
+            return next((p for p in problems if not p.stable(dt, self._tolerance)), None)
+        for first in range(0, len(problems), TOGETHER):
+            found = self._marched(self._march, problems[first : first + TOGETHER], dt)
+            if found is not None:
+                return found
+        return None
+
+    def surely_stable(self, problem: WaveProblem, dt: float) -> bool:
+        """Ask full matrices about a wave, which see growth too slow for a march."""
+        if self._judges:
+            return problem.stable(dt, self._tolerance)
+        return self.growing([problem], dt) is None
+
+    def loss_below(self, air: int, kappa: float, step_s: float) -> Bracket | None:
+        """Search the shorter steps of a wave; None if none is lost.
+
+        Raises
+        ------
+        CalculationError
+            If no step is stable, however short.
+        """
+        search = StepSearch(lambda _, k: self._verdict.problem(air, k), 1, [kappa], step_s)
+        if self._verdict.marches:
+            return MarchSearch(search, self._tolerance).run(refine=False)
+        return search.run(lambda problem, dt: problem.stable(dt, self._tolerance), refine=False)
+
+    def _marched(
+        self, march: March, problems: Sequence[WaveProblem], dt: float
+    ) -> WaveProblem | None:
+        looks = march.look(problems, dt)
+        told = {Seen.GROWS} if self._judges else {Seen.GROWS, Seen.UNCLEAR}
+        growing = [i for i, look in enumerate(looks) if look.seen in told]
+        if growing:
+            return problems[max(growing, key=lambda i: looks[i].rate)]
+        unclear = [i for i, look in enumerate(looks) if look.seen is Seen.UNCLEAR]
+        for i in sorted(unclear, key=lambda i: -looks[i].rate):
+            if not problems[i].stable(dt, self._tolerance):
+                return problems[i]
+        return None
+
+
 class Trial:
     """A column under examination: with a slope, both treatments of its lowest gradient.
 
@@ -72,10 +155,13 @@ class Trial:
     column : Column
     splitting : Splitting
     tableau : Tableau
+    tolerance : Tolerance
     """
 
-    def __init__(self, column: Column, splitting: Splitting, tableau: Tableau) -> None:
-        self._splitting, self._tableau = splitting, tableau
+    def __init__(
+        self, column: Column, splitting: Splitting, tableau: Tableau, tolerance: Tolerance
+    ) -> None:
+        self._splitting, self._tableau, self._tolerance = splitting, tableau, tolerance
         self.columns = lowest_slope_gradients(column)
 
     @cached_property
@@ -83,54 +169,72 @@ class Trial:
         """One for each treatment; their problems are made when they are first asked for."""
         return [ColumnVerdict(c, self._splitting, self._tableau) for c in self.columns]
 
-    def agrees(self, look: Look, step_s: float, tolerance: Tolerance) -> bool:
-        """Whether a look finds nothing that grows."""
-        return self.refused_at(look, step_s, tolerance) is None
+    @cached_property
+    def _waves(self) -> list[Waves]:
+        return [Waves(verdict, self._tolerance) for verdict in self.verdicts]
 
-    def refused_at(self, look: Look, step_s: float, tolerance: Tolerance) -> float | None:
+    def refused_at(self, look: Look, step_s: float) -> float | None:
         """Step, up to the one given, at which a look finds growth [s]; None if it finds none."""
         if look.variant >= len(self.columns):
             return None
-        verdict = self.verdicts[look.variant]
-        column = verdict.column
         if look.angle is None:
-            air, rate = column.airs[look.air], tolerance.rate
-            held = rows_hold(column, air, verdict.splitting, verdict.tableau, rate, step_s)
-            return None if held else step_s
-        kappa = look.angle / column.horizontal.grid_spacing_m
-        if not verdict.problem(look.air, kappa).stable(step_s, tolerance):
+            return None if self._rows_hold(look, step_s) else step_s
+        waves, problem = self._waves[look.variant], self._problem(look)
+        if waves.growing([problem], step_s) is not None:
             return step_s
-        return (
-            self._loss_below(look.air, kappa, step_s, tolerance, verdict) if look.shorter else None
-        )
+        return self._loss_below(look, step_s) if look.shorter else None
 
-    def objection(self, look: Look, step_s: float, tolerance: Tolerance) -> Objection:
+    def refusal(self, looks: Sequence[Look], step_s: float) -> Look | None:
+        """Find a look that refuses a step, of looks at one treatment of the slope gradient.
+
+        Frozen rows come first, and waves march together.
+        """
+        for look in looks:
+            if look.angle is None and not self._rows_hold(look, step_s):
+                return look
+        of_waves = [look for look in looks if look.angle is not None]
+        if not of_waves:
+            return None
+        problems = [self._problem(look) for look in of_waves]
+        found = self._waves[of_waves[0].variant].growing(problems, step_s)
+        return None if found is None else of_waves[problems.index(found)]
+
+    def objection(self, look: Look, step_s: float) -> Objection:
         """Say what a look breaks at a step at which it finds growth."""
         if look.angle is None:
             return Objection("courant", None)
-        verdict = self.verdicts[look.variant]
-        kappa = look.angle / verdict.column.horizontal.grid_spacing_m
-        broken = verdict.problem(look.air, kappa).violated(step_s, tolerance)
-        return Objection("+".join(broken) or "transient", 2 * pi / kappa)
+        problem = self._problem(look)
+        broken = problem.violated(step_s, self._tolerance)
+        return Objection("+".join(broken) or "transient", 2 * pi / problem.kappa)
 
-    @staticmethod
-    def _loss_below(
-        air: int, kappa: float, step_s: float, tolerance: Tolerance, verdict: ColumnVerdict
-    ) -> float | None:
-        search = StepSearch(lambda _, k: verdict.problem(air, k), 1, [kappa], step_s)
+    def _problem(self, look: Look) -> WaveProblem:
+        assert look.angle is not None
+        verdict = self.verdicts[look.variant]
+        return verdict.problem(look.air, look.angle / verdict.column.horizontal.grid_spacing_m)
+
+    def _rows_hold(self, look: Look, step_s: float) -> bool:
+        verdict = self.verdicts[look.variant]
+        column, rate = verdict.column, self._tolerance.rate
+        air = column.airs[look.air]
+        return rows_hold(column, air, verdict.splitting, verdict.tableau, rate, step_s)
+
+    def _loss_below(self, look: Look, step_s: float) -> float | None:
+        waves, problem = self._waves[look.variant], self._problem(look)
+        if not waves.surely_stable(problem, step_s):
+            return step_s
         try:
-            found = search.run(lambda problem, dt: problem.stable(dt, tolerance), refine=False)
+            found = waves.loss_below(look.air, problem.kappa, step_s)
         except CalculationError:
             return step_s
         return None if found is None or found.low * SAME >= step_s else found.high
 
-    def search(self, variant: int, largest_s: float, tolerance: Tolerance) -> StableStep | None:
+    def search(self, variant: int, largest_s: float) -> StableStep | None:
         """Search one treatment in full up to a step; None if no step is stable."""
         verdict = ColumnVerdict(
             self.columns[variant], self._splitting, self._tableau, largest_s=largest_s
         )
         try:
-            return verdict.stable_step(tolerance)
+            return verdict.stable_step(self._tolerance)
         except CalculationError:
             return None
 
@@ -164,12 +268,12 @@ class StepQuestion:
 
     def trial(self, column: Column) -> Trial:
         """Take up a column."""
-        return Trial(column, self.splitting, self.tableau)
+        return Trial(column, self.splitting, self.tableau, self.tolerance)
 
     def refusal(self, trial: Trial) -> Look | None:
         """Ask what refused other columns before; returns the look that refuses this one."""
         for look in self.worst:
-            if not trial.agrees(look, self.step_s, self.tolerance):
+            if trial.refused_at(look, self.step_s) is not None:
                 return look
         return None
 
@@ -177,11 +281,10 @@ class StepQuestion:
         """Ask the frozen rows and one sampled wave in ``every``, at the very step."""
         if self.refusal(trial) is not None:
             return False
-        for look in _looks(trial, every):
-            if not trial.agrees(look, self.step_s, self.tolerance):
-                self.worst.insert(0, look)
-                return False
-        return True
+        look = trial.refusal(_looks(trial, every), self.step_s)
+        if look is not None:
+            self.worst.insert(0, look)
+        return look is None
 
     def objection(self, trial: Trial) -> Objection | None:
         """Search in full, all shorter steps and the waves between; None if the step is proven.
@@ -189,13 +292,13 @@ class StepQuestion:
         What objects is asked first from then on.
         """
         for variant in range(len(trial.columns))[::-1]:
-            found = trial.search(variant, REACH * self.step_s, self.tolerance)
+            found = trial.search(variant, REACH * self.step_s)
             if found is None:
                 return Objection("spectrum", None)
             if found.step_s is not None and SAME * found.step_s < self.step_s:
                 look = self._culprit(trial.columns[variant], variant, found)
                 self.worst.insert(0, look)
-                return trial.objection(look, found.step_s * SAME, self.tolerance)
+                return trial.objection(look, found.step_s * SAME)
         return None
 
     @staticmethod
@@ -208,7 +311,7 @@ class StepQuestion:
         return Look(variant, names.index(found.courant_air), None)
 
 
-def _looks(trial: Trial, every: int) -> Iterator[Look]:
+def _looks(trial: Trial, every: int) -> list[Look]:
     """All looks at a column at the step itself, short waves first: these refuse most often.
 
     Over a slope only at the last treatment of its lowest gradient, ``full``, which is the harder
@@ -217,7 +320,7 @@ def _looks(trial: Trial, every: int) -> Iterator[Look]:
     variant = len(trial.columns) - 1
     column = trial.columns[variant]
     kappas = sampled_wavenumbers(column.horizontal)[::-1][::every]
-    for air in range(len(column.airs)):
-        yield Look(variant, air, None)
-        for kappa in kappas:
-            yield Look(variant, air, float(kappa) * column.horizontal.grid_spacing_m)
+    angles = [float(kappa) * column.horizontal.grid_spacing_m for kappa in kappas]
+    return [
+        Look(variant, air, angle) for air in range(len(column.airs)) for angle in (None, *angles)
+    ]
