@@ -10,7 +10,7 @@ import pytest
 import levelstride.studies.advise
 import levelstride.studies.limit
 from examples import records
-from levelstride.cli.advice_table import in_lines
+from levelstride.cli.cells import in_lines
 from levelstride.studies.plan import CurrentConfiguration
 
 

@@ -1,14 +1,11 @@
 """An advice on the terminal, and many of them side by side."""
 
-import re
 from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from levelstride.cli.cells import METHOD, STABLE, in_lines, level_set, stable_step
 from levelstride.cli.console import Heading, say, show_table, width
-
-WIDTH_OF_SPLITTING = 18
-"""Characters in a line of the table's column of splittings."""
 
 WIDTH_FOR_COUNTS = 100
 """Width of the terminal from which the table has a column of steps for every interval."""
@@ -30,15 +27,8 @@ def show_advice(found: "Advice", written: tuple[Path, ...]) -> None:
     written : tuple of Path
         The files that it was written to.
     """
-    from levelstride.results.wording import metres, number
-
-    column = found.column
     say(found.title, strong=True)
-    say(
-        f"{column.layers} layers, lowest {metres(column.lowest_layer_m)}, thickest "
-        f"{metres(column.thickest_layer_m)}, largest ratio {number(column.largest_ratio)}, lid at "
-        f"{metres(column.top_m)}"
-    )
+    say(level_set(found.column))
     intervals_s = found.intervals_s if width() >= WIDTH_FOR_COUNTS else ()
     show_table(
         _headings(intervals_s),
@@ -58,6 +48,9 @@ def show_advice(found: "Advice", written: tuple[Path, ...]) -> None:
     say(f"Caution: {found.caution}")
 
 
+_ADVISED = Heading("advised", "step [s]", number=True)
+_COST = Heading("cost", "[1/h]", number=True)
+_BINDS = Heading("what binds", "the advised step")
 _ACCURACY = (
     Heading("frequency", "error [%]", number=True),
     Heading("amplitude", "[%/period]", number=True),
@@ -69,14 +62,13 @@ def _headings(intervals_s: tuple[float, ...]) -> list[Heading]:
 
     return [
         Heading("", number=True),
-        Heading("tableau", whole=True),
-        Heading("implicit", whole=True),
-        Heading("advised", "step [s]", number=True),
-        Heading("stable", "step [s]", number=True),
+        *METHOD,
+        _ADVISED,
+        STABLE,
         *(Heading("steps in", f"{number(i, 6)} s", number=True) for i in intervals_s),
-        Heading("cost", "[1/h]", number=True),
+        _COST,
         *(_ACCURACY if width() >= WIDTH_FOR_ACCURACY else ()),
-        Heading("what binds", "the advised step"),
+        _BINDS,
     ]
 
 
@@ -85,35 +77,18 @@ def _cells(place: int, row: "AdviceRow", intervals_s: tuple[float, ...]) -> list
 
     errors = (row.frequency_error, row.amplitude_change_per_period)
     accuracy = ["-" if error is None else number(100.0 * error, 2) for error in errors]
-    stable = "no limit" if row.unbounded else step(row.stable_step_s)
     counts = [str(count) for count in row.steps_per_interval] or ["-"] * len(intervals_s)
     return [
         str(place),
         row.tableau,
         in_lines(row.split),
         step(row.advised_step_s),
-        stable,
+        stable_step(row.stable_step_s, unbounded=row.unbounded),
         *counts[: len(intervals_s)],
         number(row.cost_per_hour),
         *(accuracy if width() >= WIDTH_FOR_ACCURACY else ()),
         in_short(row.binding),
     ]
-
-
-def in_lines(split: str) -> str:
-    """Break a splitting behind its groups into lines that leave room for the rest.
-
-    Examples
-    --------
-    >>> in_lines("sound+buoyancy+divergence").splitlines()
-    ['sound+buoyancy+', 'divergence']
-    """
-    lines = [""]
-    for group in re.findall(r"[^+]*\+?", split):
-        if len(lines[-1]) + len(group) > WIDTH_OF_SPLITTING and lines[-1]:
-            lines.append("")
-        lines[-1] += group
-    return "\n".join(lines)
 
 
 def _notes(found: "Advice") -> list[str]:
@@ -192,12 +167,11 @@ def show_outcomes(outcomes: "Sequence[ColumnOutcome]", written: Path) -> None:
             Heading("column", most=24),
             Heading("layers", number=True),
             Heading("lowest", "[m]", number=True),
-            Heading("tableau", whole=True),
-            Heading("implicit", whole=True),
-            Heading("advised", "step [s]", number=True),
-            Heading("stable", "step [s]", number=True),
-            Heading("cost", "[1/h]", number=True),
-            Heading("what binds", "the advised step"),
+            *METHOD,
+            _ADVISED,
+            STABLE,
+            _COST,
+            _BINDS,
         ],
         rows,
     )

@@ -10,7 +10,7 @@ from cyclopts import Parameter
 from levelstride.cli.advice_table import show_advice, show_outcomes
 from levelstride.cli.executors import executor_for, usable_workers
 from levelstride.cli.kernels import prepare_kernels
-from levelstride.cli.options import Certify, Json
+from levelstride.cli.options import Certify, Cluster, Json, Out, Workers
 from levelstride.cli.resuming import Resumable
 
 if TYPE_CHECKING:
@@ -43,14 +43,9 @@ def advise(
         Path | None,
         Parameter(help="Calibration file: what your model carries of the stable step."),
     ] = None,
-    out: Annotated[Path, Parameter(help="Folder for the files; made if missing.")] = Path("advice"),
-    workers: Annotated[
-        int | None, Parameter(help="Processes to share the work; one per core by default.")
-    ] = None,
-    cluster: Annotated[
-        str | None,
-        Parameter(help="Address of a Dask scheduler whose workers do the work instead."),
-    ] = None,
+    out: Out = Path("advice"),
+    workers: Workers = None,
+    cluster: Cluster = None,
     certify: Certify = False,
     json: Json = False,
 ) -> int:

@@ -12,7 +12,15 @@ from levelstride.cli.calibration_table import show_calibration
 from levelstride.cli.console import progress, say_errors
 from levelstride.cli.executors import executor_for, usable_workers
 from levelstride.cli.kernels import prepare_kernels
-from levelstride.cli.options import ColumnFile, Json
+from levelstride.cli.options import (
+    Cluster,
+    ColumnFile,
+    Efolding,
+    Json,
+    Workers,
+    check_efolding,
+    check_splitting,
+)
 
 if TYPE_CHECKING:
     from levelstride.column.column import Column
@@ -46,10 +54,7 @@ def calibrate(
         str | None,
         Parameter(help="Its splitting, e.g. sound+buoyancy; that of the column file by default."),
     ] = None,
-    efolding: Annotated[
-        float | None,
-        Parameter(help="Tolerated e-folding time [s]; that of the column file by default."),
-    ] = None,
+    efolding: Efolding = None,
     vary: Annotated[
         list[str] | None,
         Parameter(
@@ -60,18 +65,12 @@ def calibrate(
     out: Annotated[
         Path | None, Parameter(help="Calibration file to write, for advise --calibration.")
     ] = None,
-    workers: Annotated[
-        int | None, Parameter(help="Processes to share the work; one per core by default.")
-    ] = None,
-    cluster: Annotated[
-        str | None,
-        Parameter(help="Address of a Dask scheduler whose workers do the work instead."),
-    ] = None,
+    workers: Workers = None,
+    cluster: Cluster = None,
     json: Json = False,
 ) -> int:
     """Compare steps that a model survived or lost with the linear limit."""
     from levelstride.column.read import load
-    from levelstride.errors import InputError
     from levelstride.results.calibration_file import check_calibration_file, write_calibration
     from levelstride.results.export import to_json
     from levelstride.studies.calibrate import calibrate as find_calibration
@@ -79,12 +78,8 @@ def calibrate(
     usable_workers(workers, cluster)
     read = load(column)
     observed = _observed(read, held, failed, observations)
-    if split is None and read.split is None:
-        raise InputError(
-            f"--split: none given and {column} has no [split]; name one, e.g. --split sound"
-        )
-    if efolding is not None and not 0.0 < efolding < 1e12:
-        raise InputError(f"--efolding {efolding:g}: must be a time above 0 [s]")
+    check_splitting(split, read, column)
+    check_efolding(efolding)
     if out is not None:
         check_calibration_file(out)
     prepare_kernels()

@@ -3,6 +3,7 @@
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from levelstride.cli.cells import STABLE
 from levelstride.cli.console import Heading, say, show_pairs, show_table
 
 if TYPE_CHECKING:
@@ -28,7 +29,7 @@ def show_calibration(found: "Calibration", written: Path | None) -> None:
             Heading("column", most=30),
             Heading("held", "[s]"),
             Heading("failed", "[s]"),
-            Heading("stable", "step [s]", number=True),
+            STABLE,
             Heading("held at", "least [%]", number=True),
             Heading("failed", "at [%]", number=True),
         ],

@@ -8,7 +8,14 @@ from cyclopts import Parameter
 from levelstride.cli.console import progress
 from levelstride.cli.kernels import prepare_kernels
 from levelstride.cli.limit_table import show_limit
-from levelstride.cli.options import Certify, ColumnFile, Json
+from levelstride.cli.options import (
+    Certify,
+    ColumnFile,
+    Efolding,
+    Json,
+    check_efolding,
+    check_splitting,
+)
 
 
 def limit(
@@ -20,10 +27,7 @@ def limit(
         str | None,
         Parameter(help="Splitting, e.g. sound+buoyancy; that of the column file by default."),
     ] = None,
-    efolding: Annotated[
-        float | None,
-        Parameter(help="Tolerated e-folding time [s]; that of the column file by default."),
-    ] = None,
+    efolding: Efolding = None,
     certify: Certify = False,
     no_what_if: Annotated[
         bool,
@@ -36,17 +40,12 @@ def limit(
 ) -> None:
     """Find the longest stable step of one tableau and splitting, and what bites first."""
     from levelstride.column.read import load
-    from levelstride.errors import InputError
     from levelstride.results.export import to_json
     from levelstride.studies.limit import limit as find_limit
 
     read = load(column)
-    if split is None and read.split is None:
-        raise InputError(
-            f"--split: none given and {column} has no [split]; name one, e.g. --split sound"
-        )
-    if efolding is not None and not 0.0 < efolding < 1e12:
-        raise InputError(f"--efolding {efolding:g}: must be a time above 0 [s]")
+    check_splitting(split, read, column)
+    check_efolding(efolding)
     prepare_kernels()
     what = f"{tableau} with {split or 'its [split]'}"
     with progress(f"{read.title}: {what}") as report:

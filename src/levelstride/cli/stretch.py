@@ -10,7 +10,7 @@ from cyclopts import Parameter
 from levelstride.cli.console import progress
 from levelstride.cli.executors import executor_for, usable_workers
 from levelstride.cli.kernels import prepare_kernels
-from levelstride.cli.options import ColumnFile, Json
+from levelstride.cli.options import Cluster, ColumnFile, Efolding, Json, Out, Workers
 from levelstride.cli.stretch_table import show_stretch
 
 Keep = Literal["layers-and-lid", "ratio", "lowest-layers", "upper-levels"]
@@ -46,10 +46,7 @@ def stretch(
         Parameter(help="Splitting to try, may be repeated; those of the column file, or two."),
     ] = None,
     points: Annotated[int, Parameter(help="Number of level sets on the curve.")] = 24,
-    efolding: Annotated[
-        float | None,
-        Parameter(help="Tolerated e-folding time [s]; that of the column file by default."),
-    ] = None,
+    efolding: Efolding = None,
     lowest_slope_gradient: Annotated[
         Literal["half", "full"] | None,
         Parameter(help="Slope gradient of the lowest layer; that of the column file by default."),
@@ -67,16 +64,9 @@ def stretch(
         float | None,
         Parameter(help="With --mend: largest thickness ratio of neighbouring layers allowed."),
     ] = None,
-    out: Annotated[Path, Parameter(help="Folder for the files; made if missing.")] = Path(
-        "stretch"
-    ),
-    workers: Annotated[
-        int | None, Parameter(help="Processes to share the work; one per core by default.")
-    ] = None,
-    cluster: Annotated[
-        str | None,
-        Parameter(help="Address of a Dask scheduler whose workers do the work instead."),
-    ] = None,
+    out: Out = Path("stretch"),
+    workers: Workers = None,
+    cluster: Cluster = None,
     json: Json = False,
 ) -> None:
     """Stretch the levels and find how far a step goes with them, and what limits it."""

@@ -4,7 +4,7 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from levelstride.cli.advice_table import in_lines
+from levelstride.cli.cells import METHOD, STABLE, in_lines, level_set, stable_step
 from levelstride.cli.console import Heading, say, show_table
 
 if TYPE_CHECKING:
@@ -23,15 +23,9 @@ def show_stretch(found: "Stretch", written: Sequence[Path]) -> None:
         The files that it was written to.
     """
     from levelstride.results.stretch_files import kept
-    from levelstride.results.wording import metres, number
 
-    column = found.column
     say(found.title, strong=True)
-    say(
-        f"{column.layers} layers, lowest {metres(column.lowest_layer_m)}, thickest "
-        f"{metres(column.thickest_layer_m)}, largest ratio {number(column.largest_ratio)}, lid at "
-        f"{metres(column.top_m)}"
-    )
+    say(level_set(found.column))
     say(f"Stretched in {len(found.curve)} sets; what stays is {kept(found)}.")
     _show_rows(found)
     _show_curves(found)
@@ -64,8 +58,7 @@ def _show_rows(found: "Stretch") -> None:
     show_table(
         [
             Heading("", number=True),
-            Heading("tableau", whole=True),
-            Heading("implicit", whole=True),
+            *METHOD,
             Heading("target", "step [s]", number=True),
             Heading("own set", "step [s]", number=True),
             Heading(furthest.text, furthest.unit, number=True),
@@ -78,7 +71,7 @@ def _show_rows(found: "Stretch") -> None:
                 row.tableau,
                 in_lines(row.split),
                 step(row.target_step_s),
-                "no limit" if _own(row).unbounded else step(row.own_stable_step_s),
+                stable_step(row.own_stable_step_s, unbounded=_own(row).unbounded),
                 number(row.lid_m if by_lid else row.thinnest_lowest_layer_m),
                 number(row.largest_ratio),
                 _beyond(row),
@@ -112,7 +105,7 @@ def _binds(point: "StretchPoint") -> str:
 
 def _show_curves(found: "Stretch") -> None:
     """Stable steps along the family, one line per set, one column per row."""
-    from levelstride.results.wording import number, step
+    from levelstride.results.wording import number
 
     only = found.rows[0] if len(found.rows) == 1 else None
     curve = found.curve
@@ -125,7 +118,7 @@ def _show_curves(found: "Stretch") -> None:
     sides = [side for i, side in enumerate(sides) if i < 2 or len(set(side[2])) > 1]
     headings = [Heading(text, unit, number=True) for text, unit, _ in sides]
     if only is not None:
-        headings += [Heading("stable", "step [s]", number=True), Heading("", whole=True)]
+        headings += [STABLE, Heading("", whole=True)]
         headings.append(Heading("what binds"))
     else:
         headings += [
@@ -137,7 +130,7 @@ def _show_curves(found: "Stretch") -> None:
     for k, point in enumerate(found.curve):
         points = [row.curve[k] for row in found.rows]
         line = [cells[k] for _, _, cells in sides]
-        line += ["no limit" if one.unbounded else step(one.stable_step_s) for one in points]
+        line += [stable_step(one.stable_step_s, unbounded=one.unbounded) for one in points]
         line.append("own set" if point.own else "")
         lines.append(line if only is None else [*line, _binds(point)])
     marked = next(k for k, point in enumerate(found.curve) if point.own)
