@@ -6,6 +6,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from contextlib import suppress
 from typing import Final
 
 import numpy as np
@@ -59,7 +60,7 @@ def with_one_power(interfaces_m: Array, lowest_m: float) -> Array:
     def thickness(power: float) -> Array:
         return lowest_m * _grown(0.0, _raised(log_ratios, power))
 
-    return _stacked(thickness(_root(lambda power: np.log(thickness(power).sum() / top))), top)
+    return _stacked(_reaching(thickness, top)[1], top)
 
 
 def above_the_lowest(interfaces_m: Array, lid_m: float, lowest: int) -> Array:
@@ -93,8 +94,8 @@ def above_the_lowest(interfaces_m: Array, lid_m: float, lowest: int) -> Array:
         made: Array = below * _grown(0.0, _raised(log_ratios, power))[1:]
         return made
 
-    above = thickness(_root(lambda power: np.log(thickness(power).sum() / room)))
-    heights = np.concatenate([interfaces_m[: lowest + 1], base + np.cumsum(above)])
+    above = np.cumsum(_reaching(thickness, room)[1])
+    heights = np.concatenate([interfaces_m[: lowest + 1], base + above])
     heights[-1] = lid_m
     return heights
 
@@ -123,9 +124,7 @@ def with_same_ratio(interfaces_m: Array, lowest_m: float) -> Array:
     logs = _same_at_height(interfaces_m, lowest_m, top, most)
     if lowest_m * np.exp(logs).sum() < top:
         raise NoMemberError(f"it would take more than {most} layers")
-    fits = [fit for n in range(2, logs.size + 1) if (fit := _fitted(logs[:n], lowest_m, top))]
-    if not fits:
-        raise NoMemberError("no number of layers ends at the lid")
+    fits = _fits(logs, lowest_m, top, "ends at the lid")
     return _stacked(min(fits, key=lambda fit: abs(fit[0]))[1], top)
 
 
@@ -155,9 +154,7 @@ def below_the_upper(interfaces_m: Array, lowest_m: float, lowest: int) -> Array:
     most = int(MOST_TIMES * (interfaces_m.size - 1)) - (interfaces_m.size - 1 - lowest)
     logs = _same_at_height(interfaces_m, lowest_m, base, most)
     meets = float(_log_ratios(interfaces_m)[lowest - 1])
-    fits = [fit for n in range(2, logs.size + 1) if (fit := _fitted(logs[:n], lowest_m, base))]
-    if not fits:
-        raise NoMemberError("no number of layers meets the levels above")
+    fits = _fits(logs, lowest_m, base, "meets the levels above")
     best = min(fits, key=lambda fit: abs(np.log(above / fit[1][-1]) - meets))
     made: Array = np.concatenate([_stacked(best[1], base), interfaces_m[lowest + 1 :]])
     return made
@@ -192,7 +189,18 @@ def _same_at_height(interfaces_m: Array, lowest_m: float, height_m: float, most:
     return np.array(logs)
 
 
-def _fitted(logs: Array, lowest_m: float, height_m: float) -> tuple[float, Array] | None:
+def _fits(logs: Array, lowest_m: float, height_m: float, aim: str) -> list[tuple[float, Array]]:
+    """Let 2, 3, ... layers end at a height: what corrects the ratios, and the thicknesses."""
+    fits = []
+    for n in range(2, logs.size + 1):
+        with suppress(NoMemberError):
+            fits.append(_fitted(logs[:n], lowest_m, height_m))
+    if not fits:
+        raise NoMemberError(f"no number of layers {aim}")
+    return fits
+
+
+def _fitted(logs: Array, lowest_m: float, height_m: float) -> tuple[float, Array]:
     """Correct all ratios by one factor so that the layers end at a height; its log, thicknesses."""
     places = np.arange(logs.size)
 
@@ -200,10 +208,12 @@ def _fitted(logs: Array, lowest_m: float, height_m: float) -> tuple[float, Array
         made: Array = lowest_m * np.exp(np.clip(logs + correction * places, -600.0, 600.0))
         return made
 
-    try:
-        found = _root(lambda correction: np.log(thickness(correction).sum() / height_m))
-    except NoMemberError:
-        return None
+    return _reaching(thickness, height_m)
+
+
+def _reaching(thickness: Callable[[float], Array], height_m: float) -> tuple[float, Array]:
+    """Where layers that grow with a number add up to a height: the number and the thicknesses."""
+    found = _root(lambda number: float(np.log(thickness(number).sum() / height_m)))
     return found, thickness(found)
 
 
