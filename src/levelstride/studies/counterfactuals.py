@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
+from math import log
+
+import numpy as np
 
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
@@ -13,6 +16,7 @@ from levelstride.results.cause import cause
 from levelstride.results.dataset import Limit
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.courant import rows_hold
+from levelstride.stability.march_search import DOUBTFUL, SLOW_STRIDE
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableStep
@@ -32,6 +36,12 @@ BEYOND = 1.002
 
 SHARES = (1.0, 0.9, 0.75, 0.5, 0.25)
 """Shares of the stable step at which every wave is looked at where nothing is gained."""
+
+AHEAD = 1.5
+"""A longer step is sought near this multiple of one that is kept: looks begin at the latter."""
+
+SEEN = 1e-3
+"""Growth in one step that no march overlooks."""
 
 Terms = tuple[str, ...]
 
@@ -243,16 +253,16 @@ def _step(
     if known.kappa is not None:
         extra = known.kappa
         verdict.search.kappas = [sorted({*kappas, extra}) for kappas in verdict.search.kappas]
+    asked = _Asked(verdict, tolerance)
     kept_s = 0.0
     if known.step_s is not None:
-        asked = _Asked(verdict, tolerance)
         lost_beyond = asked.loses(BEYOND * known.step_s, known.kappa)
         if asked.keeps(known.step_s):
             if lost_beyond:
                 return known.step_s, False
             kept_s = known.step_s
     try:
-        step = verdict.stable_step(tolerance, refine=False, known_s=kept_s).step_s
+        step = asked.stable_step(kept_s)
     except CalculationError:
         return None, False
     return step, step is None
@@ -269,9 +279,9 @@ class _Asked:
         """Whether a step is lost at one wave or in a frozen row."""
         airs = range(len(self._verdict.column.airs)) if kappa is not None else ()
         problems = [self._verdict.problem(air, kappa or 0.0) for air in airs]
-        if not all(self._waves.surely_stable(problem, step_s) for problem in problems):
+        if self._waves.growing(problems, step_s) is not None or not self._rows_hold(step_s):
             return True
-        return not self._rows_hold(step_s)
+        return not all(self._waves.surely_stable(problem, step_s) for problem in problems)
 
     def keeps(self, step_s: float) -> bool:
         """Whether a step is kept at every wave and in every frozen row, and shorter ones too."""
@@ -279,6 +289,30 @@ class _Asked:
             return False
         problems = self._verdict.search.problems()
         return all(self._waves.growing(problems, share * step_s) is None for share in SHARES)
+
+    def stable_step(self, kept_s: float) -> float | None:
+        """Search from a step on that is kept, 0 if none is known; None if nothing bites.
+
+        Where marching decides, shorter steps are not looked at again, unless frozen layers grow
+        slowly at the step found or below it, which a march does not see.
+        """
+        if kept_s > 0.0 and self._verdict.marches:
+            near_s = AHEAD * kept_s
+            found = self._verdict.stable_step(self._tolerance, refine=False, near_s=near_s).step_s
+            if not self._may_grow_slowly(kept_s, found or self._verdict.largest_s):
+                return found
+        return self._verdict.stable_step(self._tolerance, refine=False, known_s=kept_s).step_s
+
+    def _may_grow_slowly(self, kept_s: float, found_s: float) -> bool:
+        """Whether frozen layers grow more than is tolerated, and less than a march sees."""
+        looks = 1 + max(0, int(log(found_s / kept_s) / log(SLOW_STRIDE)))
+        steps = np.array([found_s / SLOW_STRIDE**i for i in range(looks)])
+        for problem in self._verdict.search.problems():
+            growth = problem.local_screen.growth(steps)
+            seen = growth * steps > SEEN
+            if np.any(~seen & (growth > DOUBTFUL * problem.rate(self._tolerance))):
+                return True
+        return False
 
     def _rows_hold(self, step_s: float) -> bool:
         verdict, rate = self._verdict, self._tolerance.rate
