@@ -13,6 +13,7 @@ import time
 import psutil
 import pytest
 
+from examples import quick
 from levelstride.results.kept import KeptItems
 from levelstride.studies.best_row import PARTS
 
@@ -28,17 +29,20 @@ for number in range(int(sys.argv[2]), 1_000_000):
 """
 
 
+PATIENCE_S = 300.0
+"""Time after which something is taken to hang [s]; machines are shared."""
+
 KILLS = 2
 """Number of times that a whole command is killed; what keeps the items is killed more often."""
 
 
 @pytest.fixture(name="columns")
-def _columns(tiny, tmp_path):
+def _columns(tmp_path):
     folder = tmp_path / "columns"
     folder.mkdir()
-    for layers in (6, 7):
-        text = tiny.read_text().replace("layers = 6", f"layers = {layers}")
-        (folder / f"column_{layers}.toml").write_text(text.replace("Tiny", f"{layers} layers of a"))
+    for layers in (2, 3):
+        text = quick.TEXT.replace("layers = 2", f"layers = {layers}")
+        (folder / f"column_{layers}.toml").write_text(text.replace("2 layers", f"{layers} layers"))
     return folder
 
 
@@ -109,14 +113,14 @@ def test_killed_again_and_again_it_loses_nothing_and_ends_with_the_same_answer(
         check_readable(out)
         before = now
     process = begin(*words, "--workers", 1, folder=tmp_path)
-    _, complaints = process.communicate(timeout=120)
+    _, complaints = process.communicate(timeout=PATIENCE_S)
     assert process.returncode == 0, complaints
     assert kept_files(out) >= before
     assert not list(out.rglob(".levelstride-*"))
     check_readable(out)
-    run("advise", columns / "column_7.toml", "--workers", 1, "--out", tmp_path / "fresh")
+    run("advise", columns / "column_3.toml", "--workers", 1, "--out", tmp_path / "fresh")
     fresh = numbers(tmp_path / "fresh" / "advice.json")
-    assert numbers(out / "column_7" / "advice.json") == fresh
+    assert numbers(out / "column_3" / "advice.json") == fresh
 
 
 def test_kept_files_survive_a_kill_at_any_moment(tmp_path):
@@ -140,7 +144,7 @@ def test_kept_files_survive_a_kill_at_any_moment(tmp_path):
 def test_control_c_says_how_to_go_on_and_the_same_command_does(columns, tmp_path):
     process = begin("advise", columns, "--workers", 2, folder=tmp_path)
     out = tmp_path / "advice"
-    deadline = time.monotonic() + 60.0
+    deadline = time.monotonic() + PATIENCE_S
     while len(kept_files(out)) < 3 and time.monotonic() < deadline:
         time.sleep(0.01)
     os.killpg(process.pid, signal.SIGINT)
@@ -149,19 +153,19 @@ def test_control_c_says_how_to_go_on_and_the_same_command_does(columns, tmp_path
     first, second = complaints.splitlines()
     assert first == "levelstride: interrupted"
     assert second.endswith("are kept in advice/kept; the same command goes on from there")
-    assert f" of {2 * (4 + PARTS)} parts of the work " in second
+    assert f" of {2 * (quick.PAIRS + PARTS)} parts of the work " in second
     wait_until_gone(process.pid)
     check_readable(out)
     process = begin("advise", columns, "--workers", 2, "--json", folder=tmp_path)
-    shown, complaints = process.communicate(timeout=120)
+    shown, complaints = process.communicate(timeout=PATIENCE_S)
     assert (process.returncode, complaints) == (0, "")
-    assert [one["name"] for one in json.loads(shown)["columns"]] == ["column_6", "column_7"]
+    assert [one["name"] for one in json.loads(shown)["columns"]] == ["column_2", "column_3"]
 
 
-def test_a_killed_worker_is_survived(tiny, tmp_path):
-    process = begin("advise", tiny, "--workers", 2, folder=tmp_path)
+def test_a_killed_worker_is_survived(columns, tmp_path):
+    process = begin("advise", columns / "column_2.toml", "--workers", 2, folder=tmp_path)
     worker = None
-    deadline = time.monotonic() + 60.0
+    deadline = time.monotonic() + PATIENCE_S
     while not kept_files(tmp_path / "advice") and time.monotonic() < deadline:
         time.sleep(0.01)
     for child in psutil.Process(process.pid).children():
@@ -169,9 +173,9 @@ def test_a_killed_worker_is_survived(tiny, tmp_path):
             worker = child.pid
     assert worker is not None
     os.kill(worker, signal.SIGKILL)
-    _, complaints = process.communicate(timeout=120)
+    _, complaints = process.communicate(timeout=PATIENCE_S)
     assert (process.returncode, complaints) == (0, "")
-    assert len(json.loads((tmp_path / "advice" / "advice.json").read_text())["rows"]) == 4
+    assert len(json.loads((tmp_path / "advice" / "advice.json").read_text())["rows"]) == quick.PAIRS
 
 
 class TestManyColumns:
@@ -179,32 +183,32 @@ class TestManyColumns:
         (columns / "bad.toml").write_text("title = 3\n")
         (columns / "own_tableaux.toml").write_text("[[tableau]]\nname = 'no column'\n")
         out = tmp_path / "out"
-        words = ("--workers", 1, "--out", out, "--tableaux", "ars232", "--splits", "sound")
+        words = ("--workers", 1, "--out", out, "--splits", "sound+buoyancy+divergence")
         code, shown, complaints = run("advise", columns, *words)
         assert code == 2
         assert "levelstride: bad: " in complaints
         assert complaints.endswith("levelstride: 1 of 3 columns failed, the others are done\n")
         assert "own_tableaux" not in shown + complaints
-        for name in ("column_6", "column_7"):
+        for name in ("column_2", "column_3"):
             assert name in shown
             assert json.loads((out / name / "advice.json").read_text())["best"] == 0
         with (out / "summary.csv").open(newline="") as file:
             table = {line["name"]: line for line in csv.DictReader(file)}
-        assert list(table) == ["bad", "column_6", "column_7"]
-        assert float(table["column_6"]["advised_step_s"]) > 0.0
-        assert table["column_6"]["problem"] == ""
+        assert list(table) == ["bad", "column_2", "column_3"]
+        assert float(table["column_2"]["advised_step_s"]) > 0.0
+        assert table["column_2"]["problem"] == ""
         assert "levels: this table is missing" in table["bad"]["problem"]
 
     def test_files_of_one_name_are_told_apart(self, run, columns, tmp_path):
         other = tmp_path / "other"
         other.mkdir()
-        same = columns / "column_6.toml"
-        (other / "column_6.toml").write_text(same.read_text())
-        words = ("--workers", 1, "--tableaux", "ars232", "--splits", "sound", "--json")
-        code, shown, _ = run("advise", same, other / "column_6.toml", *words)
+        same = columns / "column_2.toml"
+        (other / "column_2.toml").write_text(same.read_text())
+        words = ("--workers", 1, "--splits", "sound+buoyancy+divergence", "--json")
+        code, shown, _ = run("advise", same, other / "column_2.toml", *words)
         assert code == 0
         names = [one["name"] for one in json.loads(shown)["columns"]]
-        assert names == ["columns-column_6", "other-column_6"]
+        assert names == ["columns-column_2", "other-column_2"]
         assert len(kept_files(tmp_path / "here" / "advice")) == 2 + PARTS
 
     def test_mistakes_of_the_command_come_once_and_write_nothing(self, run, columns, tmp_path):

@@ -6,6 +6,7 @@ from dataclasses import replace
 
 import pytest
 
+from examples import quick
 from examples.deeds import die_once, fail
 from levelstride.column.read import build
 from levelstride.errors import InputError
@@ -16,18 +17,6 @@ from levelstride.execution.serial import serial
 from levelstride.results.export import to_json
 from levelstride.studies.advise import advise
 
-COLUMN = {
-    "title": "tiny",
-    "levels": {"kind": "geometric", "layers": 6, "top_m": 9000.0, "lowest_layer_m": 600.0},
-    "air": {"kind": "isothermal", "temperature_k": 260.0},
-    "horizontal": {"grid_spacing_m": 3000.0},
-    "advice": {
-        "tableaux": ["ARS(2,3,2)", "ars233"],
-        "splits": ["sound", "sound+buoyancy"],
-        "divides_s": [600.0],
-    },
-}
-
 
 @pytest.fixture(name="address", scope="module")
 def _address(dask):
@@ -35,7 +24,7 @@ def _address(dask):
 
 
 def test_serial_processes_and_dask_give_identical_records(address):
-    column = build(COLUMN)
+    column = build(quick.DEFINITION)
 
     def records(executor_of, *how):
         with executor_of(*how) as executor:
@@ -43,7 +32,7 @@ def test_serial_processes_and_dask_give_identical_records(address):
         return tuple(replace(row, measured_s_per_hour=None) for row in found.rows)
 
     here = records(serial)
-    assert len(here) == 4
+    assert len(here) == quick.PAIRS
     for there in (records(processes, 2), records(cluster, address)):
         assert there == here
         assert to_json(there) == to_json(here)
