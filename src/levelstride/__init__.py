@@ -9,7 +9,7 @@ Examples
 ...     "air": {"kind": "isothermal", "temperature_k": 250.0},
 ...     "horizontal": {"grid_spacing_m": 2000.0},
 ... })
->>> found = levelstride.limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy")
+>>> found = levelstride.limit(column, tableau="ARS(2,3,2)", split="sound+buoyancy", what_if=False)
 >>> found.bites.kind, found.strict_step_s <= found.stable_step_s
 ('sound', True)
 """
