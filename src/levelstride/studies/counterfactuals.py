@@ -257,7 +257,7 @@ def _step(
     kept_s = 0.0
     if known.step_s is not None:
         lost_beyond = asked.loses(BEYOND * known.step_s, known.kappa)
-        if asked.keeps(known.step_s):
+        if (lost_beyond or verdict.marches) and asked.keeps(known.step_s):
             if lost_beyond:
                 return known.step_s, False
             kept_s = known.step_s
