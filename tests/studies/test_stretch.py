@@ -74,7 +74,7 @@ def _steps(monkeypatch):
     """Let members have made-up steps: a function of lowest layer or lid that is put in here."""
     made = {}
 
-    def at(self, coordinate):
+    def at(self, coordinate, *_):
         column = with_levels(self.column, self.family.at(coordinate))
         step, binding = made["up"](coordinate)
         return point(
@@ -96,7 +96,7 @@ class TestCloseIn:
     def found(step_of, target_s, thick=1000.0, thin=1.0):
         asked = []
 
-        def at(lowest):
+        def at(lowest, *_):
             asked.append(lowest)
             return point(lowest, step_of(lowest))
 

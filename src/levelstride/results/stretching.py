@@ -65,6 +65,9 @@ class StretchPoint:
         Whether it is the user's own set.
     binds : Binding or None
         What binds the step; None if nothing does, or no step is stable.
+    whole_search : bool
+        Whether all waves were refined and all shorter steps scanned for this set; if not, the limit
+        was followed from its neighbours.
     """
 
     lowest_layer_m: float
@@ -75,6 +78,7 @@ class StretchPoint:
     lid_m: float
     own: bool
     binds: Binding | None
+    whole_search: bool = True
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

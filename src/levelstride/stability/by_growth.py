@@ -96,16 +96,18 @@ class _Followed:
 
 def _close_in(problem: WaveProblem, high: float, excess: Callable[[float], float]) -> Bracket:
     low, below = high, excess(high)
-    above = below
+    above, factor = below, LONGEST  # first close below: growth may set in at once
     while below > 0:
         high, above = low, below
-        low = high * float(np.clip(np.exp(-above / 2), SHORTEST, LONGEST))
+        low = high * factor
         if low < SMALLEST_FIRST_STEP:
             raise no_step(problem.kappa)
         below = excess(low)
-    while high / low > BISECTION:
+        factor = float(np.clip(np.exp(-max(below, 0.0) / 2), SHORTEST, LONGEST))
+    halve = False  # growth that sets in sharply keeps secants at one end of the bracket
+    while (width := np.log(high / low)) > np.log(BISECTION):
         share = 0.5
-        if np.isfinite(below) and np.isfinite(above) and above > below:
+        if not halve and np.isfinite(below) and np.isfinite(above) and above > below:
             share = float(np.clip(-below / (above - below), EDGE, 1 - EDGE))
         middle = low * (high / low) ** share
         growth = excess(middle)
@@ -113,6 +115,7 @@ def _close_in(problem: WaveProblem, high: float, excess: Callable[[float], float
             high, above = middle, growth
         else:
             low, below = middle, growth
+        halve = np.log(high / low) > 0.5 * width
     return Bracket(low, high, problem)
 
 

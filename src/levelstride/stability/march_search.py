@@ -14,6 +14,7 @@ import numpy as np
 
 from levelstride.stability.by_growth import first_failure
 from levelstride.stability.march import EFOLDINGS, QUIET, March, Seen
+from levelstride.stability.nearby import Nearby
 from levelstride.stability.step_limit import (
     BISECTION,
     NEAR_MINIMUM,
@@ -57,14 +58,14 @@ CLOSE, MOST_SHORTER = 4000, 3
 LONG_MARCH = 20000
 """Steps of the longest march that costs less than full matrices of every wave do."""
 
-NEARBY = 1.5
-"""How far below a limit that is known roughly, as a factor, the scan begins."""
-
 FILL = 2.0
 """How far below the limit, as a factor, the binding wave is looked at closely."""
 
 TOGETHER = 16
 """Waves that march together where they may all look at the same step."""
+
+RANKED = 1.004
+"""How closely the limits of waves that do not bind are told apart, as a factor."""
 
 MOST_LONGER, MOST_HALVINGS = 24, 6
 """How often longer waves are added, and how often the spacing is halved."""
@@ -80,9 +81,9 @@ class MarchSearch:
     tolerance : Tolerance
     judge : bool
         Whether full matrices are asked about the binding wave in the end.
-    near_s : float or None
-        A step near which the limit is known to lie, from a column that hardly differs: what is far
-        below it is not scanned, and waves that do not bind are marched alone [s].
+    near : Nearby or None
+        What is known from a column that hardly differs: what is far below that step is not scanned,
+        and full matrices are asked only about waves that bind there or whose frozen layers grow.
     watch : callable
         Told what is being looked at.
     """
@@ -93,7 +94,7 @@ class MarchSearch:
         tolerance: Tolerance,
         *,
         judge: bool = True,
-        near_s: float | None = None,
+        near: Nearby | None = None,
         watch: Watch = silent,
     ) -> None:
         self._watch = watch
@@ -104,7 +105,7 @@ class MarchSearch:
         self._limits: dict[int, float] = {}
         self._filled: dict[int, float] = {}
         self._largest_s = waves.largest_s
-        self._known_s, self._asks_judge, self._near_s = 0.0, judge, near_s
+        self._known_s, self._asks_judge, self._near = 0.0, judge, near
         self.best: Bracket | None = None
 
     def run(self, *, refine: bool = True, known_s: float = 0.0) -> Bracket | None:
@@ -127,8 +128,10 @@ class MarchSearch:
         CalculationError
             If no step is stable, however short.
         """
-        if self._near_s is not None:
-            known_s = max(known_s, self._near_s / NEARBY)
+        if self._near is not None:
+            known_s = max(known_s, self._near.first_s)
+            for air, kappa in self._near.waves:
+                self._waves.kappas[air] = sorted({*self._waves.kappas[air], kappa})
         self._known_s = known_s
         problems = self._waves.problems()
         groups = -(-len(problems) // TOGETHER)
@@ -177,14 +180,12 @@ class MarchSearch:
         grow: the fastest first, and no more once one is found.
         """
         tolerance = self._tolerance
-        if self._near_s is not None:
-            return
-        if problems[0].size <= self._certain(dt):
+        if self._near is None and problems[0].size <= self._certain(dt):
             slow = [problem for problem in problems if not problem.stable(dt, tolerance)]
             for problem in sorted(slow, key=lambda problem: -problem.growth(dt)):
-                self._ask(problem, dt)
+                self._ask(problem, min(dt, self._smallest()))
             return
-        if EFOLDINGS * tolerance.efolding_s / dt <= LONG_MARCH:
+        if self._near is None and EFOLDINGS * tolerance.efolding_s / dt <= LONG_MARCH:
             rates = [
                 -np.inf if look.seen is Seen.QUIET else look.rate
                 for look in self._march.look(problems, dt, None)
@@ -192,10 +193,13 @@ class MarchSearch:
         else:
             steps_s = np.array([dt])
             rates = [float(problem.local_screen.growth(steps_s)[0]) for problem in problems]
+        if self._near is not None:
+            bind = [self._waves.problem(air, kappa) for air, kappa in self._near.waves]
+            rates = [np.inf if p in bind else r for p, r in zip(problems, rates, strict=True)]
         order: list[int] = np.argsort(rates)[::-1].tolist()
         for i in order:
             if rates[i] >= DOUBTFUL * tolerance.rate:
-                self._ask(problems[i], dt)
+                self._ask(problems[i], min(dt, self._smallest()))
 
     def _scan(self, problems: Sequence[WaveProblem], turn: float, first: float = 0.0) -> None:
         """Look at ever longer steps until one fails or the smallest limit known is passed."""
@@ -217,12 +221,14 @@ class MarchSearch:
                     self._ask(problem, high)
 
     def _looks(self, problems: Sequence[WaveProblem], turn: float) -> list[float]:
+        if self._near is not None:
+            return self._near.looks(self._cap())
         fastest = max(problem.facts.largest_eigenvalue for problem in problems)
         slow = max(problem.slow_rate for problem in problems)
         short = SHORT / fastest if fastest else self._largest_s
         small = NOT_SMALL / slow if slow else np.inf
         cap = self._cap()
-        asked = problems[:: max(1, len(problems) // ASKED)] if self._near_s is None else ()
+        asked = problems[:: max(1, len(problems) // ASKED)]
         looks = [float(dt) for problem in asked for dt in problem.suspects if dt < cap]
         if self._known_s > 0:
             looks.append(self._known_s)
@@ -277,7 +283,7 @@ class MarchSearch:
             self.best = bracket
 
     def _settle(self, *, refine: bool) -> None:
-        """Refine the waves, look closely below the limit, ask every wave again, judge."""
+        """Refine the waves and ask every wave again; then look closely below the limit, judge."""
         while self.best is not None:
             before = self.best
             self._watch(f"waves around the worst one, near {before.low:.3g} s")
@@ -285,9 +291,11 @@ class MarchSearch:
                 for air in range(self._waves.nair):
                     self._add_longer(air)
                     self._refine(air)
+            self._recheck()
+            if self.best is not before:
+                continue
             self._fill_below()
             self._look_for_slow_growth()
-            self._recheck()
             self._judge()
             if self.best is before:
                 return
@@ -327,8 +335,19 @@ class MarchSearch:
         waiting = [problem for problem in problems if id(problem) not in self._limits]
         cap = self._cap()
         for group in _groups(waiting):
-            for problem in self._fails(group, cap):
-                self._close_in([problem], cap / NEAR_MINIMUM, cap)
+            self._rank(self._fails(group, cap), cap / NEAR_MINIMUM, cap)
+
+    def _rank(self, failing: Sequence[WaveProblem], low: float, high: float) -> None:
+        """Find side by side about where waves that fail at a step begin to."""
+        if not failing:
+            return
+        if high / low <= RANKED:
+            self._limits |= {id(problem): low for problem in failing}
+            return
+        middle = float(np.sqrt(low * high))
+        still = self._fails(failing, middle)
+        self._rank(still, low, middle)
+        self._rank([problem for problem in failing if problem not in still], middle, high)
 
     def _try_waves(self, air: int, kappas: list[float]) -> None:
         self._waves.kappas[air] = sorted({*self._waves.kappas[air], *kappas})
@@ -345,7 +364,7 @@ class MarchSearch:
         limit, problem = self.best.low, self.best.problem
         step, low = limit / FILL, 0.0
         filled = self._filled.get(id(problem), np.inf) < limit * SCAN_RATIO
-        if filled or self._near_s is not None:
+        if filled or self._near is not None:
             return
         self._filled[id(problem)] = limit
         near = sorted(self._waves.problems(), key=lambda p: abs(np.log(p.kappa / problem.kappa)))
@@ -362,6 +381,8 @@ class MarchSearch:
         waves share it: with many unknowns every second one is asked.
         """
         assert self.best is not None
+        if self._near is not None:
+            return
         problems = self._waves.problems()
         slow = max(problem.slow_rate for problem in problems)
         first = max(NOT_SMALL / slow if slow else np.inf, self._known_s)

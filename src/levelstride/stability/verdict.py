@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 
 from levelstride.column.column import Column
@@ -13,6 +13,7 @@ from levelstride.stability.certificate import Certificate, Keeps, settle
 from levelstride.stability.courant import CourantLimit, courant_limit
 from levelstride.stability.extremes import is_skew, largest_modulus, spectral_norm
 from levelstride.stability.march_search import CERTAIN_UNKNOWNS, MarchSearch
+from levelstride.stability.nearby import Nearby
 from levelstride.stability.own_growth import ROUND_OFF
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.step_limit import SCAN_RATIO, Bracket, StepSearch, Watch, silent
@@ -119,6 +120,7 @@ class ColumnVerdict:
         refine: bool = True,
         known_s: float = 0.0,
         near_s: float | None = None,
+        near_waves: Sequence[tuple[int, float]] = (),
         watch: Watch = silent,
     ) -> StableStep:
         """Longest step that keeps all three criteria.
@@ -133,6 +135,8 @@ class ColumnVerdict:
         near_s : float or None
             A step near which the limit is known to lie, from a column that hardly differs: a
             shorter search, to be borne out by a whole one where it is an answer [s].
+        near_waves : sequence of (int, float)
+            Air states by number and wavenumbers that bind there [1/m].
         watch : callable
             Told what is being looked at.
 
@@ -147,7 +151,8 @@ class ColumnVerdict:
             largest = min(largest, SAME * courant.step_s)
         self.search.largest_s = largest
         if self.marches:
-            marching = MarchSearch(self.search, tolerance, near_s=near_s, watch=watch)
+            near = None if near_s is None else Nearby(near_s, tuple(near_waves))
+            marching = MarchSearch(self.search, tolerance, near=near, watch=watch)
             bracket = marching.run(refine=refine, known_s=known_s)
         else:
             bracket = self.search.run(

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 from functools import lru_cache
 
@@ -34,6 +34,9 @@ Progress = Callable[[int, int, str], None]
 
 NO_WIND = "no wind was given, the limit is for air at rest"
 DEFAULT_SPLIT = "sound"
+TOLD_APART = 1.002
+"""Factor up to which two bisections of one limit may differ."""
+
 SCAN = (
     f"scan ratio {SCAN_RATIO} at the binding wave at least over the factor two below the limit, "
     "wider ones elsewhere but where frozen layers grow, every sampled wave again at the limit; "
@@ -120,6 +123,9 @@ def limit(
         found, certificate = verdict.certified_step(found, tolerance)
     parts.begin("strict step")
     strict = verdict.strict_step(found)
+    if found.waves_bind and strict is not None:
+        # no longer than the stable step, but found by a bisection of its own
+        strict = found.step_s if _not_below(found.step_s, [strict]) == strict else strict
     by_efolding = _by_efolding(verdict, tolerance, found, parts)
     parts.begin("step of all-explicit")
     gain = _gain(column, splitting, method, tolerance, found)
@@ -182,7 +188,7 @@ class _Parts:
 def _by_efolding(
     verdict: ColumnVerdict, tolerance: Tolerance, found: StableStep, parts: _Parts
 ) -> tuple[StepAtTolerance, ...]:
-    steps = []
+    steps: list[StepAtTolerance] = []
     for efolding_s in STANDARD_EFOLDINGS_S:
         step = found.step_s
         watch = parts.begin(f"step that e-folds in {number(efolding_s)} s")
@@ -191,8 +197,16 @@ def _by_efolding(
             longest = found.step_s or verdict.largest_s
             known_s = longest if efolding_s < tolerance.efolding_s else 0.0
             step = verdict.stable_step(looser, refine=False, known_s=known_s, watch=watch).step_s
+            carried = [one.stable_step_s for one in steps if one.efolding_s > efolding_s]
+            step = _not_below(step, [known_s, *carried])
         steps.append(StepAtTolerance(efolding_s=efolding_s, stable_step_s=step))
     return tuple(steps)
+
+
+def _not_below(step: float | None, carried: Sequence[float | None]) -> float | None:
+    """Lift a step to one that is carried on stricter terms where bisection alone parts them."""
+    near = [other for other in carried if other and step and step < other <= TOLD_APART * step]
+    return max(near, default=step)
 
 
 def _criterion(found: StableStep, tolerance: Tolerance) -> str:

@@ -29,27 +29,78 @@ LONG: Final = 7.99
 
 
 @dataclass(frozen=True, slots=True)
+class LossItem:
+    """Where a target is lost.
+
+    Parameters
+    ----------
+    of : StretchItem
+    run : tuple of StretchPoint
+        The members of the curve that carry the target, up to the last one.
+    after : StretchPoint or None
+        The next one; None where the run ends with the range.
+    target_s : float
+        The target [s].
+    """
+
+    of: StretchItem
+    run: tuple[StretchPoint, ...]
+    after: StretchPoint | None
+    target_s: float
+
+
+@dataclass(frozen=True, slots=True)
+class Loss:
+    """Where a target is lost, by whole searches on the side that carries it.
+
+    Parameters
+    ----------
+    last : StretchPoint or None
+        The last member that carries it; None if, looked at closely, none of the run does.
+    first : StretchPoint or None
+        The first that does not, at most 1 % apart; None if the last ends the range.
+    corrected : tuple of StretchPoint
+        Members of the curve as whole searches have them.
+    """
+
+    last: StretchPoint | None
+    first: StretchPoint | None
+    corrected: tuple[StretchPoint, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
 class BetweenItem:
-    """Two members; with a target, what is sought is where it is lost, else what takes over."""
+    """Two neighbours of a curve between which something takes over."""
 
     of: StretchItem
     before: StretchPoint
     after: StretchPoint
-    target_s: float | None = None
 
 
 @on_one_thread
-def lost_between(item: BetweenItem) -> tuple[StretchPoint, StretchPoint]:
-    """Bracket where a target is lost.
-
-    Returns
-    -------
-    last, first : StretchPoint
-        The last member that carries it and the first that does not, at most 1 % apart.
-    """
-    assert item.target_s is not None
-    members = Members(item.of)
-    return close_in(members.at, members.coordinate, item.before, item.after, target_s=item.target_s)
+def lost_between(item: LossItem) -> Loss:
+    """Bracket where a target is lost, and bear it out by a whole search."""
+    members, target_s = Members(item.of), item.target_s
+    at, place = members.at, members.coordinate
+    last, first = item.run[-1], item.after
+    if first is not None:
+        last, first = close_in(at, place, last, first, target_s=target_s)
+    if not last.whole_search:
+        last = at(place(last))
+    if carries(last, target_s):
+        return Loss(last, first)
+    first, corrected = last, []
+    for point in reversed(item.run):
+        known = point if point.whole_search else at(place(point))
+        if known is not point:
+            corrected.append(known)
+        if carries(known, target_s):
+            last, first = close_in(
+                lambda coordinate, *_: at(coordinate), place, known, first, target_s=target_s
+            )
+            return Loss(last, first, tuple(corrected))
+        first = known
+    return Loss(None, first, tuple(corrected))
 
 
 @on_one_thread
@@ -60,7 +111,7 @@ def taken_over_between(item: BetweenItem) -> tuple[Crossing, ...]:
 
 
 def close_in(
-    at: Callable[[float], StretchPoint],
+    at: Callable[..., StretchPoint],
     coordinate: Callable[[StretchPoint], float],
     inside: StretchPoint,
     outside: StretchPoint,
@@ -76,7 +127,7 @@ def close_in(
     Parameters
     ----------
     at : callable
-        Makes a member from its coordinate.
+        Makes a member from its coordinate, and from members around it whose steps are known.
     coordinate : callable
         Finds that of a member.
     inside, outside : StretchPoint
@@ -93,7 +144,7 @@ def close_in(
     while (width := abs(log(coordinate(outside) / coordinate(inside)))) > CLOSE:
         share = 0.5 if halve else _share(inside, outside, target_s, NUDGE / width)
         middle = coordinate(inside) * (coordinate(outside) / coordinate(inside)) ** share
-        found = at(middle)
+        found = at(middle, inside, outside)
         if carries(found, target_s):
             inside = found
         else:
@@ -162,7 +213,7 @@ def _crossings(members: Members, before: StretchPoint, after: StretchPoint) -> l
     first, last = members.coordinate(before), members.coordinate(after)
     if abs(log(last / first)) <= CROSSED:
         return [_crossing(before, after, differs, by_lid=members.family.by_lid)]
-    middle = members.at((first * last) ** 0.5)
+    middle = members.at((first * last) ** 0.5, before, after)
     return _crossings(members, before, middle) + _crossings(members, middle, after)
 
 

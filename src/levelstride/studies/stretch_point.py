@@ -1,9 +1,11 @@
 """One level set of a family, and what lies between two of them: work that is shared out."""
 
 import pickle
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
+from math import exp, log
+from typing import Final
 
 import numpy as np
 
@@ -26,6 +28,12 @@ from levelstride.studies.methods import tableau_of
 from levelstride.studies.stretched_levels import largest_ratio
 from levelstride.studies.work_item import StepChecker
 from levelstride.tableaux.tableau import Tableau
+
+SURPRISE: Final = (1.5, 1.2)
+"""Factor from the expected step beyond which it is looked for in full, by one member and by two."""
+
+FAR_APART: Final = 1e-6
+"""Difference of ln(coordinate) from which two members tell a slope."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,6 +74,24 @@ class PointItem:
 
 
 @dataclass(frozen=True, slots=True)
+class RunItem:
+    """Members that follow each other along the family, from the one next to a known member on.
+
+    Parameters
+    ----------
+    of : StretchItem
+    coordinates : tuple of float
+        The members, in order [m].
+    near : StretchPoint or None
+        The known member; without it the first one is searched in full.
+    """
+
+    of: StretchItem
+    coordinates: tuple[float, ...]
+    near: StretchPoint | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class Measured:
     """A member, and the step advised for it if one was asked for."""
 
@@ -93,15 +119,20 @@ class Members:
         """Find the place of a point in the family [m]."""
         return point.lid_m if self.family.by_lid else point.lowest_layer_m
 
-    def at(self, coordinate: float) -> StretchPoint:
-        """Search the stable step of a member."""
+    def at(self, coordinate: float, *near: StretchPoint) -> StretchPoint:
+        """Search the stable step of a member.
+
+        Parameters
+        ----------
+        coordinate : float
+            Its place in the family [m].
+        *near : StretchPoint
+            Members on the way to it, the nearest last: its limit is looked for where theirs lead
+            to, and in full if it is not there. Without any it is looked for in full.
+        """
         column = with_levels(self.column, self.family.at(coordinate))
         faces = column.levels.interfaces_m
-        verdict = ColumnVerdict(column, self.splitting, self.tableau)
-        try:
-            found: StableStep | None = verdict.stable_step(self.tolerance)
-        except CalculationError:
-            found = None
+        found, whole = self._search(column, coordinate, near)
         return StretchPoint(
             lowest_layer_m=float(faces[1]),
             ratio=largest_ratio(faces),
@@ -111,7 +142,46 @@ class Members:
             lid_m=column.levels.top_m,
             own=coordinate == self.family.own,
             binds=None if found is None else binding(column, found, self.tolerance),
+            whole_search=whole,
         )
+
+    def _search(
+        self, column: Column, coordinate: float, near: Sequence[StretchPoint]
+    ) -> tuple[StableStep | None, bool]:
+        """Find the stable step, and tell whether all was searched for it."""
+        verdict = ColumnVerdict(column, self.splitting, self.tableau)
+        expected_s = self._expected_s(coordinate, near) if verdict.marches else None
+        try:
+            if expected_s is not None:
+                waves = [wave for point in near for wave in self._wave(point)]
+                found = verdict.stable_step(
+                    self.tolerance, refine=False, near_s=expected_s, near_waves=waves
+                )
+                off = SURPRISE[min(len(near), 2) - 1]
+                if found.step_s is not None and expected_s / off < found.step_s < expected_s * off:
+                    return found, False
+            return verdict.stable_step(self.tolerance), True
+        except CalculationError:
+            return None, True
+
+    def _expected_s(self, coordinate: float, near: Sequence[StretchPoint]) -> float | None:
+        """Go on from the two nearest members as a power of the coordinate."""
+        steps = [point.stable_step_s for point in near[-2:]]
+        if not steps or None in steps:
+            return None
+        places = [log(self.coordinate(point)) for point in near[-2:]]
+        logs = [log(step) for step in steps if step is not None]
+        if len(logs) == 1 or abs(places[1] - places[0]) < FAR_APART:
+            return exp(logs[-1])
+        power = (logs[1] - logs[0]) / (places[1] - places[0])
+        return exp(logs[1] + power * (log(coordinate) - places[1]))
+
+    def _wave(self, point: StretchPoint) -> list[tuple[int, float]]:
+        """Air state and wavenumber that bind a member, if a wave does."""
+        if point.binds is None or point.binds.criterion == "courant":
+            return []
+        names = [air.name for air in self.column.airs]
+        return [(names.index(point.binds.air), point.binds.wavenumber_per_m)]
 
     def advised(self, own: StretchPoint) -> Choice:
         """Choose the step that an advice names for the user's own set with this stable step."""
@@ -143,6 +213,18 @@ def measure(item: PointItem) -> Measured:
     members = Members(item.of)
     point = members.at(item.coordinate)
     return Measured(point, members.advised(point) if item.advise else None)
+
+
+@on_one_thread
+def follow(item: RunItem) -> list[Measured]:
+    """Search members one after the other, each where those before it lead to."""
+    members, near = Members(item.of), [item.near] if item.near is not None else []
+    found = []
+    for coordinate in item.coordinates:
+        point = members.at(coordinate, *near)
+        near = [*near[-1:], point]
+        found.append(Measured(point))
+    return found
 
 
 def carries(point: StretchPoint, target_s: float) -> bool:

@@ -1,6 +1,7 @@
 """The answer for one tableau and splitting, made of its curve."""
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 from math import inf
 from typing import TypeVar
 
@@ -10,6 +11,7 @@ from levelstride.results.stretch_wording import verdict_of
 from levelstride.results.stretching import Crossing, StretchPoint, StretchRow
 from levelstride.splitting.splitting import Splitting
 from levelstride.studies.level_families import Family
+from levelstride.studies.stretch_between import Loss
 from levelstride.studies.stretch_point import carries
 from levelstride.tableaux.tableau import Tableau
 
@@ -47,12 +49,19 @@ class Draft:
         return inside, last
 
     @property
-    def loss(self) -> tuple[StretchPoint, StretchPoint] | None:
-        """The neighbours between which the target is lost; None if it is not."""
-        run = self.run
-        if run is None or run[1] + 1 == len(self.curve):
+    def loss(self) -> tuple[tuple[StretchPoint, ...], StretchPoint | None] | None:
+        """The run that carries the target and its next neighbour, if there are any."""
+        if self.run is None:
             return None
-        return self.curve[run[1]], self.curve[run[1] + 1]
+        first, last = self.run
+        after = self.curve[last + 1] if last + 1 < len(self.curve) else None
+        return self.curve[first : last + 1], after
+
+    def corrected(self, points: Sequence[StretchPoint]) -> "Draft":
+        """Put members that were looked at more closely in their places."""
+        closer = {(point.lowest_layer_m, point.lid_m): point for point in points}
+        curve = (closer.get((one.lowest_layer_m, one.lid_m), one) for one in self.curve)
+        return replace(self, curve=tuple(curve))
 
 
 @dataclass(slots=True)
@@ -61,7 +70,7 @@ class Extras:
 
     Parameters
     ----------
-    lost : tuple of StretchPoint or None
+    lost : Loss or None
         The last set that carries the target and the next one.
     crossings : tuple of Crossing
         Where another wave takes over.
@@ -69,7 +78,7 @@ class Extras:
         What was asked for besides, or why it was not found.
     """
 
-    lost: tuple[StretchPoint, StretchPoint] | None = None
+    lost: Loss | None = None
     crossings: tuple[Crossing, ...] = ()
     layer_costs: LayerSensitivity | CalculationError | None = None
     mended: Mended | CalculationError | None = None
@@ -84,10 +93,10 @@ class Telling:
 
     def row(self, draft: Draft, extras: Extras) -> StretchRow:
         """Make a row of what was found for a pair."""
-        (target_s, reason), run = draft.target, draft.run
-        last, first = extras.lost or (None, None)
-        if run is not None and extras.lost is None:
-            last = draft.curve[run[1]]
+        (target_s, reason), last, first = draft.target, None, None
+        if extras.lost is not None:
+            last, first = extras.lost.last, extras.lost.first
+            draft = draft.corrected(extras.lost.corrected)
         own = next(point for point in draft.curve if point.own)
         return StretchRow(
             tableau=draft.tableau.name,
