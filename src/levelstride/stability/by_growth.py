@@ -52,10 +52,22 @@ def first_failure(problem: WaveProblem, high: float, tolerance: Tolerance) -> Br
     rate = problem.rate(tolerance)
     if problem.growth(high) <= rate:
         return _by_all_criteria(problem, high, tolerance)
-    found = _bracket(problem, high, lambda growth, _: _log_share(growth, rate))
+    found = first_growth(problem, high, tolerance)
     if problem.size > FOLLOWED_FROM or problem.stable(found.low, tolerance):
         return found
     return _by_all_criteria(problem, found.low, tolerance)
+
+
+def first_growth(problem: WaveProblem, high: float, tolerance: Tolerance) -> Bracket:
+    """Find where one wave begins to grow too fast, below a step at which it does.
+
+    Raises
+    ------
+    CalculationError
+        If it does at every step, however short.
+    """
+    rate = problem.rate(tolerance)
+    return _bracket(problem, high, lambda growth, _: _log_share(growth, rate))
 
 
 def strict_failure(problem: WaveProblem, high: float) -> Bracket:

@@ -1,9 +1,9 @@
 """The search for the longest stable step of large columns: marching finds, dense matrices judge.
 
 The scan of ``step_limit`` asks full matrices about every step it looks at. Here groups of waves
-march side by side instead, at a cost that grows with the number of unknowns alone, from where every
-rate of the operator is short in a step; below, and for growth too slow to show in a march, frozen
-layers say where to look. Full matrices are asked where a march leaves it open, and at the answer.
+march side by side instead, at a cost that grows with the number of unknowns alone; for shorter
+steps, and growth too slow to show in a march, frozen layers say where to look. Full matrices are
+asked where a march leaves it open, and at the answer.
 """
 
 from __future__ import annotations
@@ -14,6 +14,26 @@ import numpy as np
 
 from levelstride.stability.by_growth import first_failure
 from levelstride.stability.march import EFOLDINGS, QUIET, March, Seen
+from levelstride.stability.march_bounds import (
+    ASKED,
+    CERTAIN_UNKNOWNS,
+    CLOSE,
+    DENSE_UNKNOWNS,
+    DOUBTFUL,
+    FILL,
+    LADDER_UNKNOWNS,
+    LONG_MARCH,
+    MOST_HALVINGS,
+    MOST_LONGER,
+    MOST_SHORTER,
+    NOT_SMALL,
+    RANKED,
+    SHORT,
+    SLOW_STRIDE,
+    STRIDE,
+    STRIDE_STIFF,
+    TOGETHER,
+)
 from levelstride.stability.nearby import Nearby
 from levelstride.stability.step_limit import (
     BISECTION,
@@ -31,45 +51,6 @@ from levelstride.stability.step_limit import (
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem
 
-ASKED = 4
-"""Waves of a group whose frozen layers are asked where to look."""
-
-STRIDE, STRIDE_STIFF = 4, 24
-"""Steps of the scan from one look of a group to the next, and where slow terms are short."""
-
-SHORT, NOT_SMALL = 0.3, 0.15
-"""Step times rate up to which a term is short in one step."""
-
-CERTAIN_UNKNOWNS = 250
-"""Up to so many unknowns full matrices are asked about every wave at the answer."""
-
-LADDER_UNKNOWNS, DENSE_UNKNOWNS = 120, 1300
-"""The same about every wave at steps below the answer too; and about the binding wave alone."""
-
-DOUBTFUL = 0.5
-"""Share of the tolerated rate from which growth of a wave that is not quiet is looked into."""
-
-SLOW_STRIDE = 1.8
-"""Factor between steps that are asked about slow growth."""
-
-CLOSE, MOST_SHORTER = 4000, 3
-"""Steps that bear out a limit, and how often it is shortened where they do not."""
-
-LONG_MARCH = 20000
-"""Steps of the longest march that costs less than full matrices of every wave do."""
-
-FILL = 2.0
-"""How far below the limit, as a factor, the binding wave is looked at closely."""
-
-TOGETHER = 16
-"""Waves that march together where they may all look at the same step."""
-
-RANKED = 1.004
-"""How closely the limits of waves that do not bind are told apart, as a factor."""
-
-MOST_LONGER, MOST_HALVINGS = 24, 6
-"""How often longer waves are added, and how often the spacing is halved."""
-
 
 class MarchSearch:
     """Longest step that keeps spectrum and transient criterion at every wave of every air state.
@@ -77,7 +58,6 @@ class MarchSearch:
     Parameters
     ----------
     waves : StepSearch
-        Holds the waves, and the step up to which is scanned.
     tolerance : Tolerance
     judge : bool
         Whether full matrices are asked about the binding wave in the end.
@@ -132,6 +112,9 @@ class MarchSearch:
             known_s = max(known_s, self._near.first_s)
             for air, kappa in self._near.waves:
                 self._waves.kappas[air] = sorted({*self._waves.kappas[air], kappa})
+                found = self._waves.problem(air, kappa) if self._dense else None
+                if found and (at := self._near.limit(found, self._tolerance, self._cap())):
+                    self._note(at)
         self._known_s = known_s
         problems = self._waves.problems()
         groups = -(-len(problems) // TOGETHER)
@@ -149,12 +132,10 @@ class MarchSearch:
         looks = self._march.look(problems, dt)
         told = {Seen.GROWS} if self._dense else {Seen.GROWS, Seen.UNCLEAR}
         failing = [p for p, look in zip(problems, looks, strict=True) if look.seen in told]
-        if failing:
-            return failing
         unclear = [(look.rate, i) for i, look in enumerate(looks) if look.seen is Seen.UNCLEAR]
-        for rate, i in sorted(unclear, reverse=True):
+        for rate, i in [] if failing else sorted(unclear, reverse=True):
             self._ask(problems[i], dt, powers=rate <= QUIET * self._tolerance.rate)
-        return []
+        return failing
 
     def _ask(self, problem: WaveProblem, dt: float, *, powers: bool = False) -> None:
         """Ask full matrices about a wave where its answer may matter, and note what they say.
@@ -163,14 +144,10 @@ class MarchSearch:
         """
         if dt > self._smallest() or not self._dense:
             return
-        powers = powers or problem.size <= CERTAIN_UNKNOWNS
+        powers = powers or (self._near is None and problem.size <= CERTAIN_UNKNOWNS)
         grows = problem.growth(dt) > problem.rate(self._tolerance)
         if grows or (powers and not problem.stable(dt, self._tolerance)):
             self._note(first_failure(problem, dt, self._tolerance))
-
-    def _certain(self, dt: float) -> int:
-        """Unknowns up to which full matrices are asked about every wave at this step."""
-        return CERTAIN_UNKNOWNS if dt == self._smallest() else LADDER_UNKNOWNS
 
     def _ask_about_slow_growth(self, problems: Sequence[WaveProblem], dt: float) -> None:
         """Ask full matrices about waves whose growth may be too slow for a glance.
@@ -180,7 +157,8 @@ class MarchSearch:
         grow: the fastest first, and no more once one is found.
         """
         tolerance = self._tolerance
-        if self._near is None and problems[0].size <= self._certain(dt):
+        certain = CERTAIN_UNKNOWNS if dt == self._smallest() else LADDER_UNKNOWNS
+        if self._near is None and problems[0].size <= certain:
             slow = [problem for problem in problems if not problem.stable(dt, tolerance)]
             for problem in sorted(slow, key=lambda problem: -problem.growth(dt)):
                 self._ask(problem, min(dt, self._smallest()))
@@ -243,7 +221,8 @@ class MarchSearch:
         return [*sorted(looks), cap]
 
     def _cap(self) -> float:
-        return float(min(self._largest_s, NEAR_MINIMUM * self._smallest()))
+        reach = NEAR_MINIMUM if self._near is None else 1.0
+        return float(min(self._largest_s, reach * self._smallest()))
 
     def _close_in(self, failing: Sequence[WaveProblem], low: float, high: float) -> None:
         """Bisect between a stable and an unstable step of some waves; keep the first to fail."""
@@ -380,7 +359,6 @@ class MarchSearch:
         Such growth comes and goes over factors of the step, not over percents, and neighbouring
         waves share it: with many unknowns every second one is asked.
         """
-        assert self.best is not None
         if self._near is not None:
             return
         problems = self._waves.problems()
@@ -409,7 +387,8 @@ class MarchSearch:
         problem, low = self.best.problem, self.best.low
         if not (self._dense and self._asks_judge):
             return
-        if problem.growth_is_known(low) and problem.size > CERTAIN_UNKNOWNS:
+        certain = self._near is not None or problem.size > CERTAIN_UNKNOWNS
+        if certain and problem.growth_is_known(low):
             return  # told already, and the powers of a step that marches quietly are small
         if not problem.stable(low, self._tolerance):
             self._note(first_failure(problem, low, self._tolerance))

@@ -4,7 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-NEARBY, EXPECTED = 1.5, 1.01
+from levelstride.stability.by_growth import first_growth
+from levelstride.stability.step_limit import Bracket
+from levelstride.stability.tolerance import Tolerance
+from levelstride.stability.wave_problem import WaveProblem
+
+NEARBY, EXPECTED = 1.3, 1.01
 """How far below the expected limit, as a factor, is looked at all; how well it is expected."""
 
 WIDEST = 1.22
@@ -31,12 +36,26 @@ class Nearby:
         """Step below which nothing is looked at [s]."""
         return self.step_s / NEARBY
 
-    def looks(self, most: float) -> list[float]:
-        """Steps to look at up to ``most``: closely where the limit is expected, then ever wider."""
-        looks = [self.first_s, self.step_s / NEARBY**0.5, self.step_s / EXPECTED]
-        step, stride = self.step_s * EXPECTED, EXPECTED
-        while step < most:
-            looks.append(step)
+    def upward(self, most: float) -> list[float]:
+        """Steps up to ``most`` from where the limit is expected: closely at first, then wider."""
+        found, stride = [], EXPECTED
+        step = self.step_s * stride
+        while step < min(most, NEARBY * self.step_s):
+            found.append(step)
             stride = min(stride**2, WIDEST)
             step *= stride
-        return [*(look for look in looks if look < most), most]
+        return [*found, most]
+
+    def limit(self, problem: WaveProblem, tolerance: Tolerance, most: float) -> Bracket | None:
+        """Limit of a wave that binds, by the growth that full matrices tell; None beyond reach."""
+        for step in self.upward(most):
+            if problem.growth(step) > problem.rate(tolerance):
+                return first_growth(problem, step, tolerance)
+        return None
+
+    def looks(self, most: float) -> list[float]:
+        """Steps up to ``most`` to look at: well below, where the limit is expected, and beyond."""
+        if self.waves and most < self.step_s * WIDEST:
+            return [*([self.first_s] if self.first_s < most else []), most]
+        below = self.first_s, self.step_s / EXPECTED
+        return [*(step for step in below if step < most), *self.upward(most)]

@@ -12,7 +12,8 @@ from levelstride.splitting.splitting import Splitting
 from levelstride.stability.certificate import Certificate, Keeps, settle
 from levelstride.stability.courant import CourantLimit, courant_limit
 from levelstride.stability.extremes import is_skew, largest_modulus, spectral_norm
-from levelstride.stability.march_search import CERTAIN_UNKNOWNS, MarchSearch
+from levelstride.stability.march_bounds import CERTAIN_UNKNOWNS
+from levelstride.stability.march_search import MarchSearch
 from levelstride.stability.nearby import Nearby
 from levelstride.stability.own_growth import ROUND_OFF
 from levelstride.stability.spectrum import sampled_wavenumbers

@@ -16,7 +16,7 @@ from levelstride.results.cause import cause
 from levelstride.results.dataset import Limit
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.courant import rows_hold
-from levelstride.stability.march_search import DOUBTFUL, SLOW_STRIDE
+from levelstride.stability.march_bounds import DOUBTFUL, SLOW_STRIDE
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableStep

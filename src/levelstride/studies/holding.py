@@ -19,12 +19,8 @@ from levelstride.operator.setting import layout_of
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.courant import rows_hold
 from levelstride.stability.march import March, Seen
-from levelstride.stability.march_search import (
-    DENSE_UNKNOWNS,
-    LONG_MARCH,
-    TOGETHER,
-    MarchSearch,
-)
+from levelstride.stability.march_bounds import DENSE_UNKNOWNS, LONG_MARCH, TOGETHER
+from levelstride.stability.march_search import MarchSearch
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.step_limit import Bracket, StepSearch
 from levelstride.stability.tolerance import Tolerance

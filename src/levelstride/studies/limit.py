@@ -16,7 +16,7 @@ from levelstride.results.wording import number
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.amplification import explicit_polynomial
 from levelstride.stability.blas import on_one_thread
-from levelstride.stability.march_search import CERTAIN_UNKNOWNS
+from levelstride.stability.march_bounds import CERTAIN_UNKNOWNS
 from levelstride.stability.own_growth import cause_of_growth
 from levelstride.stability.step_limit import SCAN_RATIO, Watch
 from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
