@@ -15,6 +15,7 @@ NAMES = {
     "Limit",
     "Observed",
     "Stretch",
+    "WorkPrecision",
     "advise",
     "build",
     "calibrate",
@@ -23,6 +24,7 @@ NAMES = {
     "limit",
     "load",
     "stretch",
+    "work_precision",
     "write_advice",
 }
 HEAVY = {"numpy", "scipy", "numba", "h5py", "pydantic", "rich", "cyclopts"}

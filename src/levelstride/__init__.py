@@ -27,12 +27,14 @@ if TYPE_CHECKING:
     from levelstride.results.files import write_advice
     from levelstride.results.headroom import Headroom
     from levelstride.results.stretching import Stretch
+    from levelstride.results.work_precision import WorkPrecision
     from levelstride.studies.advise import advise
     from levelstride.studies.calibrate import Observed, calibrate
     from levelstride.studies.headroom import headroom
     from levelstride.studies.limit import limit
     from levelstride.studies.plan import CurrentConfiguration
     from levelstride.studies.stretch import stretch
+    from levelstride.studies.work_precision import work_precision
 
 __version__ = "0.2.0"
 
@@ -48,6 +50,7 @@ __all__ = [
     "Limit",
     "Observed",
     "Stretch",
+    "WorkPrecision",
     "advise",
     "build",
     "calibrate",
@@ -56,6 +59,7 @@ __all__ = [
     "limit",
     "load",
     "stretch",
+    "work_precision",
     "write_advice",
 ]
 
@@ -71,6 +75,7 @@ _HOMES = {
     "Limit": "results.dataset",
     "Observed": "studies.calibrate",
     "Stretch": "results.stretching",
+    "WorkPrecision": "results.work_precision",
     "advise": "studies.advise",
     "build": "column.read",
     "calibrate": "studies.calibrate",
@@ -79,6 +84,7 @@ _HOMES = {
     "limit": "studies.limit",
     "load": "column.read",
     "stretch": "studies.stretch",
+    "work_precision": "studies.work_precision",
     "write_advice": "results.files",
 }
 
