@@ -34,7 +34,7 @@ ORDERS_PER_LAYER = 0.25
 """Vertical orders up to this share of the layers are resolved, as for the errors of waves."""
 
 UNTRUE = 0.25
-"""A wave of the partner pairs that the air itself misses by more than this share is none [1]."""
+"""A wave whose frequency the air itself misses by more than this share is none [1]."""
 
 FAINT = 1e-3
 """Share of the envelope's energy that resolved waves must be able to hold at least [1]."""
@@ -151,7 +151,8 @@ def gravity_packet(column: Column, air: Background) -> Packet:
 def _resolved(basis: WaveBasis, terms: Mapping[str, Banded], layout: Layout) -> NDArray[np.intp]:
     """Resolved gravity waves of positive frequency that the air itself has.
 
-    In air that is not stable the basis is that of stable air in its stead: such waves are left out.
+    In air that is not stable the basis is that of stable air in its stead: waves that live there
+    are left out, told by what the partner pairs give them for a frequency in the mean.
     """
     fastest = np.abs(basis.frequency).max(initial=0.0)
     wanted = np.flatnonzero(
@@ -161,7 +162,7 @@ def _resolved(basis: WaveBasis, terms: Mapping[str, Banded], layout: Layout) -> 
     )
     pairs = total(layout.size, (terms[n] for n, t in CATALOGUE.items() if t.partner is not None))
     vectors, frequency = basis.vectors[:, wanted], basis.frequency[wanted]
-    missed = np.linalg.norm(pairs.apply(vectors) - 1j * frequency * vectors, axis=0)
+    missed = np.abs(np.sum(vectors.conj() * pairs.apply(vectors), axis=0) - 1j * frequency)
     return np.asarray(wanted[missed <= UNTRUE * frequency])
 
 

@@ -30,8 +30,8 @@ class WorkPoint:
         What the cost is made of [1/h].
     measured_s_per_hour : float
         Measured time of the steps of this column and one wave for one simulated hour [s/h].
-    at_round_off : bool
-        Whether the error is no larger than what round-off may make.
+    round_off : float
+        Error that round-off may make within the time in steps of this length [1].
     air : str
         Air state of the error.
     """
@@ -46,8 +46,13 @@ class WorkPoint:
     solves_per_hour: float
     exchanges_per_hour: float
     measured_s_per_hour: float
-    at_round_off: bool
+    round_off: float
     air: str = ""
+
+    @property
+    def at_round_off(self) -> bool:
+        """Whether the error is no larger than what round-off may make."""
+        return self.error <= self.round_off
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -110,8 +115,6 @@ class WorkPrecision:
         Order that the coefficients give on linear equations with this splitting on this column.
     declared_order : int
         Order that the source of the tableau claims.
-    round_off_error : float
-        Error that round-off may make within the time [1].
     packets : tuple of PacketSummary
         What was carried, one per air state.
     notes : tuple of str
@@ -131,7 +134,6 @@ class WorkPrecision:
     largest_steps_order: float | None = None
     linear_order: int
     declared_order: int
-    round_off_error: float
     packets: tuple[PacketSummary, ...]
     notes: tuple[str, ...] = ()
 

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import replace
-from itertools import pairwise
+from functools import lru_cache
+from itertools import pairwise, takewhile
 from math import log
 from typing import Final
 
@@ -29,6 +30,9 @@ ABOVE_ROUND_OFF: Final = 10.0
 REDUCED: Final = 0.25
 """A local order that falls short of the linear order by more than this is reduced [1]."""
 
+LOST: Final = 0.2
+"""Beyond this error the packet is out of phase, and orders tell of that and not of sound [1]."""
+
 LARGE_STEPS: Final = 4.0
 """Factor of the step over which the order at the largest steps is taken [1]."""
 
@@ -39,7 +43,7 @@ At = Callable[[int], WorkPoint | None]
 
 
 def shorter_steps(
-    at: At, fewest: int, found: Sequence[WorkPoint], round_off: float
+    at: At, fewest: int, found: Sequence[WorkPoint], expected: int
 ) -> list[WorkPoint]:
     """Halve the step on until the order has settled or round-off is reached.
 
@@ -51,17 +55,17 @@ def shorter_steps(
         Number of steps of the last point.
     found : sequence of WorkPoint
         From the longest step to the shortest.
-    round_off : float
-        Error that round-off may make [1].
+    expected : int
+        Order on linear equations.
 
     Returns
     -------
     list of WorkPoint
         The shorter ones.
     """
-    line, floor = list(found), ABOVE_ROUND_OFF * round_off
+    line = list(found)
     for k in range(1, HALVINGS + 1):
-        if line[-1].error <= floor or _settled(line, floor):
+        if not _clear(line[-1]) or _settled(line, expected):
             break
         point = at(fewest * 2**k)
         if point is None:
@@ -72,28 +76,37 @@ def shorter_steps(
 
 def with_orders(answer: WorkPrecision) -> WorkPrecision:
     """Fill in the local order of every point and the orders of the whole."""
-    floor = ABOVE_ROUND_OFF * answer.round_off_error
     line = [*answer.points, *answer.shorter]
     told = [
-        replace(point, local_order=_slope(point, after) if after.error > floor else None)
+        replace(point, local_order=_slope(point, after) if _clear(after) else None)
         for point, after in pairwise(line)
     ] + line[-1:]
-    clean = [point for point in line if point.error > floor]
+    clean = _clear_ones(line)
     answer = replace(
         answer,
         points=tuple(told[: len(answer.points)]),
         shorter=tuple(told[len(answer.points) :]),
-        largest_steps_order=_largest_steps_order(answer.points, floor),
+        largest_steps_order=_largest_steps_order(answer.points),
     )
     if len(clean) < 2:
         return answer
     return replace(
         answer,
         observed_order=_slope(clean[-2], clean[-1]),
-        settled=_settled(clean, floor),
+        settled=_settled(clean, answer.linear_order),
         order_from_s=clean[-2].step_s,
         order_to_s=clean[-1].step_s,
     )
+
+
+def _clear(point: WorkPoint) -> bool:
+    """Whether the error stands out from round-off."""
+    return point.error > ABOVE_ROUND_OFF * point.round_off
+
+
+def _clear_ones(line: Sequence[WorkPoint]) -> list[WorkPoint]:
+    """The points down to the first that does not stand out from round-off."""
+    return list(takewhile(_clear, line))
 
 
 def _slope(longer: WorkPoint, shorter: WorkPoint) -> float | None:
@@ -102,16 +115,22 @@ def _slope(longer: WorkPoint, shorter: WorkPoint) -> float | None:
     return log(longer.error / shorter.error) / log(longer.step_s / shorter.step_s)
 
 
-def _settled(line: Sequence[WorkPoint], floor: float) -> bool:
-    """Whether the last two local orders agree, short of round-off and where sound is resolved."""
-    if len(line) < 3 or line[-1].error <= floor or line[-1].vertical_courant > 1.0:
+def _settled(line: Sequence[WorkPoint], expected: int) -> bool:
+    """Whether the last two local orders agree, short of round-off.
+
+    With one another where vertical sound is resolved, elsewhere with the expected order as well:
+    reduced orders may stand for a while.
+    """
+    if len(line) < 3 or not _clear(line[-1]):
         return False
     before, last = _slope(line[-3], line[-2]), _slope(line[-2], line[-1])
-    return before is not None and last is not None and abs(before - last) <= SAME_ORDER
+    if before is None or last is None or abs(before - last) > SAME_ORDER:
+        return False
+    return line[-1].vertical_courant <= 1.0 or abs(last - expected) <= SAME_ORDER
 
 
-def _largest_steps_order(points: Sequence[WorkPoint], floor: float) -> float | None:
-    clean = [point for point in points if point.error > floor]
+def _largest_steps_order(points: Sequence[WorkPoint]) -> float | None:
+    clean = _clear_ones(points)
     if len(clean) < 2:
         return None
     target = clean[0].step_s / LARGE_STEPS
@@ -138,9 +157,15 @@ def linear_order(tableau: Tableau, parts: Sequence[Parts]) -> int:
     elif all(part.slow.is_zero for part in parts):
         order = _order_alone(tableau.a_implicit, tableau.b_implicit)
     else:
-        order = audit(tableau).linear_order
+        order = _order_of_pair(tableau)
     after = any(not (part.after.is_zero and part.after_implicit.is_zero) for part in parts)
     return min(order, 1) if after else order
+
+
+@lru_cache(maxsize=256)
+def _order_of_pair(tableau: Tableau) -> int:
+    """Audits of schemes of many stages take half a second, and compare asks for each again."""
+    return audit(tableau).linear_order
 
 
 def _order_alone(a: NDArray[np.float64], b: NDArray[np.float64]) -> int:
@@ -172,17 +197,15 @@ def notes(answer: WorkPrecision) -> list[str]:
 
 
 def _of_round_off(answer: WorkPrecision) -> list[str]:
-    floor = number(answer.round_off_error, 1)
-    reached = [
-        point.step_s
-        for point in answer.points
-        if point.error <= ABOVE_ROUND_OFF * answer.round_off_error
-    ]
-    if len(reached) == len(answer.points):
+    hidden = answer.points[len(_clear_ones(answer.points)) :]
+    if not hidden:
+        return []
+    floor = number(hidden[0].round_off, 1)
+    if len(hidden) == len(answer.points):
         return [f"the error is round-off (about {floor}) at every step: no order"]
-    if reached:
-        return [f"round-off (about {floor}) hides the order from {number(reached[0])} s downwards"]
-    return []
+    return [
+        f"round-off (about {floor}) hides the order from {number(hidden[0].step_s)} s downwards"
+    ]
 
 
 def _of_reduction(answer: WorkPrecision) -> list[str]:
@@ -190,7 +213,9 @@ def _of_reduction(answer: WorkPrecision) -> list[str]:
     short = [
         point
         for point in answer.points
-        if point.local_order is not None and point.local_order < answer.linear_order - REDUCED
+        if point.error <= LOST
+        and point.local_order is not None
+        and point.local_order < answer.linear_order - REDUCED
     ]
     if not short:
         return []

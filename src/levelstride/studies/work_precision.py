@@ -25,8 +25,11 @@ from levelstride.studies.methods import tableau_of
 from levelstride.studies.timing import step_time
 from levelstride.tableaux.tableau import Tableau
 
-FEWEST_STEPS: Final = 4
-"""Steps in the time at least, where nothing bites or the stable step is longer."""
+PER_STEP: Final = float(np.finfo(np.float64).eps) / 4
+"""About what round-off adds to the error with every step [1]."""
+
+STEPS_PER_PERIOD: Final = 4
+"""Steps in a period of the packet, and in the whole time, at least: longer ones tell nothing."""
 
 
 @on_one_thread
@@ -93,25 +96,27 @@ def work_precision(
         stable_step_s = _stable_step(column, splitting, method)
     runs, left_out = exact_packets(column, hours * HOUR_S)
     study = _Study(column, splitting, method, hours, runs)
-    counts = _step_counts(hours * HOUR_S, stable_step_s, points, smallest_fraction)
+    period_s = min(hours * HOUR_S, *(run.summary.period_s for run in runs))
+    longest_s = min(stable_step_s, period_s / STEPS_PER_PERIOD)
+    counts = _step_counts(hours * HOUR_S, longest_s, points, smallest_fraction)
     found = [point for n in counts if (point := study.at(n)) is not None]
     if not found:
         raise CalculationError(f"{method.name} with {splitting.name}: {study.problems[0]}")
-    fewest = round(found[-1].steps_per_hour * hours)
+    expected = linear_order(method, [run.packet.parts(splitting) for run in runs])
     answer = WorkPrecision(
         tableau=method.name,
         split=splitting.name,
         hours=hours,
         stable_step_s=stable_step_s if isfinite(stable_step_s) else None,
         points=tuple(found),
-        shorter=tuple(shorter_steps(study.at, fewest, found, study.round_off)),
-        linear_order=linear_order(method, [run.packet.parts(splitting) for run in runs]),
+        shorter=tuple(shorter_steps(study.at, counts[-1], found, expected)),
+        linear_order=expected,
         declared_order=method.order,
-        round_off_error=study.round_off,
         packets=tuple(run.summary for run in runs),
     )
     answer = with_orders(answer)
-    return replace(answer, notes=(*notes(answer), *left_out, *study.problems))
+    said = [] if longest_s == stable_step_s else [_cut(stable_step_s, longest_s, period_s)]
+    return replace(answer, notes=(*said, *notes(answer), *left_out, *study.problems))
 
 
 class _Study:
@@ -137,7 +142,7 @@ class _Study:
             float((np.sqrt(air.sound_speed_squared_c) / column.levels.thickness_m).max())
             for air in column.airs
         )
-        self.round_off = max(run.round_off for run in runs)
+        self._round_off = max(run.round_off for run in runs)
         self.problems: list[str] = []
         """Steps that could not be taken, and why."""
 
@@ -171,7 +176,7 @@ class _Study:
             solves_per_hour=cost.solves * hourly,
             exchanges_per_hour=cost.exchanges * hourly,
             measured_s_per_hour=per_step * hourly,
-            at_round_off=error <= self.round_off,
+            round_off=self._round_off + PER_STEP * self.hours * hourly,
             air=air,
         )
 
@@ -221,9 +226,17 @@ def _step_counts(time_s: float, longest_s: float, points: int, smallest: float) 
     --------
     >>> _step_counts(3600.0, 10.0, 4, 1 / 8)
     [360, 720, 1440, 2880]
-    >>> _step_counts(3600.0, inf, 3, 1 / 4)
-    [4, 8, 16]
+    >>> _step_counts(3600.0, 7.0, 3, 1 / 2)
+    [515, 728, 1029]
     """
-    fewest = max(float(FEWEST_STEPS), time_s / longest_s)
+    fewest = time_s / longest_s
     wanted = (fewest * smallest ** (-k / (points - 1)) for k in range(points))
     return sorted({ceil(n * (1 - 1e-12)) for n in wanted})
+
+
+def _cut(stable_step_s: float, longest_s: float, period_s: float) -> str:
+    stable = f"{number(stable_step_s)} s is" if isfinite(stable_step_s) else "any step is"
+    return (
+        f"{stable} stable; steps begin at {number(longest_s)} s, a quarter of {number(period_s)} s "
+        "(the packet's period or the whole time), since longer ones cannot carry it"
+    )
