@@ -8,7 +8,7 @@ from typing import Final
 
 import numpy as np
 
-from levelstride.accuracy.matched_errors import MatchedErrors, matched_errors
+from levelstride.accuracy.matched_errors import MatchedErrors, effective_frequency, matched_errors
 from levelstride.accuracy.matching import Array, Follower, Mask
 from levelstride.accuracy.wave_errors import ResolvedWaves, all_waves, resolved_waves
 from levelstride.column.column import Advice, Column
@@ -121,6 +121,11 @@ class WaveErrorsAtStep:
             If an implicit stage has no solution at this step.
         """
         return self.join(dt, [self.one(k, dt) for k in range(len(self))])
+
+    def longest_turn(self, dt: float) -> float:
+        """Return by how much the fastest of the waves turns in one step [rad]."""
+        fastest = (effective_frequency(wave.modes).max() for wave in self._waves)
+        return dt * float(max(fastest, default=0.0))
 
     def one(self, k: int, dt: float) -> MatchedErrors:
         """Return what one step of length ``dt`` [s] does to one of the waves."""

@@ -215,12 +215,15 @@ class StepErrors:
         CalculationError
             If an implicit stage has no solution at this step.
         """
+        return worst_of(self.each(dt))
+
+    def each(self, dt: float) -> list[WaveErrors]:
+        """Return the worst errors at each of the waves that have any resolved, in order."""
         if self._steppers:
             self._steppers = [stepper.at_step(dt) for stepper in self._steppers]
         else:
             self._steppers = [Stepper(parts, self._tableau, dt) for parts in self._parts]
-        found = (self._one(k, dt) for k in range(len(self._waves)))
-        return worst_of(found)
+        return [self._one(k, dt) for k in range(len(self._waves))]
 
     def _one(self, k: int, dt: float) -> WaveErrors:
         wave = self._waves[k]
