@@ -78,7 +78,7 @@ def test_the_same_column_gives_the_same_packet():
     np.testing.assert_array_equal(one.state, other.state)
 
 
-def test_a_wind_carries_the_same_packet():
+def test_a_uniform_wind_carries_the_same_packet():
     column = column_for()
     air = replace(column.airs[0], wind_c=np.full(32, 9.0), wind_f=np.full(33, 9.0))
     np.testing.assert_allclose(gravity_packet(column, air).state, packet_of(column).state)
@@ -98,9 +98,26 @@ def test_a_mixed_layer_leaves_the_waves_above_it():
     column = column_for()
     air = column.airs[0]
     convective_f, convective_c = air.dtheta_dz_f.copy(), air.dtheta_dz_c.copy()
-    convective_f[:1], convective_c[:1] = -1e-4, -1e-4
-    air = replace(air, dtheta_dz_f=convective_f, dtheta_dz_c=convective_c)
-    assert 1 <= gravity_packet(column, air).nmode <= 8
+    convective_f[:1], convective_c[:1] = -1e-5, -1e-5
+    packet = gravity_packet(
+        column, replace(air, dtheta_dz_f=convective_f, dtheta_dz_c=convective_c)
+    )
+    assert 4 <= packet.nmode <= 8
+
+
+@pytest.mark.parametrize("staggering", STAGGERINGS)
+def test_in_a_sheared_wind_it_holds_no_sound(staggering):
+    """What is left of it after an hour is the sum of its own modes, to round-off."""
+    column = column_for(staggering)
+    wind = 3 + 1e-3 * column.levels.interfaces_m
+    air = replace(column.airs[0], wind_c=(wind[1:] + wind[:-1]) / 2, wind_f=wind)
+    packet = gravity_packet(column, air)
+    modes = normal_modes(column, air, packet.wave)
+    assert not modes.is_normal
+    content = np.abs(modes.duals.conj().T @ packet.state) / np.maximum(modes.condition, 1.0)
+    assert content[modes.kind == "sound"].max() < 1e-10
+    assert content[modes.intrinsic_frequency < 0].max() < 1e-10
+    assert content[modes.kind == "gravity"].max() > 0.1
 
 
 def test_air_states_without_gravity_waves_are_named_and_left_out():

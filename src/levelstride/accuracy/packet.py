@@ -9,16 +9,15 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from levelstride.accuracy.modes import STILL, mode_weights
+from levelstride.accuracy.modes import mode_weights, modes_of, resolved_gravity
 from levelstride.column.air import Background
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
 from levelstride.operator.bands import Banded, total
 from levelstride.operator.setting import layout_of
 from levelstride.operator.state import Layout
-from levelstride.operator.terms import CATALOGUE, assemble
+from levelstride.operator.terms import assemble
 from levelstride.operator.wave import Wave
-from levelstride.operator.wave_basis import WaveBasis, wave_basis
 from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
 
@@ -30,14 +29,8 @@ WAVELENGTH_CELLS = 12
 CENTRE_M = 6000.0
 """Height of the packet above the ground [m]: the middle of a troposphere."""
 
-ORDERS_PER_LAYER = 0.25
-"""Vertical orders up to this share of the layers are resolved, as for the errors of waves."""
-
-UNTRUE = 0.25
-"""A wave whose frequency the air itself misses by more than this share is none [1]."""
-
-FAINT = 1e-3
-"""Share of the envelope's energy that resolved waves must be able to hold at least [1]."""
+FAINT = 0.03
+"""Share of the envelope's amplitude that resolved waves must be able to hold at least [1]."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -58,7 +51,7 @@ class Packet:
     centre_m, half_width_m, vertical_wavelength_m : float
         Of the envelope that it was made from [m].
     period_s : float
-        Period of the mean frequency, weighted by energy [s].
+        Period of the mean intrinsic frequency, weighted by energy [s].
     nmode : int
         Number of gravity modes that it is made of.
     """
@@ -90,14 +83,15 @@ def gravity_packet(column: Column, air: Background) -> Packet:
 
     Its horizontal wavelength is 12 grid spacings along an axis: half as long again as the shortest
     wave that counts as resolved (8), and among the fastest gravity waves that a model carries well,
-    which ask most of a step. In the vertical, w within a Gaussian envelope around 6 km (or the
+    which ask most of a step. In the vertical, theta' within a Gaussian envelope around 6 km (or the
     middle of a lower column), a third of that height in half width and that height in vertical
-    wavelength, its phase turning with height, so that energy goes one way. This sketch is projected
-    in the energy on the gravity waves of positive frequency and of vertical order up to a quarter
-    of the layers, which leaves pure gravity waves without any sound, and scaled to unit energy.
+    wavelength, its phase turning with height, so that energy goes up. This sketch is projected in
+    the energy on the resolved gravity waves (vertical order up to a quarter of the layers) of
+    positive intrinsic frequency, and scaled to unit energy.
 
-    The waves are those of the partner pairs: at rest and without damping. Wind and damping then act
-    on the packet as on any other state.
+    The waves are normal modes of the whole operator, wind and damping included. Such a packet stays
+    what it is; one of waves at rest would shed sound in a wind, which an hour later is out of phase
+    at steps far shorter than those the packet asks for.
 
     Parameters
     ----------
@@ -109,9 +103,8 @@ def gravity_packet(column: Column, air: Background) -> Packet:
     CalculationError
         If no gravity wave is resolved: too few layers, or air that is not stably stratified.
     """
-    wave = Wave(
-        2 * np.pi / (WAVELENGTH_CELLS * column.horizontal.grid_spacing_m), column.horizontal
-    )
+    wavelength_m = WAVELENGTH_CELLS * column.horizontal.grid_spacing_m
+    wave = Wave(2 * np.pi / wavelength_m, column.horizontal)
     layout, weights = layout_of(column), mode_weights(column, air)
     scale = np.sqrt(weights)
 
@@ -119,59 +112,50 @@ def gravity_packet(column: Column, air: Background) -> Packet:
         return {name: term.similar(scale) for name, term in assemble(column, state, wave).items()}
 
     terms = in_energy(air)
+    modes = modes_of(terms, layout, weights)
+    modes = modes.select(resolved_gravity(modes) & (modes.intrinsic_frequency > 0))
     centre = min(CENTRE_M, column.levels.top_m / 2)
-    basis = wave_basis(terms, layout, weights)
-    chosen = _resolved(basis, terms, layout)
-    vectors = basis.vectors[:, chosen]
-    sketch = _sketch(column, layout, centre)
-    share = vectors.conj().T @ sketch
-    energy = np.abs(share) ** 2
-    if energy.sum() <= FAINT * np.vdot(sketch, sketch).real:
+    share, state = _projected(_sketch(column, layout, centre), modes.vectors)
+    if np.linalg.norm(state) <= FAINT:
         raise CalculationError(
             f"air '{air.name}': no gravity wave is resolved at a wavelength of {WAVELENGTH_CELLS} "
             f"grid spacings, so there is no packet to judge steps by; it takes stably stratified "
             f"air and vertical orders up to a quarter of the {layout.nlev} layers"
         )
-    state = vectors @ (share / np.sqrt(energy.sum()))
     return Packet(
         wave=wave,
         layout=layout,
         terms=terms,
         on_reference=in_energy(column.reference) if column.reference else terms,
-        state=state.astype(np.complex128),
-        wavelength_m=float(2 * np.pi / wave.kappa),
+        state=state / np.linalg.norm(state),
+        wavelength_m=float(wavelength_m),
         centre_m=float(centre),
         half_width_m=float(centre / 3),
         vertical_wavelength_m=float(centre),
-        period_s=float(2 * np.pi * energy.sum() / np.sum(energy * basis.frequency[chosen])),
-        nmode=int(chosen.size),
+        period_s=float(2 * np.pi / np.average(modes.intrinsic_frequency, weights=share)),
+        nmode=share.size,
     )
 
 
-def _resolved(basis: WaveBasis, terms: Mapping[str, Banded], layout: Layout) -> NDArray[np.intp]:
-    """Resolved gravity waves of positive frequency that the air itself has.
-
-    In air that is not stable the basis is that of stable air in its stead: waves that live there
-    are left out, told by what the partner pairs give them for a frequency in the mean.
-    """
-    fastest = np.abs(basis.frequency).max(initial=0.0)
-    wanted = np.flatnonzero(
-        (basis.kind == "gravity")
-        & (basis.frequency > STILL * fastest)
-        & (basis.vertical_order <= ORDERS_PER_LAYER * layout.nlev)
-    )
-    pairs = total(layout.size, (terms[n] for n, t in CATALOGUE.items() if t.partner is not None))
-    vectors, frequency = basis.vectors[:, wanted], basis.frequency[wanted]
-    missed = np.abs(np.sum(vectors.conj() * pairs.apply(vectors), axis=0) - 1j * frequency)
-    return np.asarray(wanted[missed <= UNTRUE * frequency])
+def _projected(
+    sketch: Matrix, vectors: Matrix
+) -> tuple[NDArray[np.float64], NDArray[np.complex128]]:
+    """Share of every mode, shape (nmode,), and the nearest sum of modes, shape (nstate,)."""
+    if not vectors.shape[1]:
+        return np.zeros(0), np.zeros(sketch.size, dtype=np.complex128)
+    amplitude = np.linalg.lstsq(vectors, sketch, rcond=None)[0]
+    return np.abs(amplitude) ** 2, np.asarray(vectors @ amplitude, dtype=np.complex128)
 
 
 def _sketch(column: Column, layout: Layout, centre_m: float) -> NDArray[np.complex128]:
-    """Vertical wind within the envelope, energy per metre the square of it, (nstate,)."""
-    height = column.levels.interfaces_m[1:-1] - centre_m
-    width = centre_m / 3
+    """theta' within the envelope, energy per metre the square of it, of unit norm, (nstate,)."""
+    levels = column.levels
+    if layout.theta_in_layers:
+        above_m, depth_m = levels.centres_m - centre_m, levels.thickness_m
+    else:
+        above_m, depth_m = levels.interfaces_m[1:-1] - centre_m, levels.spacing_m
     sketch = np.zeros(layout.size, dtype=np.complex128)
-    sketch[layout.w] = np.sqrt(column.levels.spacing_m) * np.exp(
-        -0.5 * (height / width) ** 2 + 2j * np.pi * height / centre_m
+    sketch[layout.theta] = np.sqrt(depth_m) * np.exp(
+        -0.5 * (above_m / (centre_m / 3)) ** 2 + 2j * np.pi * above_m / centre_m
     )
-    return sketch
+    return np.asarray(sketch / np.linalg.norm(sketch))
