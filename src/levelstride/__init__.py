@@ -26,12 +26,14 @@ if TYPE_CHECKING:
     from levelstride.results.dataset import Advice, AdviceRow, Limit
     from levelstride.results.files import write_advice
     from levelstride.results.headroom import Headroom
+    from levelstride.results.modes_found import ColumnModes
     from levelstride.results.stretching import Stretch
     from levelstride.results.work_precision import WorkPrecision
     from levelstride.studies.advise import advise
     from levelstride.studies.calibrate import Observed, calibrate
     from levelstride.studies.headroom import headroom
     from levelstride.studies.limit import limit
+    from levelstride.studies.modes import modes
     from levelstride.studies.plan import CurrentConfiguration
     from levelstride.studies.stretch import stretch
     from levelstride.studies.work_precision import work_precision
@@ -44,6 +46,7 @@ __all__ = [
     "CalculationError",
     "Calibration",
     "Column",
+    "ColumnModes",
     "CurrentConfiguration",
     "Headroom",
     "InputError",
@@ -58,6 +61,7 @@ __all__ = [
     "level_report",
     "limit",
     "load",
+    "modes",
     "stretch",
     "work_precision",
     "write_advice",
@@ -69,6 +73,7 @@ _HOMES = {
     "CalculationError": "errors",
     "Calibration": "results.calibration",
     "Column": "column.column",
+    "ColumnModes": "results.modes_found",
     "CurrentConfiguration": "studies.plan",
     "Headroom": "results.headroom",
     "InputError": "errors",
@@ -83,6 +88,7 @@ _HOMES = {
     "level_report": "column.level_report",
     "limit": "studies.limit",
     "load": "column.read",
+    "modes": "studies.modes",
     "stretch": "studies.stretch",
     "work_precision": "studies.work_precision",
     "write_advice": "results.files",

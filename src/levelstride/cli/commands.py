@@ -9,6 +9,7 @@ COMMANDS: Final[Mapping[str, str]] = {
     "advise": "Try tableaux and splittings and advise a step for each, the cheapest first.",
     "stretch": "Stretch the levels and find how far a step goes with them, and what limits it.",
     "calibrate": "Compare steps that a model survived or lost with the linear limit.",
+    "modes": "Show the normal modes of a column, and how far levels and a step distort them.",
     "tableaux": "List the IMEX tableaux, or show one with its audit.",
     "schema": "Print the JSON Schema of the column file, for editors.",
 }

@@ -58,7 +58,8 @@ class ModeFound:
     equivalent_depth_m : float or None
         Depth of shallow water whose waves are as fast: (intrinsic frequency/k_x)^2/g [m].
     vertical_wavelength_m, wavelength_layers : float or None
-        Vertical wavelength within the layers that hold the mode [m], [layers].
+        Vertical wavelength of the field that holds most energy, by its mean squared slope [m], and
+        in layers of the mean thickness there; None for the Lamb wave.
     layer_lowest, layer_highest : int
         Layers that hold 90 % of the energy, both included.
     bottom_m, top_m : float

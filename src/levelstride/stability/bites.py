@@ -143,7 +143,7 @@ def anatomy(problem: WaveProblem, basis: Matrix) -> Anatomy:
         _kind_shares(problem, basis),
         lowest,
         highest,
-        vertical_wavelength(layout, basis, fields, lowest, highest),
+        _wavelength(layout, basis, fields, lowest, highest),
         by_layer,
     )
 
@@ -190,7 +190,7 @@ def layers_holding(energy: NDArray[np.float64], share: float) -> tuple[int, int]
     return best[2], best[2] + best[0] - 1
 
 
-def vertical_wavelength(
+def _wavelength(
     layout: Layout, basis: Matrix, fields: dict[str, float], lowest: int, highest: int
 ) -> float | None:
     """Vertical wavelength of the field that holds most energy, from neighbouring differences.

@@ -11,11 +11,11 @@ import numpy as np
 from levelstride.accuracy.by_kind import step_wave_errors
 from levelstride.accuracy.isothermal import IsothermalWaves, isothermal_waves
 from levelstride.accuracy.modes import LARGEST_CONDITION, Modes, normal_modes
+from levelstride.accuracy.structure import vertical_wavelength
 from levelstride.column.air import Background
 from levelstride.column.column import Column, Horizontal
 from levelstride.constants import GRAVITY
 from levelstride.errors import InputError
-from levelstride.operator.state import FIELDS
 from levelstride.operator.wave import Wave
 from levelstride.operator.wave_basis import KINDS
 from levelstride.results.modes_found import (
@@ -26,12 +26,7 @@ from levelstride.results.modes_found import (
     WaveModes,
 )
 from levelstride.splitting.splitting import resolve
-from levelstride.stability.bites import (
-    SHARE,
-    energy_by_layer,
-    layers_holding,
-    vertical_wavelength,
-)
+from levelstride.stability.bites import SHARE, energy_by_layer, layers_holding
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.spectrum import sampled_wavenumbers, steepest_wavenumber
 from levelstride.studies.grid_distortion import (
@@ -53,6 +48,10 @@ the shortest that an accuracy limit binds."""
 
 NOT_TURNING: Final = 1e-10
 """Share of the largest frequency below which a mode stands still."""
+
+
+UNIFORM: Final = 1.5
+"""Thickest layer over thinnest up to which levels count as uniform."""
 
 
 @on_one_thread
@@ -279,14 +278,11 @@ def _mode(
     compared: Sequence[GridFound],
 ) -> ModeFound:
     kind, order = str(found.kind[i]), int(found.vertical_order[i])
-    vector = found.vectors[:, [i]]
-    energy = np.abs(vector[:, 0]) ** 2
-    by_layer = energy_by_layer(found.layout, energy)
+    vector = found.vectors[:, i]
+    by_layer = energy_by_layer(found.layout, np.abs(vector) ** 2)
     lowest, highest = layers_holding(by_layer, SHARE)
-    fields = {name: float(energy[found.layout.places(name)].sum()) for name in FIELDS}
-    in_layers = vertical_wavelength(found.layout, vector, fields, lowest, highest)
+    upright = None if kind == "Lamb" else vertical_wavelength(column.levels, found.layout, vector)
     faces = column.levels.interfaces_m
-    bottom, top = float(faces[lowest]), float(faces[highest + 1])
     frequency, intrinsic = float(found.frequency[i]), float(found.intrinsic_frequency[i])
     turns = abs(frequency) > NOT_TURNING * float(np.abs(found.frequency).max())
     speed = intrinsic / gradient if gradient > 0 else None
@@ -300,14 +296,12 @@ def _mode(
         growth_per_s=float(found.growth[i]),
         entangled=bool(found.condition[i] > LARGEST_CONDITION),
         equivalent_depth_m=None if speed is None or not turns else speed**2 / GRAVITY,
-        vertical_wavelength_m=(
-            None if in_layers is None else in_layers * (top - bottom) / (highest - lowest + 1)
-        ),
-        wavelength_layers=in_layers,
+        vertical_wavelength_m=None if upright is None else upright[0],
+        wavelength_layers=None if upright is None else upright[1],
         layer_lowest=lowest,
         layer_highest=highest,
-        bottom_m=bottom,
-        top_m=top,
+        bottom_m=float(faces[lowest]),
+        top_m=float(faces[highest + 1]),
         isothermal_per_s=exact,
         grids=_on_grids((kind, order), exact, compared),
     )
@@ -339,5 +333,11 @@ def _notes(column: Column, waves: Sequence[WaveModes], *, grids: bool) -> tuple[
             "and order are those of the waves at rest that hold most of their energy"
         )
         if grids:
-            found.append("the comparison of grids is that of the column at rest")
+            found.append("the comparison with finer levels is that of the column at rest")
+    thickness = column.levels.thickness_m
+    if grids and thickness.max() > UNIFORM * thickness.min():
+        found.append(
+            "short vertical waves gather where layers are thin, on finer levels in thinner ones: "
+            "ratios of high vertical orders compare waves at different heights"
+        )
     return tuple(found)
