@@ -31,7 +31,8 @@ class TransientFound:
     wavelength_m : float
         2 pi over it [m].
     kind : str
-        Kind of wave that holds most of the energy of the state that is amplified.
+        Kind of wave that holds most of the energy of the state that is amplified; ``none`` where no
+        state gains energy, and the layers are then all.
     kind_share, energy_share : mapping of str to float
         Its energy by kind of wave, and by field [1].
     layer_lowest, layer_highest : int

@@ -57,8 +57,16 @@ def _added(growth: TransientGrowth) -> float:
 
 
 def _described(column: Column, problem: WaveProblem, growth: TransientGrowth) -> TransientFound:
-    state = anatomy(problem, growth.state[:, None])
     faces = column.levels.interfaces_m
+    if growth.steps == 0:
+        kind, lowest, highest = "none", 0, column.levels.nlev - 1
+        kinds: dict[str, float] = {}
+        energy: dict[str, float] = {}
+    else:
+        state = anatomy(problem, growth.state[:, None])
+        kinds, energy = state.kind_share, state.energy_share
+        kind = max(kinds, key=lambda name: kinds[name])
+        lowest, highest = state.layer_lowest, state.layer_highest
     return TransientFound(
         step_s=growth.step_s,
         largest_norm=growth.largest_norm,
@@ -70,11 +78,11 @@ def _described(column: Column, problem: WaveProblem, growth: TransientGrowth) ->
         air=problem.air.name,
         wavenumber_per_m=problem.kappa,
         wavelength_m=2 * pi / problem.kappa,
-        kind=max(state.kind_share, key=lambda kind: state.kind_share[kind]),
-        kind_share=state.kind_share,
-        energy_share=state.energy_share,
-        layer_lowest=state.layer_lowest,
-        layer_highest=state.layer_highest,
-        bottom_m=float(faces[state.layer_lowest]),
-        top_m=float(faces[state.layer_highest + 1]),
+        kind=kind,
+        kind_share=kinds,
+        energy_share=energy,
+        layer_lowest=lowest,
+        layer_highest=highest,
+        bottom_m=float(faces[lowest]),
+        top_m=float(faces[highest + 1]),
     )
