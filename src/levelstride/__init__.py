@@ -38,7 +38,7 @@ if TYPE_CHECKING:
     from levelstride.studies.stretch import stretch
     from levelstride.studies.work_precision import work_precision
 
-__version__ = "0.2.0"
+__version__ = "0.3.0"
 
 __all__ = [
     "Advice",
