@@ -19,8 +19,8 @@ from levelstride.studies.compared_row import CompareItem, RowFinding, find_row
 from levelstride.studies.cost import HOUR_S, step_cost
 from levelstride.studies.dominance import dominators, equal_cost, most_accurate, with_equal_cost
 from levelstride.studies.gather import Progress
-from levelstride.studies.kept_work import Task, do_all
-from levelstride.studies.keys import Kept, detail_key, find_record, limit_key
+from levelstride.studies.kept_work import Part, Task, do_all
+from levelstride.studies.keys import Kept, detail_key, limit_key
 from levelstride.studies.limit import SCAN
 from levelstride.studies.short_list import short_pairs
 from levelstride.studies.summary import column_summary, provenance, wind_note
@@ -131,7 +131,6 @@ def compare(
         equal_cost=equal_cost,
         work_precision=work_precision,
         lowest_slope_gradient=lowest_slope_gradient,
-        kept=kept,
     )
     return carry_out_comparison(plan, executor=executor, kept=kept, progress=progress)
 
@@ -146,7 +145,6 @@ def plan_comparison(
     equal_cost: float | None = None,
     work_precision: bool = True,
     lowest_slope_gradient: LowestSlopeGradient | None = None,
-    kept: Kept | None = None,
 ) -> ComparePlan:
     """Find out what is to be done; parameters and errors are those of ``compare``."""
     _check(step_s, weights, equal_cost)
@@ -165,11 +163,10 @@ def plan_comparison(
     tasks = []
     for tableau, splitting, split in pairs:
         of_limit = brief_key(column, tableau, splitting)
-        known = None if kept is None else find_record(kept, Limit, of_limit)
-        item = CompareItem(packed, tableau.name, split, step_s, work_precision, known)
+        item = CompareItem(packed, tableau.name, split, step_s, work_precision)
         key = detail_key(of_limit, "compared row", **_settings(column, item))
         what = f"{tableau.name} with {splitting.name}"
-        tasks.append(Task(find_row, item, what, RowFinding, key, (("limit", of_limit),)))
+        tasks.append(Task(find_row, item, what, RowFinding, key, (Part("limit", Limit, of_limit),)))
     named = tuple((tableau, splitting) for tableau, splitting, _ in pairs)
     return ComparePlan(column, named, tuple(tasks), step_s, equal_cost)
 

@@ -2,12 +2,31 @@
 
 from collections.abc import Callable, Sequence
 from concurrent.futures import Executor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 from levelstride.studies.gather import Progress
 from levelstride.studies.keys import Kept, find_record, keep_record
 from levelstride.studies.share_out import share_out
+
+
+@dataclass(frozen=True, slots=True)
+class Part:
+    """A field of a finding that other tasks may want again, and the item's field of that name.
+
+    Parameters
+    ----------
+    name : str
+        Name of both fields.
+    kind : type
+        Kind of record in it.
+    key : str
+        Key by which it is kept.
+    """
+
+    name: str
+    kind: type
+    key: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -26,8 +45,8 @@ class Task:
         Kind of record that it returns.
     key : str
         Key by which that is kept.
-    parts : tuple of (str, str)
-        Names of fields of the record that are kept by themselves as well, each with its key.
+    parts : tuple of Part
+        What of the record is kept by itself as well.
     """
 
     work: Callable[[Any], Any]
@@ -35,7 +54,7 @@ class Task:
     what: str
     kind: type
     key: str
-    parts: tuple[tuple[str, str], ...] = ()
+    parts: tuple[Part, ...] = ()
 
 
 def count_left(tasks: Sequence[Task], kept: Kept | None) -> int:
@@ -84,7 +103,7 @@ def do_all(
             progress(len(tasks) - len(left), len(tasks), on)
 
     tell()
-    for place, one in share_out(_do, {i: tasks[i] for i in left}, executor):
+    for place, one in share_out(_do, {i: _informed(tasks[i], kept) for i in left}, executor):
         if isinstance(one, Exception):
             raise one
         if kept is not None:
@@ -99,8 +118,17 @@ def _do(task: Task) -> Any:
     return task.work(task.item)
 
 
+def _informed(task: Task, kept: Kept | None) -> Task:
+    """Give a task the parts that are known already."""
+    if kept is None:
+        return task
+    looked_up = {part.name: find_record(kept, part.kind, part.key) for part in task.parts}
+    known = {name: record for name, record in looked_up.items() if record is not None}
+    return replace(task, item=replace(task.item, **known)) if known else task
+
+
 def _keep(kept: Kept, task: Task, record: Any) -> None:
-    for name, key in task.parts:
-        if kept.find(key) is None:
-            keep_record(kept, key, getattr(record, name))
+    for part in task.parts:
+        if kept.find(part.key) is None:
+            keep_record(kept, part.key, getattr(record, part.name))
     keep_record(kept, task.key, record)
