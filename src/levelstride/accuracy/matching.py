@@ -29,6 +29,9 @@ FAINT = 0.1
 MOST_LOOKS = 12
 """Steps at which all eigenvalues of one wave are found before a mode is given up as ambiguous."""
 
+USELESS, FEW_LOOKS = 1.1, 4
+"""A step that grows by more than this is of no use, and gets so many looks only."""
+
 MOST_HALVINGS = 6
 
 NEAR_TURN, LARGEST_TURN = 1.0, 2.0
@@ -133,7 +136,8 @@ class Follower:
     to one over j, in whatever way vectors are entangled. One within 0.3 of one decides; otherwise
     the way is halved, for the modes in doubt alone. Narrow crossings of eigenvalues are thus passed
     by the mode that looks the same on both sides. What is still in doubt after six halvings, or 12
-    steps at which eigenvalues were found, is ambiguous.
+    steps at which eigenvalues were found, is ambiguous; after four of them where the step grows by
+    more than a tenth, since it is of no use anyway.
 
     The phase is that of y_i^H R(h) x_i, followed from a to b in turns of about a radian, and at b
     corrected to the eigenvalue. Without a reliable phase a match does not count, unless the step
@@ -146,7 +150,8 @@ class Follower:
     """
 
     def __init__(self, parts: Parts, tableau: Tableau, *, most_looks: int = MOST_LOOKS) -> None:
-        self._parts, self._tableau, self._most = parts, tableau, most_looks
+        self._parts, self._tableau, self._most_looks = parts, tableau, most_looks
+        self._most = most_looks
         self._stepper: Stepper | None = None
         self._seen: dict[float, Pairs] = {}
 
@@ -170,6 +175,7 @@ class Follower:
         self._seen = {}
         last = self._pairs(dt)
         radius = float(np.abs(last.value).max())
+        self._most = self._most_looks if radius <= USELESS else min(self._most_looks, FEW_LOOKS)
         one = np.ones(exponent.size, dtype=np.complex128)
         start = _Front(0.0, Pairs(one, right, left), np.zeros(exponent.size), exponent.imag)
         end, matched = self._reach(start, dt, 0)
