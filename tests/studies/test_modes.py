@@ -4,6 +4,7 @@ import json
 
 import numpy as np
 import pytest
+import xarray
 
 import levelstride
 from levelstride.accuracy.structure import vertical_wavelength
@@ -138,11 +139,19 @@ def test_telling_waves_hold_the_steepest_one():
 def test_files_hold_every_mode(tmp_path):
     found = levelstride.modes(column())
     written = write_modes(found, tmp_path / "modes")
-    assert [path.name for path in written] == ["modes.json", "modes.csv"]
+    assert [path.name for path in written] == ["modes.json", "modes.csv", "modes.h5"]
     lines = modes_csv(found).splitlines()
     assert len(lines) == 1 + sum(len(wave.modes) for wave in found.waves)
     assert "lorenz_to_finer" in lines[0]
     assert json.loads(written[0].read_text())["split_into"] == 4
+    modes = [mode for wave in found.waves for mode in wave.modes]
+    with xarray.open_dataset(written[2], engine="h5netcdf") as stored:
+        assert stored["kind"].values.tolist() == [mode.kind for mode in modes]
+        np.testing.assert_array_equal(
+            stored["lorenz_to_finer"].values, [mode.grids[1].to_finer for mode in modes]
+        )
+        assert np.isnan(stored["isothermal_per_s"].values).all()
+        assert stored.attrs["title"] == "twelve layers"
 
 
 def test_vertical_wavelength_of_pure_waves_on_uniform_levels():

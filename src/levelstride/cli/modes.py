@@ -54,7 +54,7 @@ def modes(
         Parameter(help="With --step: the splitting; that of the column file by default."),
     ] = None,
     out: Annotated[
-        Path | None, Parameter(help="Folder for modes.json and modes.csv; made if missing.")
+        Path | None, Parameter(help="Folder for modes.json, .csv and .h5; made if missing.")
     ] = None,
     workers: Annotated[
         int | None, Parameter(help="Processes to share the work; one by default.")

@@ -8,6 +8,8 @@ from typing import Any, Final
 from .atomic import write_folder
 from .export import cell, to_json
 from .modes_found import ColumnModes, ModeFound, WaveModes
+from .store import hdf5_image, origin
+from .variables import Variable
 
 _WAVE: Final = ("air", "wavenumber_per_m", "wavelength_m", "wavelength_cells", "gradient_per_m")
 _MODE: Final = (
@@ -38,8 +40,60 @@ def _cells(wave: WaveModes, mode: ModeFound) -> dict[str, str]:
     return {name: cell(value) for name, value in cells.items()}
 
 
+_STORED: Final = (
+    ("air", "", "air state", "text"),
+    ("wavenumber_per_m", "m-1", "wavenumber along one axis", "float"),
+    ("wavelength_m", "m", "horizontal wavelength along one axis", "float"),
+    ("gradient_per_m", "m-1", "horizontal gradient of the scheme", "float"),
+    ("kind", "", "kind of wave", "text"),
+    ("vertical_order", "1", "vertical order, 1 for the gravest", "int"),
+    ("frequency_per_s", "s-1", "angular frequency", "float"),
+    ("intrinsic_frequency_per_s", "s-1", "angular frequency without the wind", "float"),
+    ("period_s", "s", "period", "float"),
+    ("growth_per_s", "s-1", "growth rate in the column itself", "float"),
+    ("entangled", "1", "whether the mode is part of a transient", "flag"),
+    ("equivalent_depth_m", "m", "equivalent depth", "float"),
+    ("vertical_wavelength_m", "m", "vertical wavelength", "float"),
+    ("wavelength_layers", "1", "vertical wavelength in layers", "float"),
+    ("layer_lowest", "1", "lowest layer that holds the mode", "int"),
+    ("layer_highest", "1", "highest layer that holds the mode", "int"),
+    ("isothermal_per_s", "s-1", "frequency by the closed form of isothermal air", "float"),
+)
+_ON_GRID: Final = (
+    ("frequency_per_s", "s-1", "frequency at rest with {} staggering"),
+    ("to_finer", "1", "that over the one on finer levels, {} staggering"),
+    ("to_isothermal", "1", "that over the closed form of isothermal air, {} staggering"),
+)
+
+
+def modes_hdf5(found: ColumnModes) -> bytes:
+    """Write all modes as an HDF5 file image with one dimension, ``mode``; see ``hdf5_image``."""
+    pairs = [(wave, mode) for wave in found.waves for mode in wave.modes]
+
+    def values(name: str) -> list[Any]:
+        return [getattr(wave if name in _WAVE else mode, name) for wave, mode in pairs]
+
+    stored = [
+        Variable(name, ("mode",), units, text, values(name), kind)
+        for name, units, text, kind in _STORED
+    ]
+    for staggering in sorted({grid.staggering for _, mode in pairs for grid in mode.grids}):
+        grids = [
+            next((grid for grid in mode.grids if grid.staggering == staggering), None)
+            for _, mode in pairs
+        ]
+        for name, units, text in _ON_GRID:
+            numbers = [None if grid is None else getattr(grid, name) for grid in grids]
+            title = f"{staggering.replace('-', '_')}_{name}"
+            stored.append(
+                Variable(title, ("mode",), units, text.format(staggering), numbers, "float")
+            )
+    attributes = origin(found.title, found.column, found.provenance)
+    return hdf5_image({**attributes, "staggering": found.staggering}, stored)
+
+
 def write_modes(found: ColumnModes, folder: Path) -> tuple[Path, ...]:
-    """Write ``modes.json`` and ``modes.csv`` into a folder.
+    """Write ``modes.json``, ``modes.csv`` and ``modes.h5`` into a folder.
 
     Parameters
     ----------
@@ -58,5 +112,11 @@ def write_modes(found: ColumnModes, folder: Path) -> tuple[Path, ...]:
     InputError
         If they cannot be written; then none is.
     """
-    files = {"modes.json": to_json(found), "modes.csv": modes_csv(found)}
-    return write_folder(folder, {name: text.encode() for name, text in files.items()})
+    return write_folder(
+        folder,
+        {
+            "modes.json": to_json(found).encode(),
+            "modes.csv": modes_csv(found).encode(),
+            "modes.h5": modes_hdf5(found),
+        },
+    )
