@@ -23,15 +23,19 @@ if TYPE_CHECKING:
     from levelstride.column.read import build, load
     from levelstride.errors import CalculationError, InputError
     from levelstride.results.calibration import Calibration
+    from levelstride.results.comparison import Comparison, Weights
     from levelstride.results.dataset import Advice, AdviceRow, Limit
     from levelstride.results.files import write_advice
     from levelstride.results.headroom import Headroom
+    from levelstride.results.knob_map import KnobMap
     from levelstride.results.modes_found import ColumnModes
     from levelstride.results.stretching import Stretch
     from levelstride.results.work_precision import WorkPrecision
     from levelstride.studies.advise import advise
     from levelstride.studies.calibrate import Observed, calibrate
+    from levelstride.studies.compare import compare
     from levelstride.studies.headroom import headroom
+    from levelstride.studies.knob_map import knob_map
     from levelstride.studies.limit import limit
     from levelstride.studies.modes import modes
     from levelstride.studies.plan import CurrentConfiguration
@@ -47,17 +51,22 @@ __all__ = [
     "Calibration",
     "Column",
     "ColumnModes",
+    "Comparison",
     "CurrentConfiguration",
     "Headroom",
     "InputError",
+    "KnobMap",
     "Limit",
     "Observed",
     "Stretch",
+    "Weights",
     "WorkPrecision",
     "advise",
     "build",
     "calibrate",
+    "compare",
     "headroom",
+    "knob_map",
     "level_report",
     "limit",
     "load",
@@ -74,17 +83,22 @@ _HOMES = {
     "Calibration": "results.calibration",
     "Column": "column.column",
     "ColumnModes": "results.modes_found",
+    "Comparison": "results.comparison",
     "CurrentConfiguration": "studies.plan",
     "Headroom": "results.headroom",
     "InputError": "errors",
+    "KnobMap": "results.knob_map",
     "Limit": "results.dataset",
     "Observed": "studies.calibrate",
     "Stretch": "results.stretching",
+    "Weights": "results.comparison",
     "WorkPrecision": "results.work_precision",
     "advise": "studies.advise",
     "build": "column.read",
     "calibrate": "studies.calibrate",
+    "compare": "studies.compare",
     "headroom": "studies.headroom",
+    "knob_map": "studies.knob_map",
     "level_report": "column.level_report",
     "limit": "studies.limit",
     "load": "column.read",

@@ -3,7 +3,7 @@
 import pickle
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
-from functools import cache, lru_cache
+from functools import lru_cache
 from math import inf, pi
 from typing import Final
 
@@ -18,7 +18,8 @@ from levelstride.results.dataset import Limit
 from levelstride.results.work_precision import PacketSummary, WorkPrecision
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
-from levelstride.studies.advised_step import Choice, choose_step
+from levelstride.studies.accurate_step import accurate_and_advised
+from levelstride.studies.advised_step import Choice
 from levelstride.studies.limit import limit
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.work_item import StepChecker
@@ -113,9 +114,12 @@ def find_row(item: CompareItem) -> RowFinding:
     splitting, tableau = resolve(item.split), tableau_of(column, item.tableau)
     found = item.limit or brief_limit(column, splitting, tableau, item.split)
     checker = StepChecker((column,), splitting, tableau)
-    examine, asked = cache(checker.examine), column.advice
-    accurate = choose_step(found, safety=1.0, intervals_s=(), check=examine)
-    advised = choose_step(found, safety=asked.safety, intervals_s=asked.divides_s, check=examine)
+    accurate, advised = accurate_and_advised(
+        found,
+        safety=column.advice.safety,
+        intervals_s=column.advice.divides_s,
+        check=checker.examine,
+    )
     step_s = item.step_s or advised.step_s
     answer = RowFinding(found, accurate, advised)
     if step_s is None:
