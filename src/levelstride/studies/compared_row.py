@@ -124,7 +124,7 @@ def find_row(item: CompareItem) -> RowFinding:
     answer = RowFinding(found, accurate, advised)
     if step_s is None:
         return answer
-    stable = _within(found, step_s) and checker.stable(step_s)
+    stable = step_s == advised.step_s or (_within(found, step_s) and checker.stable(step_s))
     errors = errors_at(column, splitting, tableau, step_s, stable=stable)
     if not (item.packets and stable):
         return replace(answer, errors=errors)
@@ -219,10 +219,10 @@ def sound_damping(
 
 @lru_cache(maxsize=2)
 def _sound_waves(column: Column) -> tuple[ResolvedWaves, ...]:
-    """Sound at the longest, a middle and the shortest sampled wave of at least 8 grid spacings."""
+    """Sound at the longest and the shortest sampled wave of at least 8 grid spacings."""
     sampled = (Wave(float(k), column.horizontal) for k in sampled_wavenumbers(column.horizontal))
     waves = list(long_enough(sampled))
-    chosen = [waves[i] for i in sorted({0, len(waves) // 2, len(waves) - 1})]
+    chosen = [waves[i] for i in sorted({0, len(waves) - 1})]
     found = (wave for air in column.airs for wave in all_waves(column, air, chosen))
     return tuple(
         replace(wave, modes=wave.modes.select(wave.modes.kind == "sound")) for wave in found
