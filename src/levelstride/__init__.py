@@ -23,18 +23,26 @@ if TYPE_CHECKING:
     from levelstride.column.read import build, load
     from levelstride.errors import CalculationError, InputError
     from levelstride.results.calibration import Calibration
+    from levelstride.results.comparison import Comparison, Weights
     from levelstride.results.dataset import Advice, AdviceRow, Limit
     from levelstride.results.files import write_advice
     from levelstride.results.headroom import Headroom
+    from levelstride.results.knob_map import KnobMap
+    from levelstride.results.modes_found import ColumnModes
     from levelstride.results.stretching import Stretch
+    from levelstride.results.work_precision import WorkPrecision
     from levelstride.studies.advise import advise
     from levelstride.studies.calibrate import Observed, calibrate
+    from levelstride.studies.compare import compare
     from levelstride.studies.headroom import headroom
+    from levelstride.studies.knob_map import knob_map
     from levelstride.studies.limit import limit
+    from levelstride.studies.modes import modes
     from levelstride.studies.plan import CurrentConfiguration
     from levelstride.studies.stretch import stretch
+    from levelstride.studies.work_precision import work_precision
 
-__version__ = "0.2.0"
+__version__ = "0.3.0"
 
 __all__ = [
     "Advice",
@@ -42,20 +50,29 @@ __all__ = [
     "CalculationError",
     "Calibration",
     "Column",
+    "ColumnModes",
+    "Comparison",
     "CurrentConfiguration",
     "Headroom",
     "InputError",
+    "KnobMap",
     "Limit",
     "Observed",
     "Stretch",
+    "Weights",
+    "WorkPrecision",
     "advise",
     "build",
     "calibrate",
+    "compare",
     "headroom",
+    "knob_map",
     "level_report",
     "limit",
     "load",
+    "modes",
     "stretch",
+    "work_precision",
     "write_advice",
 ]
 
@@ -65,20 +82,29 @@ _HOMES = {
     "CalculationError": "errors",
     "Calibration": "results.calibration",
     "Column": "column.column",
+    "ColumnModes": "results.modes_found",
+    "Comparison": "results.comparison",
     "CurrentConfiguration": "studies.plan",
     "Headroom": "results.headroom",
     "InputError": "errors",
+    "KnobMap": "results.knob_map",
     "Limit": "results.dataset",
     "Observed": "studies.calibrate",
     "Stretch": "results.stretching",
+    "Weights": "results.comparison",
+    "WorkPrecision": "results.work_precision",
     "advise": "studies.advise",
     "build": "column.read",
     "calibrate": "studies.calibrate",
+    "compare": "studies.compare",
     "headroom": "studies.headroom",
+    "knob_map": "studies.knob_map",
     "level_report": "column.level_report",
     "limit": "studies.limit",
     "load": "column.read",
+    "modes": "studies.modes",
     "stretch": "studies.stretch",
+    "work_precision": "studies.work_precision",
     "write_advice": "results.files",
 }
 

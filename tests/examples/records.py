@@ -206,7 +206,11 @@ def without_step(**changes):
     nothing = dict.fromkeys(
         [field.name for field in fields(AdviceRow) if field.name not in asdict(limit())]
     )
-    nothing |= {"steps_per_interval": (), "binding": "unstable at every step"}
+    nothing |= {
+        "steps_per_interval": (),
+        "binding": "unstable at every step",
+        "ambiguous_waves": 0,
+    }
     return row(limit(stable_step_s=None, split="sound"), **{**nothing, **changes})
 
 

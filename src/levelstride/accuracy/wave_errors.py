@@ -113,23 +113,29 @@ def mode_errors(modes: Modes, stepped: Matrix, dt: float) -> ModeErrors:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class ResolvedWaves:
-    """The resolved gravity waves of one air at one wavenumber, with what steps them.
+    """The resolved gravity waves, or all waves, of one air at one wavenumber, with what steps them.
 
     Attributes
     ----------
     kappa : float
         Wavenumber along one axis [1/m].
     modes : Modes
-        Resolved gravity waves only. Where the operator is real, waves both ways do the same and
-        those of positive frequency stand for both.
+        Resolved gravity waves only, or all. Where the operator is real, waves both ways do the
+        same and those of positive frequency stand for both.
     terms, on_reference : mapping of str to Banded
         The catalogue on the air and on the reference, in the energy coordinates of ``modes``.
+    air : str
+        Name of the air state.
+    own_growth_per_s : float
+        Largest growth of any mode there, resolved or not, zero if all decay [1/s].
     """
 
     kappa: float
     modes: Modes
     terms: Mapping[str, Banded]
     on_reference: Mapping[str, Banded]
+    air: str = ""
+    own_growth_per_s: float = 0.0
 
     def parts(self, splitting: Splitting) -> Parts:
         """Sort the terms by treatment, in energy coordinates."""
@@ -148,12 +154,23 @@ def resolved_waves(
     waves : iterable of Wave
         Those shorter than 8 grid spacings along an axis are passed over.
     """
-    longest = 2 * np.pi / (SHORTEST_WAVELENGTH * column.horizontal.grid_spacing_m)
-    long_enough = (wave for wave in waves if wave.kappa <= longest * (1 + 1e-9))
-    return tuple(_at_wave(column, air, wave) for wave in long_enough)
+    return tuple(_at_wave(column, air, wave, all_kinds=False) for wave in long_enough(waves))
 
 
-def _at_wave(column: Column, air: Background, wave: Wave) -> ResolvedWaves:
+def all_waves(column: Column, air: Background, waves: Iterable[Wave]) -> tuple[ResolvedWaves, ...]:
+    """Find the waves of every kind and order at the wavenumbers of ``resolved_waves``."""
+    return tuple(_at_wave(column, air, wave, all_kinds=True) for wave in long_enough(waves))
+
+
+def long_enough(waves: Iterable[Wave]) -> Iterable[Wave]:
+    """Pass over waves shorter than 8 grid spacings along an axis."""
+    for wave in waves:
+        shortest = SHORTEST_WAVELENGTH * wave.horizontal.grid_spacing_m
+        if wave.kappa <= 2 * np.pi / shortest * (1 + 1e-9):
+            yield wave
+
+
+def _at_wave(column: Column, air: Background, wave: Wave, *, all_kinds: bool) -> ResolvedWaves:
     layout, weights = layout_of(column), mode_weights(column, air)
     scale = np.sqrt(weights)
 
@@ -163,10 +180,13 @@ def _at_wave(column: Column, air: Background, wave: Wave) -> ResolvedWaves:
     terms = in_energy(air)
     on_reference = in_energy(column.reference) if column.reference else terms
     modes = modes_of(terms, layout, weights)
-    wanted = resolved_gravity(modes)
+    wanted = np.full(layout.size, True) if all_kinds else resolved_gravity(modes)
     if all(term.is_real for term in (*terms.values(), *on_reference.values())):
         wanted &= modes.frequency >= 0
-    return ResolvedWaves(float(wave.kappa), modes.select(wanted), terms, on_reference)
+    own = max(0.0, float(modes.growth.max()))
+    return ResolvedWaves(
+        float(wave.kappa), modes.select(wanted), terms, on_reference, air.name, own
+    )
 
 
 class StepErrors:
@@ -195,12 +215,15 @@ class StepErrors:
         CalculationError
             If an implicit stage has no solution at this step.
         """
+        return worst_of(self.each(dt))
+
+    def each(self, dt: float) -> list[WaveErrors]:
+        """Return the worst errors at each of the waves that have any resolved, in order."""
         if self._steppers:
             self._steppers = [stepper.at_step(dt) for stepper in self._steppers]
         else:
             self._steppers = [Stepper(parts, self._tableau, dt) for parts in self._parts]
-        found = (self._one(k, dt) for k in range(len(self._waves)))
-        return worst_of(found)
+        return [self._one(k, dt) for k in range(len(self._waves))]
 
     def _one(self, k: int, dt: float) -> WaveErrors:
         wave = self._waves[k]

@@ -7,8 +7,10 @@ COMMANDS: Final[Mapping[str, str]] = {
     "check": "Read a column file and report on its levels and air.",
     "limit": "Find the longest stable step of one tableau and splitting, and what bites first.",
     "advise": "Try tableaux and splittings and advise a step for each, the cheapest first.",
+    "compare": "Put tableaux and splittings side by side: accuracy, damping and cost.",
     "stretch": "Stretch the levels and find how far a step goes with them, and what limits it.",
     "calibrate": "Compare steps that a model survived or lost with the linear limit.",
+    "modes": "Show the normal modes of a column, and how far levels and a step distort them.",
     "tableaux": "List the IMEX tableaux, or show one with its audit.",
     "schema": "Print the JSON Schema of the column file, for editors.",
 }

@@ -27,6 +27,10 @@ SHOWN_AFTER_S = 2.0
 """Time after which progress is shown [s]."""
 
 
+_FILLER = "\N{BRAILLE PATTERN BLANK}"
+"""Blank that stays where cells are aligned to the right."""
+
+
 @dataclass(frozen=True, slots=True)
 class Heading:
     """Heading of a column, its unit on a line of its own.
@@ -71,7 +75,8 @@ def _print(drawn: RenderableType) -> None:
     console = _console()
     with console.capture() as captured:
         console.print(drawn)
-    sys.stdout.write("".join(f"{line.rstrip()}\n" for line in captured.get().splitlines()))
+    text = captured.get().replace(_FILLER, " ")
+    sys.stdout.write("".join(f"{line.rstrip()}\n" for line in text.splitlines()))
 
 
 def say(text: str = "", *, strong: bool = False) -> None:
@@ -113,6 +118,29 @@ def show_table(
     for i, row in enumerate(rows):
         table.add_row(*map(Text, row), style="bold" if i == marked else "")
     _print(table)
+
+
+def lined_up(cells: Sequence[str]) -> list[str]:
+    """Fill up cells of a column of numbers so that decimal points stand below one another.
+
+    Parameters
+    ----------
+    cells : sequence of str
+        Numbers, or words in their place.
+
+    Returns
+    -------
+    list of str
+        For a heading of numbers, which are aligned to the right.
+
+    Examples
+    --------
+    >>> [cell.replace(_FILLER, "_") for cell in lined_up(["12", "0.25", "3.5", "-"])]
+    ['12___', '0.25', '3.5_', '-___']
+    """
+    after = [len(cell.partition(".")[2]) + ("." in cell) for cell in cells]
+    room = max(after, default=0)
+    return [cell + _FILLER * (room - n) for cell, n in zip(cells, after, strict=True)]
 
 
 def show_pairs(pairs: Sequence[tuple[str, str]]) -> None:

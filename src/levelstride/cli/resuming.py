@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Self
 from levelstride.cli.console import progress
 
 if TYPE_CHECKING:
+    from levelstride.studies.kept_work import Task
     from levelstride.studies.plan import Plan
 
 
@@ -52,6 +53,14 @@ class Resumable:
         self._total = count_parts(plans)
         left = sum(count_parts_left(plan, self.kept) for plan in plans)
         self._done = self._total - left
+        return left
+
+    def tasks_left(self, tasks: "Sequence[Task]") -> int:
+        """Count the tasks that are still to be done."""
+        from levelstride.studies.kept_work import count_left
+
+        left = count_left(tasks, self.kept)
+        self._done, self._total = len(tasks) - left, len(tasks)
         return left
 
     def progress(self, done: int, total: int, on: str) -> None:

@@ -56,7 +56,8 @@ def with_value(column: Column, key: str, value: float) -> Column:
         place = _inside(place, name, key)
     if not isinstance(place, dict) or isinstance(place.get(last), dict | list | str):
         raise InputError(f"{column.source}: {key}: is no number; name a key that holds one")
-    place[last] = value
+    whole = isinstance(place.get(last), int) and float(value).is_integer()
+    place[last] = int(value) if whole else value
     return _again(column, definition)
 
 

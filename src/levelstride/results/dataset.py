@@ -174,6 +174,9 @@ class AdviceRow(Limit):
         Worst relative frequency error of a resolved gravity wave at the advised step [1].
     amplitude_change_per_period : float or None
         Worst change of amplitude per period of such a wave at the advised step [1].
+    ambiguous_waves : int
+        Such waves that belong to no eigenvalue of the step decisively; for them one step projected
+        back on the wave stands in.
     safety : float or None
         Share of the stable step that was to be advised at most [1].
     headroom : Headroom or None
@@ -192,6 +195,7 @@ class AdviceRow(Limit):
     binding: str = ""
     frequency_error: float | None = None
     amplitude_change_per_period: float | None = None
+    ambiguous_waves: int = 0
     safety: float | None = None
     headroom: Headroom | None = None
 
@@ -214,6 +218,8 @@ class CurrentStep:
         Worst of the resolved gravity waves at this step [1].
     limit : Limit
         The limit of its tableau and splitting.
+    ambiguous_waves : int
+        Such waves that belong to no eigenvalue of the step decisively.
     """
 
     step_s: float
@@ -223,6 +229,7 @@ class CurrentStep:
     frequency_error: float | None
     amplitude_change_per_period: float | None
     limit: Limit
+    ambiguous_waves: int = 0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

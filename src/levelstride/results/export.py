@@ -24,9 +24,9 @@ _COLUMNS: Final = (
     "tableau", "split", "advised_step_s", "advised_step_fraction", "stable_step_s", "unbounded",
     "scanned_to_s", "strict_step_s", "criterion", "binding", "steps_per_hour", "cost_per_hour",
     "explicit_evaluations_per_hour", "solves_per_hour", "exchanges_per_hour", "measured_s_per_hour",
-    "frequency_error", "amplitude_change_per_period", "explicit_share", "gain", "efolding_s",
-    "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns", "cause",
-    "safety",
+    "frequency_error", "amplitude_change_per_period", "ambiguous_waves", "explicit_share", "gain",
+    "efolding_s", "growth_per_step", "air", "lowest_slope_gradient", "path", "couples_columns",
+    "cause", "safety",
 )  # fmt: skip
 _WORST: Final = ("wavenumber_per_m", "growth_below_per_s", "tolerated_per_s")
 _NUMBERS: Final = re.compile(r"\[\n\s+(?:(?:[-+.\deE]+|null),\n\s+)*(?:[-+.\deE]+|null)\n\s+\]")

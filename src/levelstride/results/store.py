@@ -1,15 +1,15 @@
-"""The stored advice: an HDF5 file that netCDF-4 software reads, real numbers and text only."""
+"""Stored answers: HDF5 files that netCDF-4 software reads, real numbers and text only."""
 
 import io
 import json
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any, Final
 
 import h5py
 import numpy as np
 from numpy.typing import NDArray
 
-from .dataset import Advice, CurrentStep
+from .dataset import Advice, ColumnSummary, CurrentStep, Provenance
 from .variables import Variable, variables
 
 _TEXT: Final = h5py.string_dtype(encoding="utf-8")
@@ -32,11 +32,29 @@ def to_hdf5(advice: Advice) -> bytes:
     bytes
         The file.
     """
+    return hdf5_image(_attributes(advice), variables(advice))
+
+
+def hdf5_image(attributes: Mapping[str, Any], found: Sequence[Variable]) -> bytes:
+    """Write variables as an HDF5 file image.
+
+    Parameters
+    ----------
+    attributes : mapping
+        Attributes of the file: text and numbers.
+    found : sequence of Variable
+        The variables; every dimension gets a scale, a plain count where none of them is its
+        coordinate.
+
+    Returns
+    -------
+    bytes
+        The file.
+    """
     image = io.BytesIO()
     with h5py.File(image, "w") as file:
-        for name, value in _attributes(advice).items():
+        for name, value in attributes.items():
             file.attrs[name] = value
-        found = variables(advice)
         _write_scales(file, found)
         for variable in found:
             if variable.name not in file:
@@ -46,7 +64,7 @@ def to_hdf5(advice: Advice) -> bytes:
     return image.getvalue()
 
 
-def _write_scales(file: h5py.File, found: tuple[Variable, ...]) -> None:
+def _write_scales(file: h5py.File, found: Sequence[Variable]) -> None:
     """Make the scale of every dimension: its coordinate, or a plain count where it has none."""
     by_name = {variable.name: variable for variable in found}
     lengths = {d: n for v in found for d, n in zip(v.dimensions, _shape(v), strict=True)}
@@ -86,18 +104,25 @@ def _array(variable: Variable) -> NDArray[Any]:
 
 
 def _attributes(advice: Advice) -> dict[str, Any]:
-    provenance, column = advice.provenance, advice.column
+    attributes = {
+        **origin(advice.title, advice.column, advice.provenance),
+        "caution": advice.caution,
+        "wind_note": advice.wind_note or "",
+        "best": -1 if advice.best is None else advice.best,
+    }
+    return attributes | _current(advice.current)
+
+
+def origin(title: str, column: ColumnSummary, provenance: Provenance) -> dict[str, Any]:
+    """Say as attributes of a file which column an answer is about, and where it comes from."""
     attributes: dict[str, Any] = {
-        "title": advice.title,
+        "title": title,
         "source": f"levelstride {provenance.version}",
         "format_version": provenance.format_version,
         "created_utc": provenance.created_utc,
         "column_source": provenance.column_source,
         "column_sha256": provenance.column_sha256,
         "certified": provenance.certified,
-        "caution": advice.caution,
-        "wind_note": advice.wind_note or "",
-        "best": -1 if advice.best is None else advice.best,
         "layers": column.layers,
         "lowest_layer_m": column.lowest_layer_m,
         "thickest_layer_m": column.thickest_layer_m,
@@ -105,8 +130,7 @@ def _attributes(advice: Advice) -> dict[str, Any]:
         "top_m": column.top_m,
     }
     attributes |= _prefixed("constant", provenance.constants)
-    attributes |= _prefixed("tolerance", provenance.tolerances)
-    return attributes | _current(advice.current)
+    return attributes | _prefixed("tolerance", provenance.tolerances)
 
 
 def _prefixed(prefix: str, numbers: Mapping[str, float]) -> dict[str, float]:

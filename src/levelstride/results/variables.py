@@ -68,6 +68,7 @@ _ROW: Final = (
     ("measured_s_per_hour", "s h-1", "measured time per simulated hour, one wave", "float"),
     ("frequency_error", "1", "worst frequency error of resolved gravity waves", "float"),
     ("amplitude_change_per_period", "1", "worst amplitude change of these per period", "float"),
+    ("ambiguous_waves", "1", "such waves that belong to no eigenvalue decisively", "int"),
     ("safety", "1", "share of the stable step that was to be advised at most", "float"),
 )
 _BITES: Final = (

@@ -136,7 +136,7 @@ def anatomy(problem: WaveProblem, basis: Matrix) -> Anatomy:
     energy = (np.abs(basis) ** 2).sum(axis=1)
     energy /= energy.sum()
     fields = {name: float(energy[layout.places(name)].sum()) for name in FIELDS}
-    by_layer = _energy_by_layer(layout, energy)
+    by_layer = energy_by_layer(layout, energy)
     lowest, highest = layers_holding(by_layer, SHARE)
     return Anatomy(
         {name: share for name, share in fields.items() if layout.places(name).size},
@@ -158,7 +158,7 @@ def _kind_shares(problem: WaveProblem, basis: Matrix) -> dict[str, float]:
     return {kind: share for kind, share in shares.items() if np.any(waves.kind == kind)}
 
 
-def _energy_by_layer(layout: Layout, energy: NDArray[np.float64]) -> NDArray[np.float64]:
+def energy_by_layer(layout: Layout, energy: NDArray[np.float64]) -> NDArray[np.float64]:
     """Energy of each layer, that of an interface shared by the two layers it parts."""
     by_layer = np.zeros(layout.nlev)
     for name in FIELDS:

@@ -28,11 +28,14 @@ class StepCheck:
         What speaks against the step, in plain words; None if nothing does.
     frequency_error, amplitude_change_per_period : float or None
         Worst of the resolved gravity waves [1]; with a failure only of the waves looked at.
+    ambiguous_waves : int
+        Of these waves those that belong to no eigenvalue of the step decisively.
     """
 
     failure: str | None
     frequency_error: float | None = None
     amplitude_change_per_period: float | None = None
+    ambiguous_waves: int = 0
 
 
 Check: TypeAlias = Callable[[float], StepCheck]

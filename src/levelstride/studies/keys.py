@@ -131,6 +131,26 @@ def room_key(limit: str, step_s: float, quantity: str) -> str:
     return _digest({"of": "headroom", "limit": limit, "step_s": step_s, "quantity": quantity})
 
 
+def detail_key(limit: str, of: str, **asked: Any) -> str:
+    """Make the key of something else that is found for the tableau and splitting of a limit.
+
+    Parameters
+    ----------
+    limit : str
+        Key of the limit.
+    of : str
+        What it is.
+    **asked
+        What it depends on besides, as plain data.
+
+    Returns
+    -------
+    str
+        Hexadecimal digits.
+    """
+    return _digest({"of": of, "limit": limit, "asked": asked})
+
+
 def _digest(of: Mapping[str, Any]) -> str:
     text = json.dumps(to_plain_exact(of), sort_keys=True, separators=(",", ":"))
     return hashlib.sha256(text.encode()).hexdigest()

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 from functools import lru_cache
+from typing import Any
 
 import numpy as np
 
@@ -60,6 +61,7 @@ def limit(
     lowest_slope_gradient: LowestSlopeGradient | None = None,
     what_if: bool = True,
     certify: bool = False,
+    brief: bool = False,
     progress: Progress | None = None,
 ) -> Limit:
     """Find the stable step of one tableau and splitting on a column.
@@ -84,6 +86,9 @@ def limit(
     certify : bool
         Whether to ask every sampled wave about both sides of the limit, and to find it again below
         where one refutes it. Steps for other tolerances and the strict step are not certified.
+    brief : bool
+        Whether to leave out what else a limit tells besides the stable step and what bites: strict
+        step, steps for other tolerances, gain, windows and what if.
 
     Returns
     -------
@@ -116,21 +121,13 @@ def limit(
     method = tableau_of(column, tableau)
     tolerance = Tolerance(efolding_s or column.advice.efolding_s, column.advice.transient_limit)
     verdict = ColumnVerdict(column, splitting, method)
-    parts = _Parts(progress, PARTS + certify + what_if)
+    what_if = what_if and not brief
+    parts = _Parts(progress, (2 if brief else PARTS) + certify + what_if)
     found, certificate = verdict.stable_step(tolerance, watch=parts.begin("stable step")), None
     if certify:
         parts.begin("both sides of the limit at every wave")
         found, certificate = verdict.certified_step(found, tolerance)
-    parts.begin("strict step")
-    strict = verdict.strict_step(found)
-    if found.waves_bind and strict is not None:
-        # no longer than the stable step, but found by a bisection of its own
-        strict = found.step_s if _not_below(found.step_s, [strict]) == strict else strict
-    by_efolding = _by_efolding(verdict, tolerance, found, parts)
-    parts.begin("step of all-explicit")
-    gain = _gain(column, splitting, method, tolerance, found)
-    parts.begin("windows beyond the limit")
-    windows = verdict.windows(found, tolerance)
+    more = {} if brief else _more(verdict, tolerance, found, parts)
     parts.begin("what bites")
     certified = _certified(found, tolerance, verdict)
     if certificate is not None:
@@ -141,11 +138,8 @@ def limit(
         stable_step_s=found.step_s,
         unbounded=found.step_s is None,
         scanned_to_s=verdict.largest_s,
-        strict_step_s=strict,
-        stable_step_by_efolding=by_efolding,
         criterion=_criterion(found, tolerance),
         explicit_share=_explicit_share(verdict, found),
-        gain=gain,
         bites=what_bites(column, found, tolerance),
         certified=certified,
         efolding_s=tolerance.efolding_s,
@@ -153,12 +147,12 @@ def limit(
         air=binding_air(found),
         lowest_slope_gradient=column.lowest_slope_gradient if np.any(column.slope_f) else None,
         own_growth=_own_growth(verdict),
-        windows=tuple(Window(from_s=low, to_s=high) for low, high in windows),
         path=_path(verdict),
         couples_columns={"horizontal-pressure-gradient", "horizontal-divergence"}
         <= verdict.splitting.implicit,
         wind_note=None if column.wind_given else NO_WIND,
         certificate=None if certificate is None else record(certificate),
+        **more,
     )
     if what_if:
         parts.begin("steps with other terms")
@@ -183,6 +177,28 @@ class _Parts:
 
         more("")
         return more
+
+
+def _more(
+    verdict: ColumnVerdict, tolerance: Tolerance, found: StableStep, parts: _Parts
+) -> dict[str, Any]:
+    """What a limit tells besides the stable step and what bites."""
+    parts.begin("strict step")
+    strict = verdict.strict_step(found)
+    if found.waves_bind and strict is not None:
+        # no longer than the stable step, but found by a bisection of its own
+        strict = found.step_s if _not_below(found.step_s, [strict]) == strict else strict
+    by_efolding = _by_efolding(verdict, tolerance, found, parts)
+    parts.begin("step of all-explicit")
+    gain = _gain(verdict.column, verdict.splitting, verdict.tableau, tolerance, found)
+    parts.begin("windows beyond the limit")
+    windows = verdict.windows(found, tolerance)
+    return {
+        "strict_step_s": strict,
+        "stable_step_by_efolding": by_efolding,
+        "gain": gain,
+        "windows": tuple(Window(from_s=low, to_s=high) for low, high in windows),
+    }
 
 
 def _by_efolding(

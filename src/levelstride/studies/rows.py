@@ -103,6 +103,7 @@ def _row(column: Column, tableau: Tableau, splitting: Splitting, finding: Findin
         binding=choice.binding,
         frequency_error=None if check is None else check.frequency_error,
         amplitude_change_per_period=None if check is None else check.amplitude_change_per_period,
+        ambiguous_waves=0 if check is None else check.ambiguous_waves,
     )
 
 
@@ -126,6 +127,7 @@ def _judge(current: CurrentConfiguration, findings: Sequence[Finding]) -> Curren
         frequency_error=check.frequency_error,
         amplitude_change_per_period=check.amplitude_change_per_period,
         limit=limit,
+        ambiguous_waves=check.ambiguous_waves,
     )
 
 

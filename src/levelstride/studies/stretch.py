@@ -1,18 +1,16 @@
 """How far the levels can be stretched under a step, what takes over, and what limits the step."""
 
 import pickle
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass, replace
 from math import inf
-from typing import Any, Final
+from typing import Final
 
 import numpy as np
 
 from levelstride.column.arrays import Array
 from levelstride.column.column import (
-    DEFAULT_SPLITS,
-    DEFAULT_TABLEAUX,
     Column,
     LowestSlopeGradient,
 )
@@ -21,11 +19,10 @@ from levelstride.errors import CalculationError, InputError
 from levelstride.results.stretch_wording import thickness
 from levelstride.results.stretching import Stretch, StretchRow
 from levelstride.results.wording import CAUTION
-from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.studies.gather import Progress
 from levelstride.studies.level_families import KEEPS, Family
 from levelstride.studies.limit import SCAN
-from levelstride.studies.methods import pairs_of
+from levelstride.studies.short_list import short_pairs
 from levelstride.studies.stretch_point import (
     Measured,
     StretchItem,
@@ -34,11 +31,6 @@ from levelstride.studies.stretch_rows import Draft, Extras, Telling
 from levelstride.studies.stretch_work import StretchWork, Wanted
 from levelstride.studies.stretched_levels import NoMemberError
 from levelstride.studies.summary import column_summary, provenance, wind_note
-from levelstride.tableaux.tableau import Tableau
-
-SHORT_TABLEAUX: Final = ("ARS(2,3,2)", "ARS(3,4,3)", "UJ3(1,3,2)")
-SHORT_SPLITS: Final = ("sound+buoyancy", "sound+buoyancy+divergence")
-"""What is tried where neither the caller nor the column file names anything."""
 
 POINTS: Final = 24
 FEWEST_POINTS, MOST_POINTS = 3, 1000
@@ -133,7 +125,7 @@ def stretch(
     asked = _Asked(target_step_s, points, efolding_s)
     if lowest_slope_gradient is not None:
         column = replace(column, lowest_slope_gradient=lowest_slope_gradient)
-    pairs = _pairs(column, tableaux, splits)
+    pairs = short_pairs(column, tableaux, splits)
     family = Family(column.levels.interfaces_m, keep, 0 if lowest is None else lowest)
     coordinates, notes = _members(column, family, asked.points)
     packed = pickle.dumps(column)
@@ -183,27 +175,6 @@ class _Asked:
             return self.target_step_s, "given"
         choice = next(one.choice for one in found if one.choice is not None)
         return choice.step_s, f"advised, bound by {choice.binding}"
-
-
-def _pairs(
-    column: Column, tableaux: Sequence[str] | None, splits: Sequence[str] | None
-) -> list[tuple[Tableau, Splitting, str | Mapping[str, str]]]:
-    """Pairs, each with its splitting as plain data."""
-    listed = column.advice
-    if tableaux is None:
-        tableaux = SHORT_TABLEAUX if listed.tableaux == DEFAULT_TABLEAUX else listed.tableaux
-    given: Sequence[Any] = splits if splits is not None else _splits(column)
-    plain = {resolve(one).name: one for one in given if not isinstance(one, str)}
-    return [
-        (tableau, splitting, plain.get(splitting.name, splitting.name))
-        for tableau, splitting in pairs_of(column, tableaux, given)
-    ]
-
-
-def _splits(column: Column) -> Sequence[str | Mapping[str, str]]:
-    if column.advice.splits != DEFAULT_SPLITS:
-        return column.advice.splits
-    return SHORT_SPLITS if column.split is None else (column.split,)
 
 
 def _members(

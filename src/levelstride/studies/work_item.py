@@ -6,11 +6,11 @@ from dataclasses import dataclass, replace
 from functools import lru_cache
 from math import inf
 
-from levelstride.accuracy.wave_errors import ResolvedWaves, StepErrors, resolved_waves
+from levelstride.accuracy.by_kind import column_waves
+from levelstride.accuracy.judge import Judgement, StepJudge
 from levelstride.column.column import Column
 from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
-from levelstride.operator.wave import Wave
 from levelstride.results.dataset import Limit
 from levelstride.results.wording import limit_reason, number, percent
 from levelstride.splitting.splitting import Splitting, resolve
@@ -163,20 +163,14 @@ def unpacked(packed: bytes) -> tuple[Column, ...]:
     return lowest_slope_gradients(pickle.loads(packed))
 
 
-@lru_cache(maxsize=8)
-def _resolved(column: Column) -> tuple[ResolvedWaves, ...]:
-    waves = [Wave(float(k), column.horizontal) for k in sampled_wavenumbers(column.horizontal)]
-    return tuple(w for air in column.airs for w in resolved_waves(column, air, waves))
-
-
 class StepChecker:
     """Examines steps of one tableau and splitting at every sampled wave."""
 
     def __init__(self, columns: tuple[Column, ...], splitting: Splitting, tableau: Tableau) -> None:
         self._asked = columns[0].advice
         self._tolerance = Tolerance(self._asked.efolding_s, self._asked.transient_limit)
-        waves = [wave for column in columns for wave in _resolved(column)]
-        self._errors = StepErrors(waves, splitting, tableau)
+        waves = [wave for column in columns for wave in column_waves(column)]
+        self._judge = StepJudge(waves, splitting, tableau, self._asked)
         self._problems = [
             WaveProblem(column, air, splitting, tableau, float(kappa))
             for column in columns
@@ -187,14 +181,15 @@ class StepChecker:
     def examine(self, step_s: float) -> StepCheck:
         """Say what speaks against a step: accuracy first, stability at that very step then."""
         try:
-            errors = self._errors.at(step_s)
+            found = self._judge.at(step_s)
         except CalculationError as error:
             return StepCheck(str(error))
-        turned, changed = errors.frequency_error, errors.amplitude_change_per_period
-        failure = self._inaccurate(step_s, turned, changed)
+        failure = None if found.accurate else self._inaccurate(step_s, found)
         if failure is None and not self.stable(step_s):
             failure = f"stability: grows at {number(step_s)} s itself, in a narrow window"
-        return StepCheck(failure, turned, changed)
+        return StepCheck(
+            failure, found.frequency_error, found.amplitude_change_per_period, found.ambiguous
+        )
 
     def stable(self, step_s: float) -> bool:
         """Whether no sampled wave grows more than is tolerated at this very step."""
@@ -205,14 +200,14 @@ class StepChecker:
                 return False
         return True
 
-    def _inaccurate(self, step_s: float, turned: float | None, changed: float | None) -> str | None:
+    def _inaccurate(self, step_s: float, judged: Judgement) -> str:
+        """Say which of both errors is further beyond its limit."""
         found = []
-        if turned is not None and turned > self._asked.frequency_error:
+        turned, changed = judged.frequency_error, judged.amplitude_change_per_period
+        if turned is not None:
             found.append(("frequency", turned, self._asked.frequency_error))
-        if changed is not None and abs(changed) > self._asked.amplitude_loss_per_period:
+        if changed is not None:
             found.append(("amplitude", changed, self._asked.amplitude_loss_per_period))
-        if not found:
-            return None
         what, value, allowed = max(found, key=lambda one: abs(one[1]) / max(one[2], 1e-300))
         per_period = " per period" if what == "amplitude" else ""
         return (
