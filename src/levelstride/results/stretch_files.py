@@ -14,6 +14,7 @@ from .wording import number, step
 
 _COLUMNS: Final = (
     "lowest_layer_m", "ratio", "stable_step_s", "unbounded", "carries", "own", "layers", "lid_m",
+    "whole_search",
 )  # fmt: skip
 _BINDS: Final = (
     "criterion", "air", "kind", "wavenumber_per_m", "wavelength_m", "layer_lowest",

@@ -36,8 +36,9 @@ POINTS: Final = 24
 FEWEST_POINTS, MOST_POINTS = 3, 1000
 
 CERTIFIED: Final = (
-    "every point of the curve by its own search for the stable step, the last set that carries the "
-    "target and the next one included; between points the curve is not proved"
+    "the user's own set and the last set that carries the target by a full search for the stable "
+    "step, other points of columns with more than 100 unknowns by following the limit from set to "
+    "set where it goes on evenly (whole_search tells which); between points the curve is not proved"
 )
 
 
