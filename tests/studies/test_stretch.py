@@ -74,7 +74,7 @@ def _steps(monkeypatch):
     """Let members have made-up steps: a function of lowest layer or lid that is put in here."""
     made = {}
 
-    def at(self, coordinate, *_):
+    def at(self, coordinate, *_, turn=0):
         column = with_levels(self.column, self.family.at(coordinate))
         step, binding = made["up"](coordinate)
         return point(

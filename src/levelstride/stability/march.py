@@ -133,7 +133,10 @@ class _Course:
     ) -> None:
         self._problems, self._stepper, self._tolerance = problems, stepper, tolerance
         self._dt, nlane = stepper.dt, len(problems)
-        self._own = np.array([problem.facts.own_growth for problem in problems])
+        # own growth costs more than most marches: asked only where it may excuse what is seen
+        self._own = np.zeros(nlane)
+        self._unasked = np.ones(nlane, dtype=bool)
+        self._past: list[tuple[int, Array]] = []
         self._gains = np.array([problem.facts.gains_energy for problem in problems])
         self._limit = lowest_log_limit(tolerance)
         self._q = _first_state(problems[0].size, nlane, stepper.dtype)
@@ -148,6 +151,11 @@ class _Course:
         enough = last if enough is None else min(enough, last)
         while True:
             rates = self._go_on(max(self._steps, FIRST_STEPS))
+            still_open = np.array([look is None for look in found])
+            doubted = self._refuted(rates)
+            if self._steps >= enough:
+                doubted |= ~self._quiet(rates)
+            rates -= self._ask_own_growth(still_open & doubted)
             refuted = self._refuted(rates)
             for lane, look in enumerate(found):
                 if look is None and refuted[lane]:
@@ -172,9 +180,23 @@ class _Course:
         self._q *= np.where(np.isfinite(norm) & (norm > 0), 1 / norm, 0.0)
         self._steps += steps
         self._log += gained
+        self._past.append((self._steps, self._log.copy()))
         self._highest = np.maximum(self._highest, self._excess())
         rates: Array = gained / (steps * self._dt) - self._own
         return rates
+
+    def _ask_own_growth(self, doubted: NDArray[np.bool_]) -> Array:
+        """Take out the own growth of lanes not asked before; return what that changes [1/s]."""
+        asked = doubted & self._unasked
+        for lane in np.flatnonzero(asked).tolist():
+            self._own[lane] = self._problems[lane].facts.own_growth
+        self._unasked &= ~asked
+        if np.any(self._own[asked]):
+            tolerated = self._dt * (self._own + self._tolerance.rate)
+            excess = [log - steps * tolerated for steps, log in self._past]
+            self._highest = np.maximum(0.0, np.max(excess, axis=0))
+        change: Array = np.where(asked, self._own, 0.0)
+        return change
 
     def _excess(self) -> Array:
         """Logarithm of the norm after the tolerated growth is taken out."""

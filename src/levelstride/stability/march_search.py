@@ -110,8 +110,8 @@ class MarchSearch:
         """
         if self._near is not None:
             known_s = max(known_s, self._near.first_s)
+            self._near.thin(self._waves.kappas)
             for air, kappa in self._near.waves:
-                self._waves.kappas[air] = sorted({*self._waves.kappas[air], kappa})
                 found = self._waves.problem(air, kappa) if self._dense else None
                 if found and (at := self._near.limit(found, self._tolerance, self._cap())):
                     self._note(at)
@@ -152,14 +152,12 @@ class MarchSearch:
     def _ask_about_slow_growth(self, problems: Sequence[WaveProblem], dt: float) -> None:
         """Ask full matrices about waves whose growth may be too slow for a glance.
 
-        About all waves where full matrices cost little; elsewhere about those that a march as long
-        as needed leaves unclear or, where that takes too many steps, those whose frozen layers
-        grow: the fastest first, and no more once one is found.
+        About all waves where these cost little; elsewhere about those that a march as long as
+        needed leaves unclear or, where that takes too many steps, whose frozen layers grow.
         """
         tolerance = self._tolerance
-        certain = CERTAIN_UNKNOWNS if dt == self._smallest() else LADDER_UNKNOWNS
-        if self._near is None and problems[0].size <= certain:
-            slow = [problem for problem in problems if not problem.stable(dt, tolerance)]
+        if problems[0].size <= (CERTAIN_UNKNOWNS if dt == self._smallest() else LADDER_UNKNOWNS):
+            slow = [problem for problem in problems if not self._stable(problem, dt)]
             for problem in sorted(slow, key=lambda problem: -problem.growth(dt)):
                 self._ask(problem, min(dt, self._smallest()))
             return
@@ -171,13 +169,17 @@ class MarchSearch:
         else:
             steps_s = np.array([dt])
             rates = [float(problem.local_screen.growth(steps_s)[0]) for problem in problems]
-        if self._near is not None:
-            bind = [self._waves.problem(air, kappa) for air, kappa in self._near.waves]
-            rates = [np.inf if p in bind else r for p, r in zip(problems, rates, strict=True)]
         order: list[int] = np.argsort(rates)[::-1].tolist()
         for i in order:
             if rates[i] >= DOUBTFUL * tolerance.rate:
                 self._ask(problems[i], min(dt, self._smallest()))
+
+    def _stable(self, problem: WaveProblem, dt: float) -> bool:
+        """What full matrices say; near a known limit of growth alone."""
+        if self._near is None:
+            return problem.stable(dt, self._tolerance)
+        growth = problem.growth(dt)
+        return growth <= self._tolerance.rate or growth <= problem.rate(self._tolerance)
 
     def _scan(self, problems: Sequence[WaveProblem], turn: float, first: float = 0.0) -> None:
         """Look at ever longer steps until one fails or the smallest limit known is passed."""
@@ -282,8 +284,7 @@ class MarchSearch:
     def _add_longer(self, air: int) -> None:
         """Go on to longer waves while the longest one is the worst and the limit still falls."""
         for _ in range(MOST_LONGER):
-            longest = self._waves.problem(air, self._waves.kappas[air][0])
-            best = self.best
+            best, longest = self.best, self._waves.problem(air, self._waves.kappas[air][0])
             if best is None or best.problem is not longest:
                 return
             self._try_waves(air, [longest.kappa / 2])

@@ -26,15 +26,25 @@ class Nearby:
         A step near which the limit should lie [s].
     waves : tuple of (int, float)
         Air states by number and wavenumbers [1/m] of waves that bind the like of it.
+    every, turn : int
+        Which of the sampled waves are asked besides: each so many, from that one on.
     """
 
     step_s: float
     waves: tuple[tuple[int, float], ...] = ()
+    every: int = 1
+    turn: int = 0
 
     @property
     def first_s(self) -> float:
         """Step below which nothing is looked at [s]."""
         return self.step_s / NEARBY
+
+    def thin(self, kappas: list[list[float]]) -> None:
+        """Leave of the wavenumbers of every air state those to ask, the largest, and what binds."""
+        for air, every in enumerate(kappas if self.every > 1 else ()):
+            binding = [kappa for number, kappa in self.waves if number == air]
+            kappas[air] = sorted({*every[self.turn :: self.every], *every[-2:], *binding})
 
     def upward(self, most: float) -> list[float]:
         """Steps up to ``most`` from where the limit is expected: closely at first, then wider."""

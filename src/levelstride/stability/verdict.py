@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 from levelstride.column.column import Column
@@ -120,8 +120,7 @@ class ColumnVerdict:
         *,
         refine: bool = True,
         known_s: float = 0.0,
-        near_s: float | None = None,
-        near_waves: Sequence[tuple[int, float]] = (),
+        near: Nearby | None = None,
         watch: Watch = silent,
     ) -> StableStep:
         """Longest step that keeps all three criteria.
@@ -133,11 +132,9 @@ class ColumnVerdict:
             Whether to add wavenumbers around the worst ones.
         known_s : float
             A step up to which all is known to be stable, from a stricter tolerance [s].
-        near_s : float or None
-            A step near which the limit is known to lie, from a column that hardly differs: a
-            shorter search, to be borne out by a whole one where it is an answer [s].
-        near_waves : sequence of (int, float)
-            Air states by number and wavenumbers that bind there [1/m].
+        near : Nearby or None
+            Where the limit should lie, from a column that hardly differs: a shorter search, to be
+            borne out by a whole one where it is an answer.
         watch : callable
             Told what is being looked at.
 
@@ -152,7 +149,6 @@ class ColumnVerdict:
             largest = min(largest, SAME * courant.step_s)
         self.search.largest_s = largest
         if self.marches:
-            near = None if near_s is None else Nearby(near_s, tuple(near_waves))
             marching = MarchSearch(self.search, tolerance, near=near, watch=watch)
             bracket = marching.run(refine=refine, known_s=known_s)
         else:

@@ -14,6 +14,7 @@ from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
+from levelstride.stability.nearby import Nearby
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict
 from levelstride.studies.methods import tableau_of
@@ -72,7 +73,8 @@ def stable_step(item: LimitItem) -> float:
     for one in columns[::-1]:
         verdict = ColumnVerdict(one, splitting, tableau, min(LONGEST_STEP_S, REACH * least))
         try:
-            found = verdict.stable_step(tolerance, near_s=item.near_s).step_s
+            near = None if item.near_s is None else Nearby(item.near_s)
+            found = verdict.stable_step(tolerance, near=near).step_s
         except CalculationError:
             return 0.0
         least = min(least, inf if found is None else found)

@@ -17,6 +17,7 @@ from levelstride.results.dataset import Limit
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.courant import rows_hold
 from levelstride.stability.march_bounds import DOUBTFUL, SLOW_STRIDE
+from levelstride.stability.nearby import Nearby
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableStep
@@ -297,8 +298,8 @@ class _Asked:
         slowly at the step found or below it, which a march does not see.
         """
         if kept_s > 0.0 and self._verdict.marches:
-            near_s = AHEAD * kept_s
-            found = self._verdict.stable_step(self._tolerance, refine=False, near_s=near_s).step_s
+            near = Nearby(AHEAD * kept_s)
+            found = self._verdict.stable_step(self._tolerance, refine=False, near=near).step_s
             if not self._may_grow_slowly(kept_s, found or self._verdict.largest_s):
                 return found
         return self._verdict.stable_step(self._tolerance, refine=False, known_s=kept_s).step_s

@@ -19,6 +19,7 @@ from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.bites import anatomy, critical_state
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.courant import CourantLimit
+from levelstride.stability.nearby import Nearby
 from levelstride.stability.step_limit import Bracket
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
@@ -31,6 +32,12 @@ from levelstride.tableaux.tableau import Tableau
 
 SURPRISE: Final = (1.5, 1.2)
 """Factor from the expected step beyond which it is looked for in full, by one member and by two."""
+
+EVERY: Final = 2
+"""Of so many sampled waves one is asked about a member that is followed, the others by turns."""
+
+AGREES: Final = 0.005
+"""Difference of ln(step) up to which two searches agree."""
 
 FAR_APART: Final = 1e-6
 """Difference of ln(coordinate) from which two members tell a slope."""
@@ -119,7 +126,7 @@ class Members:
         """Find the place of a point in the family [m]."""
         return point.lid_m if self.family.by_lid else point.lowest_layer_m
 
-    def at(self, coordinate: float, *near: StretchPoint) -> StretchPoint:
+    def at(self, coordinate: float, *near: StretchPoint, turn: int = 0) -> StretchPoint:
         """Search the stable step of a member.
 
         Parameters
@@ -129,10 +136,12 @@ class Members:
         *near : StretchPoint
             Members on the way to it, the nearest last: its limit is looked for where theirs lead
             to, and in full if it is not there. Without any it is looked for in full.
+        turn : int
+            Which of the sampled waves are asked about it, by turns.
         """
         column = with_levels(self.column, self.family.at(coordinate))
         faces = column.levels.interfaces_m
-        found, whole = self._search(column, coordinate, near)
+        found, whole = self._search(column, coordinate, near, turn)
         return StretchPoint(
             lowest_layer_m=float(faces[1]),
             ratio=largest_ratio(faces),
@@ -146,20 +155,20 @@ class Members:
         )
 
     def _search(
-        self, column: Column, coordinate: float, near: Sequence[StretchPoint]
+        self, column: Column, coordinate: float, near: Sequence[StretchPoint], turn: int
     ) -> tuple[StableStep | None, bool]:
         """Find the stable step, and tell whether all was searched for it."""
         verdict = ColumnVerdict(column, self.splitting, self.tableau)
         expected_s = self._expected_s(coordinate, near) if verdict.marches else None
         try:
             if expected_s is not None:
-                waves = [wave for point in near for wave in self._wave(point)]
-                found = verdict.stable_step(
-                    self.tolerance, refine=False, near_s=expected_s, near_waves=waves
-                )
+                waves = dict.fromkeys(wave for point in near for wave in self._wave(point))
+                nearby = Nearby(expected_s, tuple(waves), EVERY, turn)
+                found = verdict.stable_step(self.tolerance, refine=False, near=nearby)
                 off = SURPRISE[min(len(near), 2) - 1]
                 if found.step_s is not None and expected_s / off < found.step_s < expected_s * off:
                     return found, False
+                verdict = ColumnVerdict(column, self.splitting, self.tableau)
             return verdict.stable_step(self.tolerance), True
         except CalculationError:
             return None, True
@@ -219,12 +228,29 @@ def measure(item: PointItem) -> Measured:
 def follow(item: RunItem) -> list[Measured]:
     """Search members one after the other, each where those before it lead to."""
     members, near = Members(item.of), [item.near] if item.near is not None else []
-    found = []
+    found: list[StretchPoint] = []
     for coordinate in item.coordinates:
-        point = members.at(coordinate, *near)
-        near = [*near[-1:], point]
-        found.append(Measured(point))
-    return found
+        point = members.at(coordinate, *near, turn=len(found) % EVERY)
+        if near and point.whole_search:
+            _look_back(members, found)
+        found.append(point)
+        near = [*near[:1], *found][-2:]
+    return [Measured(point) for point in found]
+
+
+def _look_back(members: Members, found: list[StretchPoint]) -> None:
+    """Search members in full, back to one where following and searching agree.
+
+    What surprised at the next one may bind them too and have been passed over.
+    """
+    for k in reversed(range(len(found))):
+        followed = found[k]
+        if followed.whole_search:
+            return
+        found[k] = members.at(members.coordinate(followed))
+        searched_s, followed_s = found[k].stable_step_s, followed.stable_step_s
+        if searched_s and followed_s and abs(log(searched_s / followed_s)) < AGREES:
+            return
 
 
 def carries(point: StretchPoint, target_s: float) -> bool:
