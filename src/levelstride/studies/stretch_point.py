@@ -33,6 +33,9 @@ from levelstride.tableaux.tableau import Tableau
 SURPRISE: Final = (1.5, 1.2)
 """Factor from the expected step beyond which it is looked for in full, by one member and by two."""
 
+EVEN: Final = 1.02
+"""The same where another wave binds than at the members before."""
+
 EVERY: Final = 2
 """Of so many sampled waves one is asked about a member that is followed, the others by turns."""
 
@@ -165,8 +168,9 @@ class Members:
                 waves = dict.fromkeys(wave for point in near for wave in self._wave(point))
                 nearby = Nearby(expected_s, tuple(waves), EVERY, turn)
                 found = verdict.stable_step(self.tolerance, refine=False, near=nearby)
-                off = SURPRISE[min(len(near), 2) - 1]
-                if found.step_s is not None and expected_s / off < found.step_s < expected_s * off:
+                taken_over = found.waves_bind and _wave_of(column, found) not in waves
+                even = EVEN if taken_over else SURPRISE[min(len(near), 2) - 1]
+                if found.step_s and expected_s / even < found.step_s < expected_s * even:
                     return found, False
                 verdict = ColumnVerdict(column, self.splitting, self.tableau)
             return verdict.stable_step(self.tolerance), True
@@ -251,6 +255,13 @@ def _look_back(members: Members, found: list[StretchPoint]) -> None:
         searched_s, followed_s = found[k].stable_step_s, followed.stable_step_s
         if searched_s and followed_s and abs(log(searched_s / followed_s)) < AGREES:
             return
+
+
+def _wave_of(column: Column, found: StableStep) -> tuple[int, float] | None:
+    if found.bracket is None:
+        return None
+    problem = found.bracket.problem
+    return [air.name for air in column.airs].index(problem.air.name), problem.kappa
 
 
 def carries(point: StretchPoint, target_s: float) -> bool:
