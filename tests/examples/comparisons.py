@@ -13,8 +13,8 @@ from levelstride.results.comparison import (
     Weights,
 )
 from levelstride.results.knob_map import Knob, KnobMap, MapPoint, MapRow
-from levelstride.results.work_precision import PacketSummary
 from levelstride.results.wording import CAUTION
+from levelstride.results.work_precision import PacketSummary
 
 
 def errors(**changes):
@@ -35,7 +35,7 @@ def errors(**changes):
             amplitude_change_per_hour=-0.05,
         ),
         "sound": SoundDamping(
-            wavelengths_m=(24000.0, 96000.0),
+            wavelength_m=24000.0,
             modes=14,
             mean_change_per_period=-0.25,
             mean_change_per_hour=-0.9,
@@ -52,9 +52,7 @@ def errors(**changes):
 def curve(cost, error, order=2, points=4):
     """A curve from a cost and an error downwards, every step half of the one before."""
     return tuple(
-        CurvePoint(
-            step_s=8.0 / 2**k, error=error / 2 ** (order * k), cost_per_hour=cost * 2**k
-        )
+        CurvePoint(step_s=8.0 / 2**k, error=error / 2 ** (order * k), cost_per_hour=cost * 2**k)
         for k in range(points)
     )
 

@@ -19,7 +19,7 @@ from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
-from levelstride.studies.compare import brief_key
+from levelstride.studies.compare import COMPARED, brief_key
 from levelstride.studies.compared_row import gravity_errors
 from levelstride.studies.gather import Progress
 from levelstride.studies.kept_work import Task, do_all
@@ -180,7 +180,7 @@ def plan_map(
     if lowest_slope_gradient is not None:
         column = replace(column, lowest_slope_gradient=lowest_slope_gradient)
     varied = knobs(column, vary)
-    pairs = short_pairs(column, tableaux, splits)
+    pairs = short_pairs(column, tableaux, splits, COMPARED)
     grid = list(product(*(knob.values for knob in varied)))
     if len(grid) * len(pairs) > MOST_POINTS:
         raise InputError(
