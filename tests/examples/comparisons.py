@@ -35,7 +35,7 @@ def errors(**changes):
             amplitude_change_per_hour=-0.05,
         ),
         "sound": SoundDamping(
-            wavelengths_m=(24000.0, 96000.0),
+            wavelength_m=24000.0,
             modes=14,
             mean_change_per_period=-0.25,
             mean_change_per_hour=-0.9,

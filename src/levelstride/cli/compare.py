@@ -26,7 +26,7 @@ def compare(
         list[str] | None,
         Parameter(
             help="Tableau to compare, may be repeated; those of the column file by default, or "
-            "ARS(2,3,2), ARS(3,4,3) and UJ3(1,3,2) if it lists none."
+            "ARS(2,3,2), ARS(3,4,3) and IMEX-SSP2(2,3,2) if it lists none."
         ),
     ] = None,
     splits: Annotated[

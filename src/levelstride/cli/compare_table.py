@@ -121,14 +121,14 @@ def _show_errors(found: "Comparison") -> None:
             Heading("", number=True),
             Heading("tableau", whole=True),
             *(heading for heading, _ in columns),
-            Heading("beaten", "by row"),
+            Heading("beaten", "by rows"),
         ],
         [
             (
                 str(i + 1),
                 row.tableau,
                 *(cells[i] for _, cells in columns),
-                ", ".join(str(by.row + 1) for by in row.dominated_by),
+                ", ".join(str(place + 1) for place in sorted(by.row for by in row.dominated_by)),
             )
             for i, row in enumerate(rows)
         ],
@@ -158,12 +158,12 @@ _ERRORS = (
     ("", "[%/h]", _of_errors("amplitude_change_per_hour")),
     ("sound", "[%/period]", _sound),
     ("measured", "[ms/h]", _measured),
-    ("error at equal", "cost [%]", lambda row: in_percent(row.error_at_equal_cost)),
+    ("equal-cost", "error [%]", lambda row: in_percent(row.error_at_equal_cost)),
 )
 """Headings, units, and how each number is written."""
 
 
-NOTHING = 5e-7
+NOTHING = 1e-6
 """Changes smaller than this count as none in a table [1]."""
 
 

@@ -65,8 +65,8 @@ class SoundDamping:
 
     Parameters
     ----------
-    wavelengths_m : tuple of float
-        Horizontal wavelengths along one axis that were looked at [m].
+    wavelength_m : float
+        Horizontal wavelength along one axis that was looked at [m].
     modes : int
         Sound waves matched there.
     mean_change_per_period, mean_change_per_hour : float or None
@@ -75,7 +75,7 @@ class SoundDamping:
         The change that is largest in size [1].
     """
 
-    wavelengths_m: tuple[float, ...]
+    wavelength_m: float
     modes: int
     mean_change_per_period: float | None
     mean_change_per_hour: float | None

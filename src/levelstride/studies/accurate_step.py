@@ -41,6 +41,10 @@ class EdgeCheck:
             self._bisect(step_s, found)
         return found
 
+    def holds(self, step_s: float) -> bool:
+        """Whether a step is short of where accuracy is lost, as far as is known."""
+        return step_s <= self._lost_s
+
     def _look(self, step_s: float) -> StepCheck:
         if step_s not in self._seen:
             self._seen[step_s] = self._check(step_s)
@@ -65,7 +69,12 @@ class EdgeCheck:
 
 
 def accurate_and_advised(
-    found: Limit, *, safety: float, intervals_s: tuple[float, ...], check: Check
+    found: Limit,
+    *,
+    safety: float,
+    intervals_s: tuple[float, ...],
+    check: Check,
+    check_stable: Check | None = None,
 ) -> tuple[Choice, Choice]:
     """Find the longest accurate step up to the stable one, and the step to advise.
 
@@ -79,6 +88,8 @@ def accurate_and_advised(
         Intervals that hold whole advised steps [s].
     check : callable
         Examines one step, given in s.
+    check_stable : callable, optional
+        Examines a step between the safe and the stable one, more cheaply.
 
     Returns
     -------
@@ -92,9 +103,10 @@ def accurate_and_advised(
             return advised, advised
         return choose_step(found, safety=1.0, intervals_s=(), check=edge.examine), advised
     safe_s = safety * found.stable_step_s
+    above = EdgeCheck(check_stable or check) if edge.holds(safe_s) else edge
 
     def within_safety(step_s: float) -> StepCheck:
-        return edge.examine(step_s) if step_s > safe_s else StepCheck(None)
+        return above.examine(step_s) if step_s > safe_s else StepCheck(None)
 
     accurate = choose_step(found, safety=1.0, intervals_s=(), check=within_safety)
     if accurate.step_s is not None and accurate.step_s > safe_s:

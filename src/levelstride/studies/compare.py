@@ -5,6 +5,7 @@ from collections.abc import Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass, replace
 from math import inf, isfinite
+from typing import Final
 
 import numpy as np
 
@@ -26,6 +27,9 @@ from levelstride.studies.short_list import short_pairs
 from levelstride.studies.summary import column_summary, provenance, wind_note
 from levelstride.studies.timing import step_time
 from levelstride.tableaux.tableau import Tableau
+
+COMPARED: Final = ("ARS(2,3,2)", "ARS(3,4,3)", "IMEX-SSP2(2,3,2)")
+"""Tableaux that are compared where nobody names any: of order 2 and 3, quickly searched."""
 
 CERTIFIED = (
     "stable steps by a search each, see the rows; errors by eigenvalues of the step matched with "
@@ -158,7 +162,7 @@ def plan_comparison(
             cost_exchange=weights.exchange,
         )
         column = replace(column, advice=advice)
-    pairs = short_pairs(column, tableaux, splits)
+    pairs = short_pairs(column, tableaux, splits, COMPARED)
     packed = pickle.dumps(column)
     tasks = []
     for tableau, splitting, split in pairs:
@@ -310,16 +314,17 @@ def _answer(
         undominated=tuple(i for i in able if not rows[i].dominated_by),
         verdict="",
         lowest_slope_gradient=column.lowest_slope_gradient if np.any(column.slope_f) else None,
-        notes=_notes(column),
+        notes=standing_notes(column, steep=bool(np.any(column.slope_f))),
         caution=CAUTION,
         provenance=provenance(column, f"{CERTIFIED}; {SCAN}"),
     )
     return replace(answer, verdict=verdict(answer))
 
 
-def _notes(column: Column) -> tuple[str, ...]:
+def standing_notes(column: Column, *, steep: bool) -> tuple[str, ...]:
+    """Say what was assumed about the wind, and about the lowest slope gradient over a slope."""
     notes = [] if column.wind_given else [str(wind_note(column))]
-    if np.any(column.slope_f):
+    if steep:
         other = "full" if column.lowest_slope_gradient == "half" else "half"
         notes.append(
             f"over the slope, the lowest slope gradient is taken as {column.lowest_slope_gradient};"

@@ -7,7 +7,13 @@ from functools import lru_cache
 from math import inf, pi
 from typing import Final
 
-from levelstride.accuracy.by_kind import StepWaveErrors, WaveErrorsAtStep, step_wave_errors
+from levelstride.accuracy.by_kind import (
+    StepWaveErrors,
+    WaveErrorsAtStep,
+    column_waves,
+    step_wave_errors,
+)
+from levelstride.accuracy.judge import StepJudge
 from levelstride.accuracy.wave_errors import ResolvedWaves, all_waves, long_enough
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
@@ -19,7 +25,7 @@ from levelstride.results.work_precision import PacketSummary, WorkPrecision
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.studies.accurate_step import accurate_and_advised
-from levelstride.studies.advised_step import Choice
+from levelstride.studies.advised_step import Choice, StepCheck
 from levelstride.studies.limit import limit
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.work_item import StepChecker
@@ -114,11 +120,23 @@ def find_row(item: CompareItem) -> RowFinding:
     splitting, tableau = resolve(item.split), tableau_of(column, item.tableau)
     found = item.limit or brief_limit(column, splitting, tableau, item.split)
     checker = StepChecker((column,), splitting, tableau)
+    judge = StepJudge(column_waves(column), splitting, tableau, column.advice)
+
+    def stable_anyway(step_s: float) -> StepCheck:
+        """Examine a step that is stable by the search: accuracy alone, if that holds."""
+        judged = judge.at(step_s)
+        if not judged.accurate:
+            return checker.examine(step_s)
+        return StepCheck(
+            None, judged.frequency_error, judged.amplitude_change_per_period, judged.ambiguous
+        )
+
     accurate, advised = accurate_and_advised(
         found,
         safety=column.advice.safety,
         intervals_s=column.advice.divides_s,
         check=checker.examine,
+        check_stable=stable_anyway,
     )
     step_s = item.step_s or advised.step_s
     answer = RowFinding(found, accurate, advised)
@@ -209,7 +227,7 @@ def sound_damping(
     if sound is None:
         return None
     return SoundDamping(
-        wavelengths_m=tuple(sorted({2 * pi / wave.kappa for wave in waves})),
+        wavelength_m=2 * pi / waves[0].kappa,
         modes=sound.modes,
         mean_change_per_period=sound.mean_change_per_period,
         mean_change_per_hour=sound.mean_change_per_hour,
@@ -219,11 +237,13 @@ def sound_damping(
 
 @lru_cache(maxsize=2)
 def _sound_waves(column: Column) -> tuple[ResolvedWaves, ...]:
-    """Sound at the longest and the shortest sampled wave of at least 8 grid spacings."""
+    """Sound at the shortest sampled wave of at least 8 grid spacings.
+
+    What a step does to sound depends on its vertical order much more than on this wavelength.
+    """
     sampled = (Wave(float(k), column.horizontal) for k in sampled_wavenumbers(column.horizontal))
-    waves = list(long_enough(sampled))
-    chosen = [waves[i] for i in sorted({0, len(waves) - 1})]
-    found = (wave for air in column.airs for wave in all_waves(column, air, chosen))
+    shortest = list(long_enough(sampled))[-1:]
+    found = (wave for air in column.airs for wave in all_waves(column, air, shortest))
     return tuple(
         replace(wave, modes=wave.modes.select(wave.modes.kind == "sound")) for wave in found
     )

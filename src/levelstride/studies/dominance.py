@@ -32,9 +32,9 @@ def equal_cost(rows: Sequence[ComparedRow], given: float | None = None) -> tuple
     if given is not None:
         return given, "given"
     costs = {
-        i: row.cost_per_hour
+        i: min(point.cost_per_hour for point in row.curve)
         for i, row in enumerate(rows)
-        if row.usable and row.curve and row.cost_per_hour is not None
+        if row.usable and row.curve
     }
     if not costs:
         return None, "no row has a packet error"

@@ -7,6 +7,8 @@ from dataclasses import dataclass, replace
 from itertools import product
 from math import inf
 
+import numpy as np
+
 from levelstride.accuracy.by_kind import step_wave_errors
 from levelstride.column.column import Column, LowestSlopeGradient
 from levelstride.column.knobs import with_value
@@ -19,7 +21,7 @@ from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
-from levelstride.studies.compare import brief_key
+from levelstride.studies.compare import COMPARED, brief_key, standing_notes
 from levelstride.studies.compared_row import gravity_errors
 from levelstride.studies.gather import Progress
 from levelstride.studies.kept_work import Task, do_all
@@ -29,7 +31,7 @@ from levelstride.studies.limit import SCAN
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.short_list import short_pairs
 from levelstride.studies.stretch_point import binding
-from levelstride.studies.summary import column_summary, provenance, wind_note
+from levelstride.studies.summary import column_summary, provenance
 from levelstride.tableaux.tableau import Tableau
 
 MOST_POINTS = 10_000
@@ -82,6 +84,8 @@ class MapPlan:
         Pair by pair, one for every column.
     step_s : float or None
         Step at which errors are found [s].
+    steep : bool
+        Whether any of the columns has a slope.
     """
 
     column: Column
@@ -89,6 +93,7 @@ class MapPlan:
     pairs: tuple[tuple[Tableau, Splitting], ...]
     tasks: tuple[Task, ...]
     step_s: float | None
+    steep: bool
 
 
 def knob_map(
@@ -180,7 +185,7 @@ def plan_map(
     if lowest_slope_gradient is not None:
         column = replace(column, lowest_slope_gradient=lowest_slope_gradient)
     varied = knobs(column, vary)
-    pairs = short_pairs(column, tableaux, splits)
+    pairs = short_pairs(column, tableaux, splits, COMPARED)
     grid = list(product(*(knob.values for knob in varied)))
     if len(grid) * len(pairs) > MOST_POINTS:
         raise InputError(
@@ -207,7 +212,8 @@ def plan_map(
             what = f"{tableau.name} with {splitting.name}, {at}"
             tasks.append(Task(find_point, item, what, MapPoint, key))
     named = tuple((tableau, splitting) for tableau, splitting, _ in pairs)
-    return MapPlan(column, varied, named, tuple(tasks), step_s)
+    steep = any(np.any(one.slope_f) for one in columns)
+    return MapPlan(column, varied, named, tuple(tasks), step_s, steep)
 
 
 def _columns(
@@ -310,7 +316,7 @@ def carry_out_map(
         share_of_stable=column.advice.safety if plan.step_s is None else None,
         rows=rows,
         lowest_slope_gradient=column.lowest_slope_gradient,
-        notes=() if column.wind_given else (str(wind_note(column)),),
+        notes=standing_notes(column, steep=plan.steep),
         caution=CAUTION,
         provenance=provenance(column, f"{CERTIFIED}; {SCAN}"),
     )

@@ -14,7 +14,10 @@ SHORT_SPLITS: Final = ("sound+buoyancy", "sound+buoyancy+divergence")
 
 
 def short_pairs(
-    column: Column, tableaux: Sequence[str] | None, splits: Sequence[str] | None
+    column: Column,
+    tableaux: Sequence[str] | None,
+    splits: Sequence[str] | None,
+    short: Sequence[str] = SHORT_TABLEAUX,
 ) -> list[tuple[Tableau, Splitting, str | Mapping[str, str]]]:
     """Pair every tableau with every splitting: those given, of the column file, or a short list.
 
@@ -24,6 +27,8 @@ def short_pairs(
         The column. Where its ``[advice]`` lists no splittings, its own ``[split]`` is taken.
     tableaux, splits : sequence of str, optional
         Names.
+    short : sequence of str
+        Tableaux of the short list.
 
     Returns
     -------
@@ -37,7 +42,7 @@ def short_pairs(
     """
     listed = column.advice
     if tableaux is None:
-        tableaux = SHORT_TABLEAUX if listed.tableaux == DEFAULT_TABLEAUX else listed.tableaux
+        tableaux = short if listed.tableaux == DEFAULT_TABLEAUX else listed.tableaux
     given: Sequence[Any] = splits if splits is not None else _splits(column)
     plain = {resolve(one).name: one for one in given if not isinstance(one, str)}
     return [
