@@ -10,7 +10,7 @@ from levelstride.cli.compare_table import show_comparison
 from levelstride.cli.executors import executor_for, usable_workers
 from levelstride.cli.kernels import prepare_kernels
 from levelstride.cli.map_table import show_map
-from levelstride.cli.options import ColumnFile, Json
+from levelstride.cli.options import Cluster, ColumnFile, Json, Out, Workers
 from levelstride.cli.resuming import Resumable
 
 if TYPE_CHECKING:
@@ -72,16 +72,9 @@ def compare(
         Literal["half", "full"] | None,
         Parameter(help="Slope gradient of the lowest layer; that of the column file by default."),
     ] = None,
-    out: Annotated[Path, Parameter(help="Folder for the files; made if missing.")] = Path(
-        "compare"
-    ),
-    workers: Annotated[
-        int | None, Parameter(help="Processes to share the work; one per core by default.")
-    ] = None,
-    cluster: Annotated[
-        str | None,
-        Parameter(help="Address of a Dask scheduler whose workers do the work instead."),
-    ] = None,
+    out: Out = Path("compare"),
+    workers: Workers = None,
+    cluster: Cluster = None,
     json: Json = False,
 ) -> None:
     """Put tableaux and splittings side by side: stable step, accuracy, damping and cost."""

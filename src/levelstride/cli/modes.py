@@ -11,7 +11,7 @@ from levelstride.cli.console import progress
 from levelstride.cli.executors import executor_for, usable_workers
 from levelstride.cli.kernels import prepare_kernels
 from levelstride.cli.modes_table import show_modes
-from levelstride.cli.options import ColumnFile, Json
+from levelstride.cli.options import Cluster, ColumnFile, Json
 
 
 def modes(
@@ -59,10 +59,7 @@ def modes(
     workers: Annotated[
         int | None, Parameter(help="Processes to share the work; one by default.")
     ] = None,
-    cluster: Annotated[
-        str | None,
-        Parameter(help="Address of a Dask scheduler whose workers do the work instead."),
-    ] = None,
+    cluster: Cluster = None,
     json: Json = False,
 ) -> None:
     """Show the normal modes of a column, and how far levels and a step distort them."""
