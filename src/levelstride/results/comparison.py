@@ -284,9 +284,10 @@ class Comparison:
     rows : tuple of ComparedRow
         One per tableau and splitting.
     cheapest : int or None
-        The row of lowest cost at its step.
+        The row of lowest cost at its step, one whose solve stays in its column if there is any.
     most_accurate : int or None
         The row of least error at the equal cost; without packet errors, of least frequency error.
+        Rows whose solve couples columns come after all others.
     undominated : tuple of int
         Rows between which cost and accuracy leave the choice.
     verdict : str

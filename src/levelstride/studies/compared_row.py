@@ -11,9 +11,7 @@ from levelstride.accuracy.by_kind import (
     StepWaveErrors,
     WaveErrorsAtStep,
     column_waves,
-    step_wave_errors,
 )
-from levelstride.accuracy.judge import StepJudge
 from levelstride.accuracy.wave_errors import ResolvedWaves, all_waves, long_enough
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
@@ -119,34 +117,82 @@ def find_row(item: CompareItem) -> RowFinding:
     column = unpacked(item.column)
     splitting, tableau = resolve(item.split), tableau_of(column, item.tableau)
     found = item.limit or brief_limit(column, splitting, tableau, item.split)
-    checker = StepChecker((column,), splitting, tableau)
-    judge = StepJudge(column_waves(column), splitting, tableau, column.advice)
-
-    def stable_anyway(step_s: float) -> StepCheck:
-        """Examine a step that is stable by the search: accuracy alone, if that holds."""
-        judged = judge.at(step_s)
-        if not judged.accurate:
-            return checker.examine(step_s)
-        return StepCheck(
-            None, judged.frequency_error, judged.amplitude_change_per_period, judged.ambiguous
-        )
-
+    waves = _Waves(column, splitting, tableau)
     accurate, advised = accurate_and_advised(
         found,
         safety=column.advice.safety,
         intervals_s=column.advice.divides_s,
-        check=checker.examine,
-        check_stable=stable_anyway,
+        check=waves.examine,
+        check_stable=lambda step_s: waves.examine(step_s, stable=True),
     )
     step_s = item.step_s or advised.step_s
     answer = RowFinding(found, accurate, advised)
     if step_s is None:
         return answer
-    stable = step_s == advised.step_s or (_within(found, step_s) and checker.stable(step_s))
-    errors = errors_at(column, splitting, tableau, step_s, stable=stable)
+    stable = step_s == advised.step_s or (_within(found, step_s) and waves.stable(step_s))
+    errors = waves.errors(step_s, stable=stable)
     if not (item.packets and stable):
         return replace(answer, errors=errors)
     return _with_packets(replace(answer, errors=errors), column, item)
+
+
+class _Waves:
+    """What steps do to the waves of a column.
+
+    Steps are judged as an advice judges them. As long as they are accurate, the same matched waves
+    tell both that and what the errors are.
+    """
+
+    def __init__(self, column: Column, splitting: Splitting, tableau: Tableau) -> None:
+        self._column, self._splitting, self._tableau = column, splitting, tableau
+        self._checker = StepChecker((column,), splitting, tableau)
+        self._matched = WaveErrorsAtStep(column_waves(column), splitting, tableau, column.advice)
+        self._seen: dict[float, StepWaveErrors] = {}
+        self._all_passed = True
+
+    def examine(self, step_s: float, *, stable: bool = False) -> StepCheck:
+        """Say what speaks against a step, which may be known to be stable."""
+        if self._all_passed:
+            passed = self._passed(step_s)
+            if passed is not None and (stable or self.stable(step_s)):
+                return passed
+            self._all_passed = False
+        return self._checker.examine(step_s)
+
+    def stable(self, step_s: float) -> bool:
+        """Whether no sampled wave grows more than is tolerated at this very step."""
+        return self._checker.stable(step_s)
+
+    def _passed(self, step_s: float) -> StepCheck | None:
+        """What is found at a step that is accurate beyond doubt; None at any other."""
+        try:
+            found = self._at(step_s)
+        except CalculationError:
+            return None
+        limits = self._column.advice
+        errors = gravity_errors(ErrorsAtStep(step_s=step_s, stable=True), found)
+        turned, changed = errors.frequency_error, errors.amplitude_change_per_period
+        good = (
+            errors.ambiguous == 0
+            and (turned or 0.0) <= limits.frequency_error
+            and abs(changed or 0.0) <= limits.amplitude_loss_per_period
+        )
+        return StepCheck(None, turned, changed) if good else None
+
+    def _at(self, step_s: float) -> StepWaveErrors:
+        if step_s not in self._seen:
+            self._seen[step_s] = self._matched.at(step_s)
+        return self._seen[step_s]
+
+    def errors(self, step_s: float, *, stable: bool) -> ErrorsAtStep:
+        """Say what one step does to resolved gravity waves and to sound."""
+        empty = ErrorsAtStep(step_s=step_s, stable=stable)
+        try:
+            found = self._at(step_s)
+            sound = sound_damping(self._column, self._splitting, self._tableau, step_s)
+        except CalculationError as error:
+            return replace(empty, problem=str(error))
+        return replace(gravity_errors(empty, found), sound=sound)
 
 
 @lru_cache(maxsize=4)
@@ -175,19 +221,6 @@ def brief_limit(
 
 def _within(found: Limit, step_s: float) -> bool:
     return found.unbounded or step_s <= (found.stable_step_s or 0.0) * (1 + 1e-9)
-
-
-def errors_at(
-    column: Column, splitting: Splitting, tableau: Tableau, step_s: float, *, stable: bool
-) -> ErrorsAtStep:
-    """Say what one step does to resolved gravity waves and to sound."""
-    empty = ErrorsAtStep(step_s=step_s, stable=stable)
-    try:
-        found = step_wave_errors(column, splitting, tableau, step_s, resolved_only=True)
-        sound = sound_damping(column, splitting, tableau, step_s)
-    except CalculationError as error:
-        return replace(empty, problem=str(error))
-    return replace(gravity_errors(empty, found), sound=sound)
 
 
 def gravity_errors(empty: ErrorsAtStep, found: StepWaveErrors) -> ErrorsAtStep:
