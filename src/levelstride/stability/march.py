@@ -119,7 +119,7 @@ class March:
         known = self._steppers.get(key)
         if known is None:
             parts = [problem.parts for problem in problems]
-            known = LaneStepper(parts, problems[0].tableau, dt)
+            known = LaneStepper(parts, problems[0].table, dt)
             self._steppers[key] = known
             return known
         return known.at_step(dt)

@@ -16,6 +16,7 @@ from levelstride.operator.wave import Wave
 from levelstride.results.comparison import ErrorsAtStep, GravityWave, SoundDamping
 from levelstride.results.dataset import Limit
 from levelstride.results.work_precision import PacketSummary, WorkPrecision
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.studies.accurate_step import accurate_and_advised
@@ -24,7 +25,6 @@ from levelstride.studies.limit import limit
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.work_item import StepChecker
 from levelstride.studies.work_precision import work_precision
-from levelstride.tableaux.tableau import Tableau
 
 SAME_STEP: Final = 0.05
 """A step of the packet's curve within this share of another stands for it [1]."""
@@ -139,7 +139,7 @@ def unpacked(packed: bytes) -> Column:
 
 
 def brief_limit(
-    column: Column, splitting: Splitting, tableau: Tableau, split: str | Mapping[str, str]
+    column: Column, splitting: Splitting, tableau: TimeScheme, split: str | Mapping[str, str]
 ) -> Limit:
     """Search the stable step and what bites; where no step is stable, say why."""
     try:
@@ -160,7 +160,7 @@ def _within(found: Limit, step_s: float) -> bool:
 
 
 def errors_at(
-    column: Column, splitting: Splitting, tableau: Tableau, step_s: float, *, stable: bool
+    column: Column, splitting: Splitting, tableau: TimeScheme, step_s: float, *, stable: bool
 ) -> ErrorsAtStep:
     """Say what one step does to resolved gravity waves and to sound."""
     empty = ErrorsAtStep(step_s=step_s, stable=stable)
@@ -200,7 +200,7 @@ def gravity_errors(empty: ErrorsAtStep, found: StepWaveErrors) -> ErrorsAtStep:
 
 
 def sound_damping(
-    column: Column, splitting: Splitting, tableau: Tableau, step_s: float
+    column: Column, splitting: Splitting, tableau: TimeScheme, step_s: float
 ) -> SoundDamping | None:
     """Say what one step does to sound; None where no sound is found."""
     waves = _sound_waves(column)

@@ -3,8 +3,8 @@
 from dataclasses import dataclass
 
 from levelstride.column.column import Advice
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
-from levelstride.tableaux.tableau import Tableau
 
 HOUR_S = 3600.0
 
@@ -30,7 +30,7 @@ class StepCost:
 
 
 def step_cost(
-    tableau: Tableau, splitting: Splitting, weights: Advice, *, reference: bool = False
+    tableau: TimeScheme, splitting: Splitting, weights: Advice, *, reference: bool = False
 ) -> StepCost:
     """Count what one step needs.
 
@@ -39,7 +39,7 @@ def step_cost(
 
     Parameters
     ----------
-    tableau : Tableau
+    tableau : TimeScheme
         The time scheme.
     splitting : Splitting
         The splitting.
