@@ -102,6 +102,16 @@ class ProgramScheme:
         return np.asarray(np.abs(scalar_factors(self.program, slow=z)).max(axis=-1))
 
     @cached_property
+    def computational_factors(self) -> tuple[float, ...]:
+        """What a step leaves of each computational mode as dt vanishes, descending [1].
+
+        One is undamped; a scheme of one level has none.
+        """
+        factors = scalar_factors(self.program, slow=np.zeros(1))[0]
+        others = np.delete(factors, np.argmin(np.abs(factors - 1.0)))
+        return tuple(sorted((float(abs(one)) for one in others), reverse=True))
+
+    @cached_property
     def slow_order(self) -> int:
         """Order for slow terms alone, measured: how closely a factor comes to exp(z)."""
         z = 1j * np.array([0.08, 0.04])

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from levelstride.operator.state import FIELDS, Layout
 from levelstride.operator.wave_basis import KINDS, wave_basis
 from levelstride.stability.powers import power_peak
+from levelstride.stability.time_modes import mode_in_time
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem
 
@@ -46,12 +47,15 @@ class CriticalState:
         [1/s]
     period_s : float or None
         Period of the fastest growing state [s]; None where it does not turn.
+    time_mode : str or None
+        ``physical``, ``computational`` or ``merged`` with a scheme of several time levels.
     """
 
     basis: Matrix
     vector: Matrix
     growth_per_s: float
     period_s: float | None
+    time_mode: str | None = None
 
 
 @dataclass(frozen=True)
@@ -110,7 +114,9 @@ def critical_state(problem: WaveProblem, step: float, tolerance: Tolerance) -> C
     basis = basis[:, singular > 1e-8 * singular[0]]
     turn = abs(float(np.angle(values[fastest])))
     period = 2 * np.pi * dt / turn if turn > 1e-9 else None
-    return CriticalState(basis, _normalised(newest[:, fastest]), float(growth[fastest]), period)
+    vector = _normalised(newest[:, fastest])
+    mode = mode_in_time(problem.parts, problem.tableau, dt, complex(values[fastest]), vector)
+    return CriticalState(basis, vector, float(growth[fastest]), period, mode)
 
 
 def _most_amplified(

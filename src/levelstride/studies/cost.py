@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 
 from levelstride.column.column import Advice
-from levelstride.schemes.scheme import TimeScheme
+from levelstride.schemes.scheme import ProgramScheme, TimeScheme
 from levelstride.splitting.splitting import Splitting
 
 HOUR_S = 3600.0
@@ -35,7 +35,9 @@ def step_cost(
     """Count what one step needs.
 
     Every explicit evaluation asks for one exchange with neighbours, every solve for one more where
-    the divergence is implicit: pressure then sees the new wind.
+    the divergence is implicit: pressure then sees the new wind. Every substep of a time-split
+    scheme exchanges pressure for the new wind and the new wind for pressure; its explicit gradients
+    and divergences count with its solve.
 
     Parameters
     ----------
@@ -60,6 +62,9 @@ def step_cost(
     evaluations = tableau.explicit_evaluations if evaluates else 0
     sees_neighbours = any(treatments[term] == "implicit" for term in _NEEDS_NEIGHBOURS)
     exchanges = evaluations + (solves if sees_neighbours else 0)
+    if isinstance(tableau, ProgramScheme) and tableau.substeps:
+        substeps = tableau.program.evaluations("pressure")
+        exchanges += substeps if sees_neighbours else 2 * substeps
     weighted = (
         evaluations * weights.cost_explicit
         + solves * weights.cost_solve
