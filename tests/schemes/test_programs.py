@@ -1,9 +1,12 @@
 """Baselines on columns: against steps written out by hand, and by their observed orders."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
 from levelstride.errors import InputError
+from levelstride.operator.bands import Banded
 from levelstride.operator.energy import energy_weights
 from levelstride.operator.setting import layout_of
 from levelstride.operator.wave import Wave
@@ -14,6 +17,7 @@ from levelstride.splitting.parts import split_operator
 from levelstride.stability.amplification import energy_parts
 from levelstride.stability.local import LocalScreen
 from levelstride.stepper.any_scheme import stepper_of
+from levelstride.stepper.lane_schemes import ProgramLanes
 from levelstride.stepper.program_stepper import roles
 from levelstride.tableaux.audit import audit
 from levelstride.tableaux.tableau import Tableau
@@ -92,6 +96,41 @@ def test_step_of_states_is_the_matrix_times_them(name):
     assert np.array_equal(again.matrix(), matrix)
     with pytest.raises(ValueError, match="expected"):
         stepper.step(q[:-1])
+
+
+@pytest.mark.parametrize("staggering", STAGGERINGS)
+@pytest.mark.parametrize("split", SPLITS)
+@pytest.mark.parametrize("name", PROGRAMS)
+def test_lanes_march_as_the_stepper_steps(name, split, staggering):
+    scheme, parts = find_scheme(name), parts_of(split, staggering)
+    stepper, lanes = stepper_of(parts, scheme, 1.3), ProgramLanes([parts, parts], scheme, 1.3)
+    state = np.random.default_rng(0).standard_normal((stepper.size, 1))
+    marched = np.ascontiguousarray(np.repeat(state, 2, axis=1)).astype(lanes.dtype)
+    for _ in range(4):
+        state = stepper.step(state)
+    lanes.march(marched, 4)
+    assert np.abs(marched - state).max() < 1e-12 * np.abs(state).max()
+    with pytest.raises(ValueError, match="expected"):
+        lanes.march(marched[:-1].copy(), 1)
+
+
+@pytest.mark.parametrize("name", ["Time-split RK3", "Leapfrog-trapezoid RAW"])
+def test_terms_after_the_step_follow_it(name):
+    scheme, parts = find_scheme(name), parts_of()
+    n = parts.layout.size
+    forward = Banded((0,), np.linspace(-0.3, 0.0, n)[None, :])
+    backward = Banded((0,), np.linspace(0.0, -0.5, n)[None, :])
+    with_after = replace(parts, after=forward, after_implicit=backward)
+    plain, both = (stepper_of(one, scheme, 0.9).matrix() for one in (parts, with_after))
+    factor = np.diag(1 + 0.9 * forward.diagonals[0]) @ np.diag(
+        1 / (1 - 0.9 * backward.diagonals[0])
+    )
+    assert np.abs(both[:n] - factor @ plain[:n]).max() < 1e-12 * np.abs(plain).max()
+    assert np.array_equal(both[n:], plain[n:])
+    lanes = ProgramLanes([with_after], scheme, 0.9)
+    marched = np.eye(both.shape[0])[:, [3]].copy()
+    lanes.march(marched, 2)
+    assert np.abs(marched[:, 0] - (both @ both)[:, 3]).max() < 1e-12 * np.abs(both @ both).max()
 
 
 @pytest.mark.parametrize("name", PROGRAMS)

@@ -100,9 +100,10 @@ class ColumnVerdict:
             splitting = splitting.without_implicit()
         self.column, self.splitting, self.tableau = column, splitting, tableau
         self.largest_s = largest_s
-        # full matrices are asked at every step looked at only where unknowns are few, and where the
-        # scheme is no tableau
-        self.marches = isinstance(tableau, Tableau) and layout_of(column).size > FEW_UNKNOWNS
+        # full matrices are asked at every step looked at only where unknowns are few; those of
+        # programs cost several times as much
+        few = FEW_UNKNOWNS if isinstance(tableau, Tableau) else FEW_UNKNOWNS // 2
+        self.marches = layout_of(column).size > few
         self._problems: dict[tuple[int, float], WaveProblem] = {}
         kappas = [float(kappa) for kappa in sampled_wavenumbers(column.horizontal)]
         self.search = StepSearch(self.problem, len(column.airs), kappas, largest_s)
@@ -219,7 +220,7 @@ class ColumnVerdict:
             return None
         self.search.largest_s = self.largest_s
         try:
-            if self.marches and layout_of(self.column).size > CERTAIN_UNKNOWNS:
+            if layout_of(self.column).size > CERTAIN_UNKNOWNS:
                 return strict_step(self.search, found.bracket)
             bracket = self.search.run(lambda problem, dt: problem.strict(dt), refine=False)
         except CalculationError:
