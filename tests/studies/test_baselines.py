@@ -86,7 +86,7 @@ def test_knobs_of_the_column_file_are_turned(still):
 def test_a_knob_map_varies_substeps(still):
     found = levelstride.knob_map(
         still,
-        {"scheme.substeps": "1:4:2", "scheme.divergence_damping": [0.0, 0.1]},
+        vary={"scheme.substeps": "1:4:2", "scheme.divergence_damping": [0.0, 0.1]},
         tableaux=["Time-split RK3"],
         splits=["sound+buoyancy"],
     )

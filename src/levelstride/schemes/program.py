@@ -77,6 +77,16 @@ class Program:
         asked = {v for row in self.rows for p, v, _ in row.tendencies if p == part}
         return len(asked - solved) if part == "fast" else len(asked)
 
+    def needed(self, part: str) -> int:
+        """Number of tendencies of one part that a model evaluates in a step.
+
+        A time level that was the level before it in the last step, unchanged, brings the tendency
+        that was evaluated then.
+        """
+        asked = {v for row in self.rows for p, v, _ in row.tendencies if p == part}
+        kept = {k for k in range(1, self.levels) if self.results[k] == k - 1}
+        return len({v for v in asked if v not in kept} | {0 for v in asked if v in kept})
+
     @property
     def solves(self) -> int:
         """Number of systems solved."""

@@ -68,13 +68,8 @@ class ProgramScheme:
 
     @property
     def explicit_evaluations(self) -> int:
-        """Slow tendencies evaluated in a step."""
-        return self.program.evaluations("slow")
-
-    @property
-    def sound_exchanges(self) -> int:
-        """Pressure gradients and divergences evaluated in the substeps of a step."""
-        return self.program.evaluations("wind") + self.program.evaluations("pressure")
+        """Slow tendencies that a model evaluates in a step, those of older levels being kept."""
+        return self.program.needed("slow")
 
     @property
     def implicit_solves(self) -> int:
