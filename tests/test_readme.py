@@ -35,6 +35,7 @@ TABLES = {
     "[diffusion]": "DiffusionTable",
     "[divergence_damping]": "DivergenceDampingTable",
     "[rotation]": "RotationTable",
+    "[scheme]": "SchemeTable",
     "[advice]": "AdviceTable",
 }
 """Tables of a column file, and how the names of their models end."""

@@ -15,8 +15,8 @@ from levelstride.column.column import Advice, Column
 from levelstride.operator.sampled_waves import sampled_wavenumbers
 from levelstride.operator.wave import Wave
 from levelstride.results.wave_errors import KindErrors, StepWaveErrors, WorstWave
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
-from levelstride.tableaux.tableau import Tableau
 
 __all__ = [
     "KindErrors",
@@ -40,7 +40,7 @@ KIND_OF: Final[Mapping[str, str]] = {
 def step_wave_errors(
     column: Column,
     splitting: Splitting,
-    tableau: Tableau,
+    tableau: TimeScheme,
     dt: float,
     *,
     resolved_only: bool = False,
@@ -54,7 +54,7 @@ def step_wave_errors(
     ----------
     column : Column
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     dt : float
         Step [s].
     resolved_only : bool
@@ -92,7 +92,7 @@ class WaveErrorsAtStep:
     waves : sequence of ResolvedWaves
         With all modes, or the resolved gravity waves alone.
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     limits : Advice
         The accuracy limits by which the worst wave is chosen.
     """
@@ -101,7 +101,7 @@ class WaveErrorsAtStep:
         self,
         waves: Sequence[ResolvedWaves],
         splitting: Splitting,
-        tableau: Tableau,
+        tableau: TimeScheme,
         limits: Advice,
     ) -> None:
         if tableau.kind == "explicit":

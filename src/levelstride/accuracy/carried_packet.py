@@ -15,7 +15,7 @@ from levelstride.column.column import Column
 from levelstride.errors import CalculationError
 from levelstride.results.wording import number
 from levelstride.results.work_precision import PacketSummary
-from levelstride.stepper.imex import Stepper
+from levelstride.stepper.any_scheme import AnyStepper, first_steps, levels_of
 
 Matrix = NDArray[Any]
 
@@ -103,7 +103,7 @@ def exact_packets(column: Column, time_s: float) -> tuple[tuple[ExactPacket, ...
     return tuple(runs), tuple(left_out)
 
 
-def march(stepper: Stepper, state: Matrix, steps: int) -> Matrix:
+def march(stepper: AnyStepper, state: Matrix, steps: int) -> Matrix:
     """Take many equal steps of one state.
 
     One by one where they are few for the number of unknowns; else the matrix of one step is squared
@@ -111,7 +111,8 @@ def march(stepper: Stepper, state: Matrix, steps: int) -> Matrix:
 
     Parameters
     ----------
-    stepper : Stepper
+    stepper : AnyStepper
+        One that needs more time levels takes its first steps by its own start.
     state : ndarray, shape (nstate,)
     steps : int
 
@@ -123,6 +124,7 @@ def march(stepper: Stepper, state: Matrix, steps: int) -> Matrix:
     lanes = np.array(state, dtype=np.complex128)[:, None]
     if stepper.dtype.kind == "f":  # real and imaginary part are two states of a real operator
         lanes = lanes.view(np.float64)
+    lanes, steps = first_steps(stepper, lanes, steps)
     squarings = _squarings(stepper, steps)
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
         if squarings is None:
@@ -136,12 +138,12 @@ def march(stepper: Stepper, state: Matrix, steps: int) -> Matrix:
                 power, steps = power @ power, steps // 2
             for _ in range(steps):
                 lanes = power @ lanes
-    return np.ascontiguousarray(lanes).view(np.complex128)[:, 0]
+    return np.ascontiguousarray(lanes).view(np.complex128)[: stepper.layout.size, 0]
 
 
-def _squarings(stepper: Stepper, steps: int) -> int | None:
+def _squarings(stepper: AnyStepper, steps: int) -> int | None:
     """How often to square the matrix of a step, or None to take the steps one by one."""
-    n = stepper.layout.size
+    n = stepper.layout.size * levels_of(stepper)
     arithmetic = 3.5 if stepper.dtype.kind == "c" else 1.0
     step_s = STEPPING_S[0] + STEPPING_S[1] * arithmetic * n
 

@@ -12,8 +12,8 @@ from levelstride.accuracy.by_kind import WaveErrorsAtStep
 from levelstride.accuracy.matched_errors import MatchedErrors
 from levelstride.accuracy.wave_errors import ResolvedWaves, StepErrors, WaveErrors
 from levelstride.column.column import Advice
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
-from levelstride.tableaux.tableau import Tableau
 
 
 @dataclass(frozen=True, slots=True)
@@ -44,7 +44,7 @@ class StepJudge:
     waves : sequence of ResolvedWaves
         Resolved gravity waves.
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     limits : Advice
         The accuracy limits.
 
@@ -60,7 +60,7 @@ class StepJudge:
         self,
         waves: Sequence[ResolvedWaves],
         splitting: Splitting,
-        tableau: Tableau,
+        tableau: TimeScheme,
         limits: Advice,
     ) -> None:
         self._limits = limits

@@ -11,9 +11,9 @@ from numpy.typing import NDArray
 from scipy.linalg import eig
 
 from levelstride.errors import CalculationError
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.parts import Parts
-from levelstride.stepper.imex import Stepper
-from levelstride.tableaux.tableau import Tableau
+from levelstride.stepper.any_scheme import AnyStepper, stepper_of, with_history
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -36,6 +36,9 @@ MOST_HALVINGS = 6
 
 NEAR_TURN, LARGEST_TURN = 1.0, 2.0
 """Turns between neighbouring steps [rad]: that aimed at, and the largest that is unambiguous."""
+
+LARGEST_DECAY = 7.0
+"""Decay in one step beyond exp of minus this is taken for that where time levels are made up."""
 
 STRIDE = 0.25
 """Beyond the first turns a factor varies over steps of this share of the step."""
@@ -105,16 +108,19 @@ class Followed:
 class _Front:
     """Modes at one step on their way.
 
-    ``pairs.value`` are eigenvalues of R there, ``rate`` is how fast they turned so far [rad/s].
+    ``pairs.value`` are eigenvalues of R there, ``rate`` is how fast they turned so far [rad/s] and
+    ``growth`` how fast they grew [1/s].
     """
 
     step: float
     pairs: Pairs
     turn: Array
     rate: Array
+    growth: Array
 
     def select(self, mask: Mask) -> _Front:
-        return _Front(self.step, self.pairs.select(mask), self.turn[mask], self.rate[mask])
+        pairs = self.pairs.select(mask)
+        return _Front(self.step, pairs, self.turn[mask], self.rate[mask], self.growth[mask])
 
 
 class Follower:
@@ -124,7 +130,7 @@ class Follower:
     ----------
     parts : Parts
         The operator by treatment, in energy coordinates.
-    tableau : Tableau
+    tableau : TimeScheme
     most_looks : int
         Steps at which eigenvalues may be found on the way to one step.
 
@@ -149,10 +155,10 @@ class Follower:
     condition by left and right eigenvectors; textbook).
     """
 
-    def __init__(self, parts: Parts, tableau: Tableau, *, most_looks: int = MOST_LOOKS) -> None:
+    def __init__(self, parts: Parts, tableau: TimeScheme, *, most_looks: int = MOST_LOOKS) -> None:
         self._parts, self._tableau, self._most_looks = parts, tableau, most_looks
         self._most = most_looks
-        self._stepper: Stepper | None = None
+        self._stepper: AnyStepper | None = None
         self._seen: dict[float, Pairs] = {}
 
     def follow(self, exponent: Complex, right: Matrix, left: Matrix, dt: float) -> Followed:
@@ -177,7 +183,8 @@ class Follower:
         radius = float(np.abs(last.value).max())
         self._most = self._most_looks if radius <= USELESS else min(self._most_looks, FEW_LOOKS)
         one = np.ones(exponent.size, dtype=np.complex128)
-        start = _Front(0.0, Pairs(one, right, left), np.zeros(exponent.size), exponent.imag)
+        still, pairs = np.zeros(exponent.size), Pairs(one, right, left)
+        start = _Front(0.0, pairs, still, exponent.imag, exponent.real)
         end, matched = self._reach(start, dt, 0)
         missing = np.where(matched, 1.0, np.nan)
         return Followed(
@@ -200,13 +207,18 @@ class Follower:
             None where the space that they span does not decide.
         """
         found = self._pairs(dt)
+        still = np.zeros(right.shape[1])
+        front = _Front(
+            0.0, Pairs(np.ones(still.size, dtype=np.complex128), right, left), still, still, still
+        )
+        right, left = self._lifted(front, dt)
         overlap = np.sum((left.conj().T @ found.right) * (found.left.conj().T @ right).T, axis=0)
         best = np.argsort(-np.abs(overlap))[: right.shape[1]]
         return found.value[best] if np.all(np.abs(overlap[best] - 1) <= DOUBT) else None
 
-    def _at(self, step: float) -> Stepper:
+    def _at(self, step: float) -> AnyStepper:
         if self._stepper is None:
-            self._stepper = Stepper(self._parts, self._tableau, step)
+            self._stepper = stepper_of(self._parts, self._tableau, step)
         elif self._stepper.dt != step:
             self._stepper = self._stepper.at_step(step)
         return self._stepper
@@ -244,9 +256,8 @@ class Follower:
     def _leap(self, front: _Front, step: float) -> tuple[_Front, Mask]:
         """Match modes with eigenvalues at another step; say which match is sure."""
         found = self._pairs(step)
-        overlap = (front.pairs.left.conj().T @ found.right) * (
-            found.left.conj().T @ front.pairs.right
-        ).T
+        right, left = self._lifted(front, step)
+        overlap = (left.conj().T @ found.right) * (found.left.conj().T @ right).T
         best = np.argmax(np.abs(overlap), axis=1)
         near = np.abs(overlap[np.arange(best.size), best] - 1) <= DOUBT
         sure = near & (np.bincount(best[near], minlength=found.value.size)[best] <= 1)
@@ -256,7 +267,28 @@ class Follower:
         sure &= faint | np.isfinite(turn)
         turn = np.where(faint, np.nan, turn)
         rate = np.where(np.isfinite(turn), (turn - front.turn) / (step - front.step), front.rate)
-        return _Front(step, chosen, turn, rate), sure
+        with np.errstate(divide="ignore"):
+            growth = np.log(np.abs(chosen.value)) / step
+        return _Front(step, chosen, turn, rate, growth), sure
+
+    def _lifted(self, front: _Front, step: float) -> tuple[Matrix, Matrix]:
+        """Modes of a front and their duals at a step, with the time levels before it.
+
+        A scheme of several levels sees a mode as it has turned and grown so far; the duals are
+        scaled so that their product with it is one. The exact duals weigh the newest level alone.
+        """
+        right, left = front.pairs.right, front.pairs.left
+        levels, size = self._tableau.levels, self._parts.layout.size
+        if levels == 1:
+            return right, left
+        turned = np.where(np.isfinite(front.rate), front.rate, 0.0)
+        growth = np.maximum(front.growth, -LARGEST_DECAY / step)
+        right = with_history(right[:size], np.exp((growth + 1j * turned) * step), levels)
+        if left.shape[0] == size:
+            left = np.concatenate([left, np.zeros(((levels - 1) * size, left.shape[1]))])
+        product = np.sum(left.conj() * right, axis=0)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            return right, left / product.conj()
 
     def _turns(self, front: _Front, step: float, quotient: Complex, value: Complex) -> Array:
         """Phases of eigenvalues on the branch that continues those of the front; NaN if unsure."""
@@ -276,8 +308,9 @@ class Follower:
         fastest = float(np.abs(front.rate).max())
         at = front.step
         while (at := max(at + NEAR_TURN / max(fastest, 1e-300), (1 + STRIDE) * at)) < step:
-            stepped = self._at(at).step(front.pairs.right)
-            yield np.sum(front.pairs.left.conj() * stepped, axis=0).astype(np.complex128)
+            right, left = self._lifted(front, at)
+            stepped = self._at(at).step(right)
+            yield np.sum(left.conj() * stepped, axis=0).astype(np.complex128)
         yield last
 
 
@@ -288,7 +321,8 @@ def _joined(front: _Front, more: _Front, places: NDArray[np.intp], step: float) 
         front.pairs.right.astype(np.complex128),
         front.pairs.left.astype(np.complex128),
     )
-    turn, rate = front.turn.copy(), front.rate.copy()
+    turn, rate, growth = front.turn.copy(), front.rate.copy(), front.growth.copy()
     value[places], turn[places], rate[places] = more.pairs.value, more.turn, more.rate
+    growth[places] = more.growth
     right[:, places], left[:, places] = more.pairs.right, more.pairs.left
-    return _Front(step, Pairs(value, right, left), turn, rate)
+    return _Front(step, Pairs(value, right, left), turn, rate, growth)

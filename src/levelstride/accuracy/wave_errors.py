@@ -16,10 +16,10 @@ from levelstride.operator.bands import Banded
 from levelstride.operator.setting import layout_of
 from levelstride.operator.terms import assemble
 from levelstride.operator.wave import Wave
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
-from levelstride.stepper.imex import Stepper
-from levelstride.tableaux.tableau import Tableau
+from levelstride.stepper.any_scheme import AnyStepper, levels_of, stepper_of, with_history
 
 Array = NDArray[np.float64]
 Matrix = NDArray[Any]
@@ -196,15 +196,15 @@ class StepErrors:
     ----------
     waves : sequence of ResolvedWaves
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     """
 
     def __init__(
-        self, waves: Sequence[ResolvedWaves], splitting: Splitting, tableau: Tableau
+        self, waves: Sequence[ResolvedWaves], splitting: Splitting, tableau: TimeScheme
     ) -> None:
         self._waves = [wave for wave in waves if wave.modes.frequency.size]
         self._parts = [wave.parts(splitting) for wave in self._waves]
-        self._steppers: list[Stepper] = []
+        self._steppers: list[AnyStepper] = []
         self._tableau = tableau
 
     def at(self, dt: float) -> WaveErrors:
@@ -222,12 +222,12 @@ class StepErrors:
         if self._steppers:
             self._steppers = [stepper.at_step(dt) for stepper in self._steppers]
         else:
-            self._steppers = [Stepper(parts, self._tableau, dt) for parts in self._parts]
+            self._steppers = [stepper_of(parts, self._tableau, dt) for parts in self._parts]
         return [self._one(k, dt) for k in range(len(self._waves))]
 
     def _one(self, k: int, dt: float) -> WaveErrors:
         wave = self._waves[k]
-        errors = mode_errors(wave.modes, self._steppers[k].step(wave.modes.vectors), dt)
+        errors = mode_errors(wave.modes, _stepped(self._steppers[k], wave.modes, dt), dt)
         order = wave.modes.vertical_order
         turned = int(np.argmax(errors.frequency_error))
         changed = int(np.argmax(np.abs(errors.amplitude_change_per_period)))
@@ -240,6 +240,13 @@ class StepErrors:
             amplitude_order=int(order[changed]),
             nwave=order.size,
         )
+
+
+def _stepped(stepper: AnyStepper, modes: Modes, dt: float) -> Matrix:
+    """One step of the modes, the exact modes standing for the time levels before."""
+    factors = np.exp((modes.growth + 1j * modes.frequency) * dt)
+    history = with_history(modes.vectors, factors, levels_of(stepper))
+    return stepper.step(history)[: stepper.layout.size]
 
 
 def worst_of(found: Iterable[WaveErrors]) -> WaveErrors:
@@ -264,7 +271,7 @@ def resolved_gravity_errors(
     column: Column,
     air: Background,
     splitting: Splitting,
-    tableau: Tableau,
+    tableau: TimeScheme,
     dt: float,
     waves: Iterable[Wave],
 ) -> WaveErrors:
@@ -278,7 +285,7 @@ def resolved_gravity_errors(
     column : Column
     air : Background
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     dt : float
         Step [s].
     waves : iterable of Wave

@@ -16,6 +16,7 @@ LONGEST_COEFFICIENT = 12
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
+    from levelstride.schemes.scheme import TimeScheme
     from levelstride.tableaux.audit import Audit
     from levelstride.tableaux.tableau import Tableau
 
@@ -34,22 +35,43 @@ def tableaux(
     json: Json = False,
 ) -> None:
     """List the IMEX tableaux, or show one with its audit."""
+    from levelstride.cli.baselines_table import show_baselines
     from levelstride.results.export import to_json
+    from levelstride.schemes.lookup import find_scheme, scheme_names
     from levelstride.tableaux.lookup import find, names
     from levelstride.tableaux.user_file import read_file
 
     own = read_file(file) if file is not None else ()
     if name is not None:
-        _show_one(find(name, own), json=json)
+        _show_scheme(find_scheme(name, among=own), json=json)
         return
-    listed = [*own, *map(find, names())]
+    listed, baselines = [*own, *map(find, names())], [*map(find_scheme, scheme_names())]
     if json:
-        sys.stdout.write(to_json([_summary(tableau) for tableau in listed]))
+        sys.stdout.write(to_json([_summary(one) for one in (*listed, *baselines)]))
     else:
         _show_list(listed)
+        show_baselines(baselines)
 
 
-def _summary(tableau: "Tableau") -> dict[str, Any]:
+def _show_scheme(scheme: "TimeScheme", *, json: bool) -> None:
+    from levelstride.cli.baselines_table import show_program
+    from levelstride.results.export import to_json
+    from levelstride.schemes.scheme import ProgramScheme
+
+    if not isinstance(scheme, ProgramScheme):
+        _show_one(scheme, json=json)
+    elif json:
+        sys.stdout.write(to_json(_summary(scheme)))
+    else:
+        show_program(scheme)
+
+
+def _summary(tableau: "TimeScheme") -> dict[str, Any]:
+    from levelstride.cli.baselines_table import program_summary
+    from levelstride.schemes.scheme import ProgramScheme
+
+    if isinstance(tableau, ProgramScheme):
+        return program_summary(tableau)
     return {
         "name": tableau.name,
         "aliases": tableau.aliases,

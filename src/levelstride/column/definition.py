@@ -302,6 +302,20 @@ class RotationTable(Table):
     latitude_deg: float | None = Field(default=None, ge=-90.0, le=90.0)
 
 
+def _whole(value: object) -> object:
+    return int(value) if isinstance(value, float) and value.is_integer() else value
+
+
+class SchemeTable(Table):
+    """Knobs of the baselines; each has those that it names."""
+
+    substeps: Annotated[int, BeforeValidator(_whole), Field(ge=1, le=60)] | None = None
+    off_centring: float | None = Field(default=None, ge=0.0, le=1.0)
+    divergence_damping: float | None = Field(default=None, ge=0.0, le=1.0)
+    filter: float | None = Field(default=None, ge=0.0, le=0.5)
+    filter_share: float | None = Field(default=None, ge=0.0, le=1.0)
+
+
 class AdviceTable(Table):
     """What is asked of the advice."""
 
@@ -343,6 +357,7 @@ class Definition(Table):
     rotation: RotationTable | None = None
     reference: OneAir | None = None
     split: SplitTable | None = None
+    scheme: SchemeTable | None = None
     advice: AdviceTable = AdviceTable()
 
 

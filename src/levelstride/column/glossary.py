@@ -73,6 +73,12 @@ _MEANINGS: Final = {
     "form": "Which divergence is damped",
     "coriolis_per_s": "Coriolis parameter f [1/s]; this or latitude_deg",
     "latitude_deg": "Latitude [degrees]; this or coriolis_per_s",
+    # knobs of time schemes
+    "substeps": "Substeps of the last stage of the time-split scheme; leapfrog stages of a step",
+    "off_centring": "Off-centring of trapezoidal terms: 0 is centred, 1 backward Euler [1]",
+    "filter": "Coefficient of the time filter of leapfrog [1]",
+    "filter_share": "Share of the filter that the middle time level takes: 1 is the classical one, "
+    "0.5 conserves the mean of three levels [1]",
     # advice
     "tableaux": "IMEX tableaux to try",
     "splits": "Splittings to try",
@@ -94,6 +100,7 @@ _OWN_MEANINGS: Final = {
     "SoundingAir.file": "CSV file, relative to the column file, with the columns height_m or "
     "pressure_pa, temperature_k and optionally wind_m_per_s",
     "SoundingAir.heights_m": "Altitudes of the rows above sea level [m], instead of a file",
+    "SchemeTable.divergence_damping": "Forward extrapolation of pressure in the substeps [1]",
     "UpdraftTable.speed_m_per_s": "Peak W of W(z) = W sin(pi z/top) [m/s]; this or heights_m",
 }
 

@@ -56,6 +56,9 @@ class Bites:
         Horizontal wavelength along one axis, 2 pi over the wavenumber [m].
     period_s : float or None
         Period as the step sees it [s]; None where it does not oscillate.
+    time_mode : str or None
+        Of a scheme of several time levels: ``physical``, ``computational``, or ``merged`` where
+        both have the same factor; None for all others.
     shortest_horizontal : bool
         Whether it is the shortest wave that the grid carries, of two cells.
     steepest_horizontal : bool
@@ -83,6 +86,7 @@ class Bites:
     wavelength_layers: float | None = None
     wavelength_m: float | None = None
     period_s: float | None = None
+    time_mode: str | None = None
     shortest_horizontal: bool = False
     steepest_horizontal: bool = False
     shortest_vertical: bool = False

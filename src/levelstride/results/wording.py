@@ -87,6 +87,8 @@ def wave(bites: Bites) -> str:
     if bites.kind in _ROW_KINDS:
         return f"{bites.kind} in {layers(bites)}"
     name = kind_name(bites.kind)
+    if bites.time_mode == "computational":
+        name = f"computational mode in time, {name}"
     length = f" of {metres(bites.wavelength_m)}" if bites.wavelength_m is not None else ""
     return f"{name}{length}, {layers(bites)}"
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from levelstride.column.air import Background
 from levelstride.column.column import Column
@@ -13,6 +13,8 @@ from levelstride.operator.state import Layout
 from levelstride.operator.terms import assemble
 from levelstride.operator.wave import Wave
 from levelstride.splitting.splitting import Splitting
+
+BEYOND_REFERENCE = "beyond-reference"
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -26,6 +28,11 @@ class Parts:
     layout : Layout
     implicit_terms : frozenset of str
         Names of the fast terms that are not zero on this column.
+    slow_terms : mapping of str to Banded
+        What the slow part is made of, by term; what implicit terms on the air have beyond those on
+        a reference state is `BEYOND_REFERENCE`. Empty where it is not known.
+    fast_terms : mapping of str to Banded
+        The same for the fast part.
     """
 
     slow: Banded
@@ -34,6 +41,8 @@ class Parts:
     after_implicit: Banded
     layout: Layout
     implicit_terms: frozenset[str]
+    slow_terms: Mapping[str, Banded] = field(default_factory=dict)
+    fast_terms: Mapping[str, Banded] = field(default_factory=dict)
 
     @property
     def whole(self) -> Banded:
@@ -80,10 +89,13 @@ def sort_terms(
 
     slow = gather("explicit", terms)
     fast = gather("implicit", on_reference)
+    slow_terms = {name: terms[name] for name in splitting.terms("explicit")}
     if on_reference is not terms:
         slow = (slow + gather("implicit", terms) - fast).trimmed()
+        slow_terms[BEYOND_REFERENCE] = (gather("implicit", terms) - fast).trimmed()
     active = frozenset(
         name for name in splitting.terms("implicit") if not on_reference[name].is_zero
     )
     after, after_implicit = gather("after-step", terms), gather("after-step-implicit", terms)
-    return Parts(slow, fast, after, after_implicit, layout, active)
+    fast_terms = {name: on_reference[name] for name in splitting.terms("implicit")}
+    return Parts(slow, fast, after, after_implicit, layout, active, slow_terms, fast_terms)

@@ -2,16 +2,19 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
+from levelstride.schemes.scheme import ProgramScheme, TimeScheme
 from levelstride.splitting.parts import Parts
-from levelstride.stepper.imex import Stepper
+from levelstride.stepper.any_scheme import stepper_of
 from levelstride.tableaux.tableau import Tableau
 
 Matrix = NDArray[Any]
+Complex = NDArray[np.complex128]
 
 
 def energy_parts(parts: Parts, weights: NDArray[np.float64]) -> Parts:
@@ -36,18 +39,23 @@ def energy_parts(parts: Parts, weights: NDArray[np.float64]) -> Parts:
         parts.after_implicit.similar(scale),
         parts.layout,
         parts.implicit_terms,
+        {name: term.similar(scale) for name, term in parts.slow_terms.items()},
+        {name: term.similar(scale) for name, term in parts.fast_terms.items()},
     )
 
 
-def step_matrix(parts: Parts, tableau: Tableau, dt: float) -> Matrix:
+def step_matrix(parts: Parts, tableau: TimeScheme, dt: float) -> Matrix:
     """Return R(dt), shape (nstate, nstate), in the coordinates of ``parts``.
+
+    For a scheme of several time levels the companion matrix, shape (levels * nstate,) twice, the
+    newest level first.
 
     Raises
     ------
     CalculationError
         If an implicit stage has no solution at this step.
     """
-    return Stepper(parts, tableau, dt).matrix()
+    return stepper_of(parts, tableau, dt).matrix()
 
 
 def spectral_radius(matrix: Matrix) -> float:
@@ -74,3 +82,15 @@ def explicit_polynomial(tableau: Tableau) -> NDArray[np.float64]:
         coefficients.append(float(tableau.b_explicit @ vector))
         vector = tableau.a_explicit @ vector
     return np.array(coefficients)
+
+
+def slow_amplification(scheme: TimeScheme) -> Callable[[Complex], NDArray[np.float64]]:
+    """Return what tells the amplification factor of slow terms alone at z = dt times their rate.
+
+    The modulus of the stability polynomial of a tableau; of a scheme of several time levels the
+    largest modulus of its factors, computational modes included.
+    """
+    if isinstance(scheme, ProgramScheme):
+        return scheme.slow_factor
+    polynomial = explicit_polynomial(scheme)
+    return lambda z: np.abs(np.polynomial.polynomial.polyval(z, polynomial))

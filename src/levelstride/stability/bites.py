@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from levelstride.operator.state import FIELDS, Layout
 from levelstride.operator.wave_basis import KINDS, wave_basis
 from levelstride.stability.powers import power_peak
+from levelstride.stability.time_modes import mode_in_time
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem
 
@@ -24,6 +25,8 @@ ALIKE = 0.9
 
 SHARE = 0.9
 """Share of the energy that the named layers hold."""
+
+ROUND_OFF = 1e-9
 
 ALTERNATES = 2.25
 """Vertical wavelength in layers up to which a state counts as alternating from layer to layer: an
@@ -44,12 +47,15 @@ class CriticalState:
         [1/s]
     period_s : float or None
         Period of the fastest growing state [s]; None where it does not turn.
+    time_mode : str or None
+        ``physical``, ``computational`` or ``merged`` with a scheme of several time levels.
     """
 
     basis: Matrix
     vector: Matrix
     growth_per_s: float
     period_s: float | None
+    time_mode: str | None = None
 
 
 @dataclass(frozen=True)
@@ -103,11 +109,14 @@ def critical_state(problem: WaveProblem, step: float, tolerance: Tolerance) -> C
     if growth[fastest] <= problem.rate(tolerance):
         return _most_amplified(problem, matrix, dt, tolerance)
     chosen = growth >= ALIKE * growth[fastest]
-    basis, singular, _ = np.linalg.svd(vectors[:, chosen], full_matrices=False)
+    newest = problem.newest(vectors)
+    basis, singular, _ = np.linalg.svd(newest[:, chosen], full_matrices=False)
     basis = basis[:, singular > 1e-8 * singular[0]]
     turn = abs(float(np.angle(values[fastest])))
     period = 2 * np.pi * dt / turn if turn > 1e-9 else None
-    return CriticalState(basis, vectors[:, fastest], float(growth[fastest]), period)
+    vector = _normalised(newest[:, fastest])
+    mode = mode_in_time(problem.parts, problem.tableau, dt, complex(values[fastest]), vector)
+    return CriticalState(basis, vector, float(growth[fastest]), period, mode)
 
 
 def _most_amplified(
@@ -119,8 +128,14 @@ def _most_amplified(
     largest = np.abs(power).max()
     _, _, right = np.linalg.svd(power / largest if largest > 0 else power)
     growth = peak.log_norm / (peak.steps * dt)
-    vector = right[0].conj()
+    vector = _normalised(problem.newest(right[0].conj()))
     return CriticalState(vector[:, None], vector, float(growth), None)
+
+
+def _normalised(vector: Matrix) -> Matrix:
+    """Vector of energy norm one; as it is where it has that already, but for round-off."""
+    norm = float(np.linalg.norm(vector))
+    return vector if abs(norm - 1.0) < ROUND_OFF or norm == 0.0 else vector / norm
 
 
 def anatomy(problem: WaveProblem, basis: Matrix) -> Anatomy:

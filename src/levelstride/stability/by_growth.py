@@ -16,6 +16,7 @@ from levelstride.stability.step_limit import (
 )
 from levelstride.stability.tolerance import LOG_STRICT, Tolerance
 from levelstride.stability.wave_problem import WaveProblem
+from levelstride.tableaux.tableau import Tableau
 
 SHORTEST, LONGEST = 0.3, 0.97
 """Bounds of the factor to the next shorter step."""
@@ -81,7 +82,7 @@ def _bracket(problem: WaveProblem, high: float, excess: Excess) -> Bracket:
     With many unknowns the eigenvalue that grows fastest at first is followed, at a fraction of the
     cost, and full matrices are asked about the end.
     """
-    if problem.size > FOLLOWED_FROM:
+    if problem.size > FOLLOWED_FROM and isinstance(problem.tableau, Tableau):
         followed = _Followed(problem, high)
         found = _close_in(problem, high, lambda dt: excess(followed.growth(dt), dt))
         if excess(problem.growth(found.low), found.low) <= 0:
@@ -95,13 +96,13 @@ class _Followed:
 
     def __init__(self, problem: WaveProblem, dt: float) -> None:
         self._problem = problem
-        inverse = ShiftInvert(problem.parts, problem.tableau, dt)
+        inverse = ShiftInvert(problem.parts, problem.table, dt)
         start = np.random.default_rng(problem.size).standard_normal(problem.size)
         vector = inverse.solve_at(problem.dominant(dt)).matvec(start.astype(complex))
         self._pair = inverse.refine(inverse.pair(vector))
 
     def growth(self, dt: float) -> float:
-        inverse = ShiftInvert(self._problem.parts, self._problem.tableau, dt)
+        inverse = ShiftInvert(self._problem.parts, self._problem.table, dt)
         self._pair = inverse.refine(inverse.pair(self._pair.vector))
         return float(np.log(abs(self._pair.value)) / dt)
 

@@ -15,6 +15,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from levelstride.errors import CalculationError
 from levelstride.stability.by_growth import first_failure
 from levelstride.stability.march import EFOLDINGS, GLANCE, Look, March, Seen
 from levelstride.stability.marched_growth import Suspect, fastest_growth, suspect_of
@@ -28,6 +29,7 @@ from levelstride.stability.step_limit import (
 )
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem, lowest_log_limit
+from levelstride.tableaux.tableau import Tableau
 
 DENSE_UNKNOWNS = 1300
 """Up to so many unknowns full matrices certify; dense eigenvalues take some ten seconds there."""
@@ -170,12 +172,22 @@ def certify(
     """
     high = None if bracket is None else bracket.high
     if problems[0].size > DENSE_UNKNOWNS:
+        _refuse_programs(problems[0])
         return _certify_by_marches(problems, low, tolerance, bracket)
     waves = tuple(_dense(problem, low, high, tolerance) for problem in problems)
     breaks: tuple[str, ...] = ()
     if bracket is not None:
         breaks = bracket.problem.violated(bracket.high, tolerance)
     return Certificate(low, high, waves, breaks, bracket)
+
+
+def _refuse_programs(problem: WaveProblem) -> None:
+    """Shift-and-invert reads the tables of a tableau."""
+    if not isinstance(problem.tableau, Tableau):
+        raise CalculationError(
+            f"{problem.tableau.name}: a limit is certified up to {DENSE_UNKNOWNS} unknowns of all "
+            f"time levels together; here are {problem.size}"
+        )
 
 
 def settle(

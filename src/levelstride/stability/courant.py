@@ -22,9 +22,9 @@ from levelstride.operator.setting import Setting, layout_of
 from levelstride.operator.state import FIELDS, Layout
 from levelstride.operator.terms import CATALOGUE
 from levelstride.operator.wave import Wave
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
-from levelstride.stability.amplification import explicit_polynomial
-from levelstride.tableaux.tableau import Tableau
+from levelstride.stability.amplification import slow_amplification
 
 Complex = NDArray[np.complex128]
 Factor = Callable[[Complex], NDArray[np.float64]]
@@ -137,7 +137,7 @@ def courant_limit(
     column: Column,
     air: Background,
     splitting: Splitting,
-    tableau: Tableau,
+    tableau: TimeScheme,
     rate: float,
     largest_s: float,
 ) -> CourantLimit | None:
@@ -148,7 +148,7 @@ def courant_limit(
     column : Column
     air : Background
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     rate : float
         Tolerated growth rate [1/s].
     largest_s : float
@@ -171,7 +171,7 @@ def rows_hold(
     column: Column,
     air: Background,
     splitting: Splitting,
-    tableau: Tableau,
+    tableau: TimeScheme,
     rate: float,
     step_s: float,
 ) -> bool:
@@ -198,12 +198,11 @@ def rows_hold(
 
 
 def _row_sets(
-    column: Column, air: Background, splitting: Splitting, tableau: Tableau
+    column: Column, air: Background, splitting: Splitting, tableau: TimeScheme
 ) -> Iterator[tuple[_Rows, Factor]]:
     """Frozen rows of the stages and of the terms after the step, with their amplification."""
-    polynomial = explicit_polynomial(tableau)
     factors: dict[str, Factor] = {
-        "explicit": lambda z: np.abs(np.polynomial.polynomial.polyval(z, polynomial)),
+        "explicit": slow_amplification(tableau),
         "after-step": lambda z: np.abs(1 + z),
     }
     for treatment, factor in factors.items():

@@ -26,7 +26,7 @@ from levelstride.stability.sensitivity import (
     parts_of,
 )
 from levelstride.stability.tolerance import Tolerance
-from levelstride.stepper.imex import Stepper
+from levelstride.stepper.any_scheme import stepper_of
 
 Matrix = NDArray[Any]
 
@@ -62,7 +62,7 @@ def joint_derivatives(
     number = next(i for i, air in enumerate(column.airs) if air is problem.air)
 
     def stepped(parts: Parts, step: float) -> Matrix:
-        return Stepper(parts, problem.tableau, step).step(found.right)
+        return stepper_of(parts, problem.tableau, step).step(found.right)
 
     def logarithmic(images: Matrix) -> Matrix:
         return np.where(mixes, found.changes(images) / found.values[:, None], 0.0)

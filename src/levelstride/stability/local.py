@@ -15,6 +15,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from levelstride.operator.bands import Banded
+from levelstride.schemes.program import Program, run
+from levelstride.schemes.scheme import ProgramScheme, TimeScheme
 from levelstride.splitting.parts import Parts
 from levelstride.stability.symbols import (
     chosen_layers,
@@ -25,7 +27,7 @@ from levelstride.stability.symbols import (
     turned_real,
 )
 from levelstride.stepper.plan import NONE, Plan
-from levelstride.tableaux.tableau import Tableau
+from levelstride.stepper.program_stepper import roles
 
 Matrix = NDArray[Any]
 Array = NDArray[np.float64]
@@ -47,7 +49,7 @@ class LocalScreen:
     ----------
     parts : Parts
         In energy coordinates, in which partner terms are skew.
-    tableau : Tableau
+    tableau : TimeScheme
     layers : int
         Layers looked at, at most.
     angles : int
@@ -59,15 +61,16 @@ class LocalScreen:
         Layers looked at, ascending.
     angles : ndarray, shape (nlayer, nangle)
         Phase angles from one layer to the next, their sign left out [rad].
-    symbols : ndarray, shape (4, stride, stride, nlane)
-        Frozen slow, fast and two after-step parts, real or complex [1/s]. A lane is a layer and an
+    symbols : ndarray, shape (npart, stride, stride, nlane)
+        Frozen slow, fast and two after-step parts, and for schemes that are programs explicit
+        pressure gradients and divergences, real or complex [1/s]. A lane is a layer and an
         angle, or a layer without vertical motion; of lanes that are alike only one is kept.
     own : ndarray, shape (nlane,)
         Growth of each symbol itself, zero if it decays [1/s].
     """
 
     def __init__(
-        self, parts: Parts, tableau: Tableau, *, layers: int = 10, angles: int = 9
+        self, parts: Parts, tableau: TimeScheme, *, layers: int = 10, angles: int = 9
     ) -> None:
         layout = parts.layout
         self.layers = chosen_layers(parts.whole, layout, layers)
@@ -76,14 +79,19 @@ class LocalScreen:
         slow, fast = parts.slow, parts.fast
         if tableau.kind == "explicit":
             slow, fast = slow + fast, Banded.zeros(slow.size)
-        every = (slow, fast, parts.after, parts.after_implicit)
+        every: tuple[Banded, ...] = (slow, fast, parts.after, parts.after_implicit)
+        if isinstance(tableau, ProgramScheme):
+            of = roles(parts, tableau)
+            every = (of.slow, of.fast, *every[2:], of.wind, of.pressure)
         stack = frozen_symbols(every, layout, self.layers, self.angles)
         if not parts.is_real:
             stack = larger(stack, frozen_symbols(every, layout, self.layers, -self.angles))
         self.symbols = distinct(turned_real(stack))
         whole = np.moveaxis(self.symbols.sum(axis=0), -1, 0)
         self.own: Array = np.maximum(np.linalg.eigvals(whole).real.max(axis=-1), 0.0)
-        self._plan = Plan(tableau, has_slow=not slow.is_zero, has_fast=not fast.is_zero)
+        self._program = tableau.program if isinstance(tableau, ProgramScheme) else None
+        if not isinstance(tableau, ProgramScheme):
+            self._plan = Plan(tableau, has_slow=not slow.is_zero, has_fast=not fast.is_zero)
 
     def growth(self, dts: Array) -> Array:
         """Largest growth rate by the time scheme over all layers and angles.
@@ -128,7 +136,9 @@ class LocalScreen:
         return rates
 
     def _step(self, dts: Array) -> Matrix:
-        """One step of every lane by every dt, shape (stride, stride, ndt * nlane)."""
+        """One step of every lane by every dt, shape (levels * stride,) twice, (ndt * nlane,)."""
+        if self._program is not None:
+            return self._step_of(self._program, dts)
         plan = self._plan
         slow, fast, after, after_implicit = (
             (dts[:, None] * part[:, :, None, :]).reshape(*part.shape[:2], -1)
@@ -157,11 +167,40 @@ class LocalScreen:
                 kept[plan.fast_slot[i]] = y - right if solved else product(fast, y)
         if plan.result_stage == NONE:
             y = combined(plan.nstage)
+        return self._after(y, after, after_implicit)
+
+    def _after(self, y: Matrix, after: Matrix, after_implicit: Matrix) -> Matrix:
+        """Apply what follows the step."""
         if np.any(self.symbols[2]):
             y = y + product(after, y)
         if np.any(self.symbols[3]):
             y = product(inverse(_added_to_one(-after_implicit)), y)
         return y
+
+    def _step_of(self, program: Program, dts: Array) -> Matrix:
+        slow, fast, after, after_implicit, wind, pressure = (
+            (dts[:, None] * part[:, :, None, :]).reshape(*part.shape[:2], -1)
+            for part in self.symbols
+        )
+        of = {"slow": slow, "fast": fast, "wind": wind, "pressure": pressure}
+        present = {name: part for name, part in of.items() if np.any(part)}
+        solvers = {
+            a: inverse(_added_to_one(-a * fast)) for a in program.diagonals if "fast" in present
+        }
+
+        def tendency(part: str, y: Matrix) -> Matrix | None:
+            return product(present[part], y) if part in present else None
+
+        def solve(a: float, y: Matrix) -> Matrix:
+            return product(solvers[a], y) if a in solvers else y.copy()
+
+        n, wide = slow.shape[0], program.levels * slow.shape[0]
+        one = np.repeat(np.eye(wide)[:, :, None], slow.shape[2], axis=2).astype(slow.dtype)
+        new = list(
+            run(program, [one[k * n : (k + 1) * n] for k in range(program.levels)], tendency, solve)
+        )
+        new[0] = self._after(new[0], after, after_implicit)
+        return np.concatenate(new)
 
 
 def product(a: Matrix, b: Matrix) -> Matrix:

@@ -8,6 +8,7 @@ d dt/dh = -(dg/dh)/(dg/dt). See ``courant`` for the criterion itself.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TypeAlias
 
 import numpy as np
 from numpy.polynomial import polynomial
@@ -18,10 +19,10 @@ from levelstride.column.column import Column
 from levelstride.operator.setting import Setting, layout_of
 from levelstride.operator.terms import CATALOGUE
 from levelstride.operator.wave import Wave
+from levelstride.schemes.scheme import ProgramScheme, TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.amplification import explicit_polynomial
 from levelstride.stability.courant import VERTICAL
-from levelstride.tableaux.tableau import Tableau
 
 Array = NDArray[np.float64]
 Complex = NDArray[np.complex128]
@@ -34,6 +35,11 @@ BEYOND = 1.001
 
 SHARP = 1e-6
 """Relative width to which the limit of a row is bisected."""
+
+NEAR = 1e-5
+"""Relative difference by which derivatives of factors without a formula are taken."""
+
+Factor: TypeAlias = "_Polynomial | _LargestFactor"
 
 STENCIL = np.arange(-3, 4)
 """Vertical offsets of a row."""
@@ -131,7 +137,12 @@ class _Rows:
 
 
 def lost_rows(
-    column: Column, splitting: Splitting, tableau: Tableau, rate: float, step: float, reach: float
+    column: Column,
+    splitting: Splitting,
+    tableau: TimeScheme,
+    rate: float,
+    step: float,
+    reach: float,
 ) -> list[LostRow]:
     """Find the rows that are lost between the limit and somewhat beyond.
 
@@ -139,7 +150,7 @@ def lost_rows(
     ----------
     column : Column
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     rate : float
         Tolerated growth rate [1/s].
     step : float
@@ -164,15 +175,51 @@ def lost_rows(
     return sorted(found, key=lambda row: row.step_s)
 
 
-def _factor(tableau: Tableau, treatment: str) -> Array:
-    """Amplification polynomial of a treatment, ascending."""
-    return explicit_polynomial(tableau) if treatment == "explicit" else np.ones(2)
+@dataclass(frozen=True, slots=True, eq=False)
+class _Polynomial:
+    """Amplification by a polynomial, coefficients ascending."""
+
+    coefficients: Array
+
+    def size(self, z: Complex) -> Array:
+        return np.abs(polynomial.polyval(z, self.coefficients))
+
+    def logarithmic(self, z: complex, change: complex) -> float:
+        """Change of ln|P(z)| where z changes, to first order."""
+        slope = polynomial.polyval(z, polynomial.polyder(self.coefficients))
+        return float((slope / polynomial.polyval(z, self.coefficients) * change).real)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _LargestFactor:
+    """Amplification by the largest factor of a scheme that is no tableau."""
+
+    scheme: ProgramScheme
+
+    def size(self, z: Complex) -> Array:
+        return self.scheme.slow_factor(z)
+
+    def logarithmic(self, z: complex, change: complex) -> float:
+        if change == 0:
+            return 0.0
+        reach = NEAR * abs(z) / abs(change)
+        sizes = self.size(np.array([z + reach * change, z - reach * change]))
+        return float(np.log(sizes[0] / sizes[1]) / (2 * reach))
+
+
+def _factor(tableau: TimeScheme, treatment: str) -> Factor:
+    """Amplification of a treatment."""
+    if treatment != "explicit":
+        return _Polynomial(np.ones(2))
+    if isinstance(tableau, ProgramScheme):
+        return _LargestFactor(tableau)
+    return _Polynomial(explicit_polynomial(tableau))
 
 
 Found = tuple[int, float, float, tuple[float, float], int, float]
 
 
-def _lost(rows: _Rows, factor: Array, rate: float, step: float, reach: float) -> list[Found]:
+def _lost(rows: _Rows, factor: Factor, rate: float, step: float, reach: float) -> list[Found]:
     every = rows.different()
     if every.size == 0:
         return []
@@ -188,7 +235,7 @@ def _lost(rows: _Rows, factor: Array, rate: float, step: float, reach: float) ->
         own = max(0.0, float(symbols.real[most]))
 
         def excess(dt: float, z: Complex = symbols, own: float = own) -> Array:
-            size = np.abs(polynomial.polyval(dt * z, factor))
+            size = factor.size(dt * z)
             return np.log(np.maximum(size, 1e-300)) - dt * (rate + own) - 1e-12
 
         low, high = step / BEYOND, step * reach
@@ -212,13 +259,13 @@ class RowDerivative:
     row : LostRow
     column : Column
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     rate : float
         Tolerated growth rate [1/s].
     """
 
     def __init__(
-        self, row: LostRow, column: Column, splitting: Splitting, tableau: Tableau, rate: float
+        self, row: LostRow, column: Column, splitting: Splitting, tableau: TimeScheme, rate: float
     ) -> None:
         self._row, self._splitting = row, splitting
         self._factor = _factor(tableau, row.treatment)
@@ -243,5 +290,4 @@ class RowDerivative:
     def _logarithmic(self, change: complex) -> float:
         """Change of ln|P(dt z)| where dt z changes."""
         z = self._row.step_s * self._here
-        slope = polynomial.polyval(z, polynomial.polyder(self._factor))
-        return float((slope / polynomial.polyval(z, self._factor) * change).real)
+        return self._factor.logarithmic(z, change)

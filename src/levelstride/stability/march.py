@@ -22,6 +22,7 @@ from levelstride.errors import CalculationError
 from levelstride.stability.powers import LOG_CONDITION
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.wave_problem import WaveProblem, lowest_log_limit
+from levelstride.stepper.lane_schemes import lanes_of
 from levelstride.stepper.lanes import LaneStepper
 
 Array = NDArray[np.float64]
@@ -119,7 +120,7 @@ class March:
         known = self._steppers.get(key)
         if known is None:
             parts = [problem.parts for problem in problems]
-            known = LaneStepper(parts, problems[0].tableau, dt)
+            known = lanes_of(parts, problems[0].tableau, dt)
             self._steppers[key] = known
             return known
         return known.at_step(dt)

@@ -89,7 +89,7 @@ def fastest_growth(problem: WaveProblem, dt: float, suspects: tuple[Suspect, ...
         Looked at besides what a march of this wave brings out.
     """
     try:
-        finder = ShiftInvert(problem.parts, problem.tableau, dt)
+        finder = ShiftInvert(problem.parts, problem.table, dt)
         marched = brought_out(problem, dt)
     except CalculationError:
         return Growth(np.inf, 0.0)
@@ -139,7 +139,7 @@ def brought_out(problem: WaveProblem, dt: float) -> Eigenpair:
     CalculationError
         If a stage has no solution at this step.
     """
-    stepper = Stepper(problem.parts, problem.tableau, dt)
+    stepper = Stepper(problem.parts, problem.table, dt)
     state = _marched(problem, dt, stepper)
     states = [state]
     for _ in range(LAST_STATES - 1):
@@ -156,7 +156,7 @@ def _marched(problem: WaveProblem, dt: float, stepper: Stepper) -> Array:
     generator = np.random.default_rng(problem.size)
     state = _normed(generator.standard_normal(problem.size).astype(stepper.dtype))
     try:
-        lanes = LaneStepper([problem.parts], problem.tableau, dt)
+        lanes = LaneStepper([problem.parts], problem.table, dt)
     except CalculationError:
         for _ in range(MARCHED):
             state = _normed(stepper.step(state))
@@ -185,6 +185,6 @@ def _followed(problem: WaveProblem, pair: Eigenpair, start: float, end: float) -
     before = start
     for dt in np.geomspace(start, end, count).tolist():
         guess = Eigenpair(complex(pair.value ** (dt / before)), pair.vector, np.inf)
-        pair = ShiftInvert(problem.parts, problem.tableau, dt).refine(guess)
+        pair = ShiftInvert(problem.parts, problem.table, dt).refine(guess)
         before = dt
     return pair.value

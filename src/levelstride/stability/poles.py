@@ -11,7 +11,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from levelstride.tableaux.tableau import Tableau
+from levelstride.schemes.scheme import TimeScheme
 
 Array = NDArray[np.float64]
 
@@ -19,14 +19,14 @@ NEARLY_REAL = 0.3
 """Largest ratio of imaginary to real part of an eigenvalue that a real step comes close to."""
 
 
-def pole_steps(eigenvalues: NDArray[np.complex128], tableau: Tableau) -> Array:
+def pole_steps(eigenvalues: NDArray[np.complex128], tableau: TimeScheme) -> Array:
     """Steps at which a stage is singular or nearly so.
 
     Parameters
     ----------
     eigenvalues : ndarray
         Of the fast part [1/s].
-    tableau : Tableau
+    tableau : TimeScheme
 
     Returns
     -------

@@ -33,7 +33,7 @@ from levelstride.stability.powers import Peak, power_peak
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
 from levelstride.stability.wave_problem import WaveProblem
-from levelstride.stepper.imex import Stepper
+from levelstride.stepper.any_scheme import stepper_of
 
 Matrix = NDArray[Any]
 Array = NDArray[np.float64]
@@ -221,7 +221,7 @@ class _OfSpectrum:
         return growth - self._dt * self._own.between(more, less)
 
     def _stepped(self, parts: Parts, dt: float) -> Matrix:
-        return Stepper(parts, self._problem.tableau, dt).step(self._found.right)
+        return stepper_of(parts, self._problem.tableau, dt).step(self._found.right)
 
     def _logarithmic(self, image: Matrix) -> float:
         return float((self._found.changes(image)[0, 0] / self._found.values[0]).real)
@@ -261,7 +261,7 @@ class _OfPowers:
         return change - span * own
 
     def _stepped(self, parts: Parts, dt: float) -> Matrix:
-        return Stepper(parts, self._problem.tableau, dt).matrix()
+        return stepper_of(parts, self._problem.tableau, dt).matrix()
 
 
 def _exponential_peak(

@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 from levelstride.column.column import Column
 from levelstride.errors import CalculationError
 from levelstride.operator.setting import layout_of
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.certificate import Certificate, Keeps, settle
 from levelstride.stability.courant import CourantLimit, courant_limit
@@ -83,7 +84,7 @@ class ColumnVerdict:
     ----------
     column : Column
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     largest_s : float
         Step up to which is scanned [s].
     """
@@ -92,15 +93,17 @@ class ColumnVerdict:
         self,
         column: Column,
         splitting: Splitting,
-        tableau: Tableau,
+        tableau: TimeScheme,
         largest_s: float = LONGEST_STEP_S,
     ) -> None:
         if tableau.kind == "explicit":
             splitting = splitting.without_implicit()
         self.column, self.splitting, self.tableau = column, splitting, tableau
         self.largest_s = largest_s
-        # full matrices are asked at every step looked at only where unknowns are few
-        self.marches = layout_of(column).size > FEW_UNKNOWNS
+        # full matrices are asked at every step looked at only where unknowns are few; those of
+        # programs cost several times as much
+        few = FEW_UNKNOWNS if isinstance(tableau, Tableau) else FEW_UNKNOWNS // 2
+        self.marches = layout_of(column).size > few
         self._problems: dict[tuple[int, float], WaveProblem] = {}
         kappas = [float(kappa) for kappa in sampled_wavenumbers(column.horizontal)]
         self.search = StepSearch(self.problem, len(column.airs), kappas, largest_s)

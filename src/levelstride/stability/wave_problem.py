@@ -11,12 +11,13 @@ from numpy.typing import NDArray
 
 from levelstride.column.air import Background
 from levelstride.column.column import Column
-from levelstride.errors import CalculationError
+from levelstride.errors import CalculationError, InternalError
 from levelstride.operator.bands import Banded, total
 from levelstride.operator.energy import energy_weights
 from levelstride.operator.setting import layout_of
 from levelstride.operator.terms import CATALOGUE, assemble
 from levelstride.operator.wave import Wave
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.parts import Parts, sort_terms
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.amplification import step_matrix
@@ -122,7 +123,7 @@ class WaveProblem:
     air : Background
         The air state.
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     kappa : float
         Wavenumber along one axis [1/m].
     """
@@ -132,7 +133,7 @@ class WaveProblem:
         column: Column,
         air: Background,
         splitting: Splitting,
-        tableau: Tableau,
+        tableau: TimeScheme,
         kappa: float,
     ) -> None:
         self.air, self.tableau, self.splitting, self.kappa = air, tableau, splitting, kappa
@@ -147,8 +148,19 @@ class WaveProblem:
 
     @property
     def size(self) -> int:
-        """Number of unknowns, nstate."""
-        return self.parts.layout.size
+        """Number of unknowns, nstate times the time levels of the scheme."""
+        return self.parts.layout.size * self.tableau.levels
+
+    def newest(self, states: Matrix) -> Matrix:
+        """Rows of the newest time level of states, shape (nstate, ...)."""
+        return states[: self.parts.layout.size]
+
+    @property
+    def table(self) -> Tableau:
+        """The scheme where only a tableau will do: marches and shift-and-invert."""
+        if not isinstance(self.tableau, Tableau):
+            raise InternalError(f"{self.tableau.name} is no tableau, it cannot be marched")
+        return self.tableau
 
     @property
     def facts(self) -> OperatorFacts:
@@ -200,7 +212,7 @@ class WaveProblem:
         return LocalScreen(self.parts, self.tableau)
 
     def matrix(self, dt: float) -> Matrix:
-        """R(dt) in energy coordinates, shape (nstate, nstate)."""
+        """R(dt) in energy coordinates, shape (size, size)."""
         return step_matrix(self.parts, self.tableau, dt)
 
     def rate(self, tolerance: Tolerance) -> float:

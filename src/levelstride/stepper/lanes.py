@@ -36,17 +36,12 @@ ROW_BYTES: Final = {"double": 128, "single": 64}
 """Sixteen numbers a row: long enough to pay for the loop around it, short enough for the caches."""
 
 
-class _Operators:
+class LaneOperators:
     """The operators of all lanes, sorted by what they share: independent of the step."""
 
     def __init__(self, lanes: Sequence[Parts], scheme: Scheme, precision: Precision) -> None:
-        if not lanes:
-            raise ValueError("no lanes")
-        self.layout, self.scheme, self.precision = lanes[0].layout, scheme, precision
-        if any(parts.layout != self.layout for parts in lanes):
-            raise ValueError("lanes with different unknowns cannot be taken together")
-        self.nlane, self.order = len(lanes), Order(self.layout)
-        self.is_real = all(parts.is_real for parts in lanes)
+        self._begin(lanes, precision)
+        self.scheme = scheme
         explicit = scheme.kind == "explicit"
         slow = [parts.slow + parts.fast if explicit else parts.slow for parts in lanes]
         fast = [] if explicit else [parts.fast for parts in lanes]
@@ -58,6 +53,20 @@ class _Operators:
         self.slow_rows = self._rows(slow_stencil)
         self.fast_rows = self._rows(self.fast)
         self.after_rows = self._rows(self._stencil([parts.after for parts in lanes]))
+
+    def _begin(self, lanes: Sequence[Parts], precision: Precision) -> None:
+        if not lanes:
+            raise ValueError("no lanes")
+        self.layout, self.precision = lanes[0].layout, precision
+        if any(parts.layout != self.layout for parts in lanes):
+            raise ValueError("lanes with different unknowns cannot be taken together")
+        self.nlane, self.order = len(lanes), Order(self.layout)
+        self.is_real = all(parts.is_real for parts in lanes)
+
+    @property
+    def scheme_levels(self) -> int:
+        """Time levels of a state; they are the first slots."""
+        return 1
 
     def _stencil(self, matrices: Sequence[Banded]) -> Stencil:
         if self.is_real:
@@ -120,7 +129,7 @@ class LaneStepper:
         *,
         precision: Precision = "double",
     ) -> None:
-        self._prepare(_Operators(lanes, tableau, precision), dt)
+        self._prepare(LaneOperators(lanes, tableau, precision), dt)
 
     @staticmethod
     def serves(parts: Parts, tableau: Scheme) -> bool:
@@ -134,16 +143,20 @@ class LaneStepper:
 
     def at_step(self, dt: float) -> LaneStepper:
         """Return the same stepper for another step [s], reusing what does not depend on it."""
-        other = object.__new__(LaneStepper)
+        other = object.__new__(type(self))
         other._prepare(self._operators, dt)
         return other
 
-    def _prepare(self, operators: _Operators, dt: float) -> None:
+    def _rows_of_step(self, operators: LaneOperators, dt: float) -> LaneStep:
+        return LaneStep(operators, dt)
+
+    def _prepare(self, operators: LaneOperators, dt: float) -> None:
         if not (np.isfinite(dt) and dt > 0.0):
             raise InputError(f"step {dt!r} s: a step must be positive and finite")
         self._operators, self.dt, self.layout = operators, float(dt), operators.layout
         self.nlane, self.dtype = operators.nlane, operators.dtype
-        step = _Step(operators, self.dt)
+        step = self._rows_of_step(operators, self.dt)
+        levels = operators.scheme_levels
         number = np.dtype(np.float32 if operators.precision == "single" else np.float64)
         self._span = (0,) * (ROW_BYTES[operators.precision] // number.itemsize)
         width, parts = len(self._span), 1 if operators.is_real else 2
@@ -154,7 +167,9 @@ class LaneStepper:
         self.moved = moved(found, stride) * at.nlev * len(self._span) * number.itemsize
         self.working_set = encoder.size * number.itemsize
         self._lanes = encoder.lanes(self.nlane)
-        self._places = encoder.base[0] + width * operators.order.places
+        self._places = np.concatenate(
+            [base + width * operators.order.places for base in encoder.base[:levels]]
+        )
         self._size, self._row, self._number = encoder.size, encoder.row, number
 
     def march(self, q: Array, steps: int) -> None:
@@ -163,12 +178,12 @@ class LaneStepper:
         Parameters
         ----------
         q : ndarray, shape (nstate, nlane)
-            States, contiguous and of the type `dtype`.
+            States, contiguous and of the type `dtype`; of several time levels the newest first.
         steps : int
             How many.
         """
-        if q.shape != (self.layout.size, self.nlane) or q.dtype != self.dtype:
-            expected = f"({self.layout.size}, {self.nlane}) of {self.dtype}"
+        if q.shape != (self._places.size, self.nlane) or q.dtype != self.dtype:
+            expected = f"({self._places.size}, {self.nlane}) of {self.dtype}"
             raise ValueError(f"states {q.shape} of {q.dtype}, expected {expected}")
         if not q.flags.c_contiguous or not q.flags.writeable:
             raise ValueError("states must be contiguous and writeable")
@@ -188,10 +203,10 @@ def _aligned(size: int, number: np.dtype[Any]) -> Array:
     return room[first : first + size]
 
 
-class _Step:
+class LaneStep:
     """The rows that make up one step."""
 
-    def __init__(self, operators: _Operators, dt: float) -> None:
+    def __init__(self, operators: LaneOperators, dt: float) -> None:
         self._o, self._dt = operators, dt
         self._stride = operators.order.stride
         self.factors = Factors(list(operators.factors.known))
@@ -307,7 +322,7 @@ class _Step:
         return left, right
 
 
-def _stage_name(operators: _Operators, d: int) -> str:
+def _stage_name(operators: LaneOperators, d: int) -> str:
     """Name the stage system of a diagonal coefficient in a message."""
     plan = operators.plan
     stage = int(np.flatnonzero(plan.solver == d)[0]) + 1

@@ -12,13 +12,13 @@ from typing import Final
 from levelstride.column.column import Column
 from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.nearby import Nearby
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict
 from levelstride.studies.methods import tableau_of
-from levelstride.tableaux.tableau import Tableau
 
 REACH: Final = 1.05
 """Multiple of the limit of one slope gradient up to which the other is searched."""
@@ -99,14 +99,14 @@ class Setup:
     ----------
     columns : tuple of Column
         The observed columns, all different.
-    tableau : Tableau
+    tableau : TimeScheme
     splitting : Splitting
     efolding_s : float
         Tolerated e-folding time [s].
     """
 
     columns: tuple[Column, ...]
-    tableau: Tableau
+    tableau: TimeScheme
     splitting: Splitting
     efolding_s: float
 

@@ -15,6 +15,7 @@ from levelstride.results.comparison import ComparedRow, Comparison, CurvePoint, 
 from levelstride.results.comparison_wording import verdict
 from levelstride.results.dataset import Limit
 from levelstride.results.wording import CAUTION, limit_reason
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.studies.compared_row import CompareItem, RowFinding, find_row
 from levelstride.studies.cost import HOUR_S, step_cost
@@ -26,7 +27,6 @@ from levelstride.studies.limit import SCAN
 from levelstride.studies.short_list import short_pairs
 from levelstride.studies.summary import column_summary, provenance, wind_note
 from levelstride.studies.timing import step_time
-from levelstride.tableaux.tableau import Tableau
 
 COMPARED: Final = ("ARS(2,3,2)", "ARS(3,4,3)", "IMEX-SSP2(2,3,2)")
 """Tableaux that are compared where nobody names any: of order 2 and 3, quickly searched."""
@@ -45,7 +45,7 @@ class ComparePlan:
     ----------
     column : Column
         The column, its costs those asked for.
-    pairs : tuple of (Tableau, Splitting)
+    pairs : tuple of (TimeScheme, Splitting)
         One per row.
     tasks : tuple of Task
         One per pair, in their order.
@@ -56,7 +56,7 @@ class ComparePlan:
     """
 
     column: Column
-    pairs: tuple[tuple[Tableau, Splitting], ...]
+    pairs: tuple[tuple[TimeScheme, Splitting], ...]
     tasks: tuple[Task, ...]
     step_s: float | None
     equal_cost: float | None
@@ -175,7 +175,7 @@ def plan_comparison(
     return ComparePlan(column, named, tuple(tasks), step_s, equal_cost)
 
 
-def brief_key(column: Column, tableau: Tableau, splitting: Splitting) -> str:
+def brief_key(column: Column, tableau: TimeScheme, splitting: Splitting) -> str:
     """Key of a limit without its asides, for the column's own lowest slope gradient."""
     return detail_key(
         limit_key(column, tableau, splitting),
@@ -235,7 +235,7 @@ def carry_out_comparison(
 
 
 def _row(
-    column: Column, tableau: Tableau, splitting: Splitting, finding: RowFinding
+    column: Column, tableau: TimeScheme, splitting: Splitting, finding: RowFinding
 ) -> ComparedRow:
     found, accurate, advised = finding.limit, finding.accurate, finding.advised
     cost = step_cost(tableau, splitting, column.advice, reference=column.reference is not None)

@@ -20,6 +20,7 @@ from levelstride.operator.wave import Wave
 from levelstride.results.comparison import ErrorsAtStep, GravityWave, SoundDamping
 from levelstride.results.dataset import Limit
 from levelstride.results.work_precision import PacketSummary, WorkPrecision
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.studies.accurate_step import accurate_and_advised
@@ -28,7 +29,6 @@ from levelstride.studies.limit import limit
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.work_item import StepChecker
 from levelstride.studies.work_precision import work_precision
-from levelstride.tableaux.tableau import Tableau
 
 SAME_STEP: Final = 0.05
 """A step of the packet's curve within this share of another stands for it [1]."""
@@ -143,7 +143,7 @@ class _Waves:
     tell both that and what the errors are.
     """
 
-    def __init__(self, column: Column, splitting: Splitting, tableau: Tableau) -> None:
+    def __init__(self, column: Column, splitting: Splitting, tableau: TimeScheme) -> None:
         self._column, self._splitting, self._tableau = column, splitting, tableau
         self._checker = StepChecker((column,), splitting, tableau)
         self._matched = WaveErrorsAtStep(column_waves(column), splitting, tableau, column.advice)
@@ -203,7 +203,7 @@ def unpacked(packed: bytes) -> Column:
 
 
 def brief_limit(
-    column: Column, splitting: Splitting, tableau: Tableau, split: str | Mapping[str, str]
+    column: Column, splitting: Splitting, tableau: TimeScheme, split: str | Mapping[str, str]
 ) -> Limit:
     """Search the stable step and what bites; where no step is stable, say why."""
     try:
@@ -251,7 +251,7 @@ def gravity_errors(empty: ErrorsAtStep, found: StepWaveErrors) -> ErrorsAtStep:
 
 
 def sound_damping(
-    column: Column, splitting: Splitting, tableau: Tableau, step_s: float
+    column: Column, splitting: Splitting, tableau: TimeScheme, step_s: float
 ) -> SoundDamping | None:
     """Say what one step does to sound; None where no sound is found."""
     waves = _sound_waves(column)

@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from levelstride.results.wording import number
 from levelstride.results.work_precision import WorkPoint, WorkPrecision
+from levelstride.schemes.scheme import ProgramScheme, TimeScheme
 from levelstride.splitting.parts import Parts
 from levelstride.tableaux.audit import HIGHEST_ORDER, audit
 from levelstride.tableaux.tableau import Tableau
@@ -137,12 +138,12 @@ def _largest_steps_order(points: Sequence[WorkPoint]) -> float | None:
     return _slope(clean[0], min(clean[1:], key=lambda p: abs(log(p.step_s / target))))
 
 
-def linear_order(tableau: Tableau, parts: Sequence[Parts]) -> int:
+def linear_order(tableau: TimeScheme, parts: Sequence[Parts]) -> int:
     """Order on linear equations with constant coefficients of the parts that there are.
 
     Parameters
     ----------
-    tableau : Tableau
+    tableau : TimeScheme
     parts : sequence of Parts
         The column's operator as it is split, one per air state.
 
@@ -152,7 +153,10 @@ def linear_order(tableau: Tableau, parts: Sequence[Parts]) -> int:
         That of the pair; of one table alone where the other has nothing to do; 1 at most where
         terms are treated after the step. Orders beyond 5 count as 5.
     """
-    if all(part.fast.is_zero for part in parts):
+    if isinstance(tableau, ProgramScheme):
+        alone = all(part.fast.is_zero for part in parts) and not tableau.substeps
+        order = tableau.slow_order if alone else tableau.order
+    elif all(part.fast.is_zero for part in parts):
         order = _order_alone(tableau.a_explicit, tableau.b_explicit)
     elif all(part.slow.is_zero for part in parts):
         order = _order_alone(tableau.a_implicit, tableau.b_implicit)

@@ -3,8 +3,8 @@
 from dataclasses import dataclass
 
 from levelstride.column.column import Advice
+from levelstride.schemes.scheme import ProgramScheme, TimeScheme
 from levelstride.splitting.splitting import Splitting
-from levelstride.tableaux.tableau import Tableau
 
 HOUR_S = 3600.0
 
@@ -30,16 +30,18 @@ class StepCost:
 
 
 def step_cost(
-    tableau: Tableau, splitting: Splitting, weights: Advice, *, reference: bool = False
+    tableau: TimeScheme, splitting: Splitting, weights: Advice, *, reference: bool = False
 ) -> StepCost:
     """Count what one step needs.
 
     Every explicit evaluation asks for one exchange with neighbours, every solve for one more where
-    the divergence is implicit: pressure then sees the new wind.
+    the divergence is implicit: pressure then sees the new wind. Every substep of a time-split
+    scheme exchanges pressure for the new wind and the new wind for pressure; its explicit gradients
+    and divergences count with its solve.
 
     Parameters
     ----------
-    tableau : Tableau
+    tableau : TimeScheme
         The time scheme.
     splitting : Splitting
         The splitting.
@@ -60,6 +62,9 @@ def step_cost(
     evaluations = tableau.explicit_evaluations if evaluates else 0
     sees_neighbours = any(treatments[term] == "implicit" for term in _NEEDS_NEIGHBOURS)
     exchanges = evaluations + (solves if sees_neighbours else 0)
+    if isinstance(tableau, ProgramScheme) and tableau.substeps:
+        substeps = tableau.program.evaluations("pressure")
+        exchanges += substeps if sees_neighbours else 2 * substeps
     weighted = (
         evaluations * weights.cost_explicit
         + solves * weights.cost_solve

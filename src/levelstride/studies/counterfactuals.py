@@ -14,6 +14,7 @@ from levelstride.operator.terms import CATALOGUE
 from levelstride.results.biting import Change, Counterfactual, StepOfAir
 from levelstride.results.cause import cause
 from levelstride.results.dataset import Limit
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.courant import rows_hold
 from levelstride.stability.march_bounds import DOUBTFUL, SLOW_STRIDE
@@ -24,7 +25,6 @@ from levelstride.stability.verdict import LONGEST_STEP_S, ColumnVerdict, StableS
 from levelstride.stability.wave_problem import wave_terms
 from levelstride.studies.holding import Waves
 from levelstride.studies.what_bites import binding_air
-from levelstride.tableaux.tableau import Tableau
 
 REFERENCE = "reference-state"
 """Stands for a term: what the implicit terms on the air have beyond those on the reference."""
@@ -74,7 +74,7 @@ class AsItIs:
 
 
 def ask_what_if(
-    column: Column, found: Limit, splitting: Splitting, tableau: Tableau, tolerance: Tolerance
+    column: Column, found: Limit, splitting: Splitting, tableau: TimeScheme, tolerance: Tolerance
 ) -> Limit:
     """Add to a limit its counterfactuals, the step of every air state, and the cause they show.
 
@@ -85,7 +85,7 @@ def ask_what_if(
     found : Limit
         The limit.
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     tolerance : Tolerance
 
     Returns
@@ -108,7 +108,7 @@ def ask_what_if(
 def counterfactuals(
     column: Column,
     splitting: Splitting,
-    tableau: Tableau,
+    tableau: TimeScheme,
     tolerance: Tolerance,
     found: StableStep,
 ) -> tuple[Counterfactual, ...]:
@@ -124,7 +124,7 @@ def counterfactuals(
     ----------
     column : Column
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     tolerance : Tolerance
     found : StableStep
         The stable step as things are.
@@ -141,7 +141,7 @@ def counterfactuals(
 
 
 def _counterfactuals(
-    column: Column, splitting: Splitting, tableau: Tableau, tolerance: Tolerance, known: AsItIs
+    column: Column, splitting: Splitting, tableau: TimeScheme, tolerance: Tolerance, known: AsItIs
 ) -> Iterator[Counterfactual]:
     if known.step_s is None:
         return
@@ -161,7 +161,7 @@ def _counterfactuals(
 
 
 def _steps_by_air(
-    column: Column, splitting: Splitting, tableau: Tableau, tolerance: Tolerance, known: AsItIs
+    column: Column, splitting: Splitting, tableau: TimeScheme, tolerance: Tolerance, known: AsItIs
 ) -> Iterator[StepOfAir]:
     if len(column.airs) == 1:
         return
@@ -204,7 +204,7 @@ def explicit_groups(column: Column, splitting: Splitting) -> list[Terms]:
 
 
 def _changes(
-    column: Column, splitting: Splitting, tableau: Tableau
+    column: Column, splitting: Splitting, tableau: TimeScheme
 ) -> Iterator[tuple[Terms, Change]]:
     changes: tuple[Change, ...] = ("implicit", "absent")
     if tableau.kind == "explicit":
@@ -241,7 +241,7 @@ def _changed(
 def _step(
     column: Column,
     splitting: Splitting,
-    tableau: Tableau,
+    tableau: TimeScheme,
     tolerance: Tolerance,
     known: AsItIs,
 ) -> tuple[float | None, bool]:

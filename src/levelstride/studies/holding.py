@@ -16,6 +16,7 @@ from levelstride.column.column import Column
 from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
 from levelstride.operator.setting import layout_of
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.courant import rows_hold
 from levelstride.stability.march import March, Seen
@@ -26,7 +27,6 @@ from levelstride.stability.step_limit import Bracket, StepSearch
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import SAME, ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import WaveProblem
-from levelstride.tableaux.tableau import Tableau
 
 REACH = 1.05
 """The full search scans to this multiple of the step: beyond it nothing is asked."""
@@ -150,12 +150,12 @@ class Trial:
     ----------
     column : Column
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     tolerance : Tolerance
     """
 
     def __init__(
-        self, column: Column, splitting: Splitting, tableau: Tableau, tolerance: Tolerance
+        self, column: Column, splitting: Splitting, tableau: TimeScheme, tolerance: Tolerance
     ) -> None:
         self._splitting, self._tableau, self._tolerance = splitting, tableau, tolerance
         self.columns = lowest_slope_gradients(column)
@@ -244,7 +244,7 @@ class StepQuestion:
     Parameters
     ----------
     splitting : Splitting
-    tableau : Tableau
+    tableau : TimeScheme
     tolerance : Tolerance
     step_s : float
         The step [s].
@@ -256,7 +256,7 @@ class StepQuestion:
     """
 
     def __init__(
-        self, splitting: Splitting, tableau: Tableau, tolerance: Tolerance, step_s: float
+        self, splitting: Splitting, tableau: TimeScheme, tolerance: Tolerance, step_s: float
     ) -> None:
         self.splitting, self.tableau = splitting, tableau
         self.tolerance, self.step_s = tolerance, step_s

@@ -3,16 +3,15 @@
 import hashlib
 import json
 from collections.abc import Mapping
-from dataclasses import asdict
 from typing import Any, Final, Protocol, TypeVar
 
 from levelstride import __version__
 from levelstride.column.column import Column
 from levelstride.results.dataset import FORMAT_VERSION, Limit
 from levelstride.results.round_trip import from_plain_exact, to_plain_exact
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.studies.work_item import Finding
-from levelstride.tableaux.tableau import Tableau
 
 Record = TypeVar("Record")
 
@@ -34,7 +33,7 @@ class Kept(Protocol):
 
 
 def limit_key(
-    column: Column, tableau: Tableau, splitting: Splitting, *, certify: bool = False
+    column: Column, tableau: TimeScheme, splitting: Splitting, *, certify: bool = False
 ) -> str:
     """Make the key of a limit: column, coefficients, treatment of every term, tolerances, version.
 
@@ -42,7 +41,7 @@ def limit_key(
     ----------
     column : Column
         The column; its title and what its ``[advice]`` table asks beyond tolerances do not matter.
-    tableau : Tableau
+    tableau : TimeScheme
         The time scheme; its coefficients and name matter.
     splitting : Splitting
         The splitting.
@@ -60,7 +59,7 @@ def limit_key(
             "of": "limit",
             "version": [__version__, FORMAT_VERSION],
             "column": physics,
-            "tableau": [tableau.name, tableau.kind, asdict(tableau.coefficient_text)],
+            "tableau": [tableau.name, tableau.kind, tableau.fingerprint],
             "splitting": [splitting.name, dict(splitting.treatment)],
             "settings": {name: getattr(column.advice, name) for name in _OF_THE_LIMIT},
             "certify": certify,

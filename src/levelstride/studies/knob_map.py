@@ -17,6 +17,7 @@ from levelstride.results.comparison import ErrorsAtStep
 from levelstride.results.knob_map import Knob, KnobMap, MapPoint, MapRow
 from levelstride.results.stretch_wording import binding_words
 from levelstride.results.wording import CAUTION, number
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.tolerance import Tolerance
@@ -32,7 +33,6 @@ from levelstride.studies.methods import tableau_of
 from levelstride.studies.short_list import short_pairs
 from levelstride.studies.stretch_point import binding
 from levelstride.studies.summary import column_summary, provenance
-from levelstride.tableaux.tableau import Tableau
 
 MOST_POINTS = 10_000
 """Columns times pairs of tableau and splitting."""
@@ -78,7 +78,7 @@ class MapPlan:
         The column as it is in the file.
     knobs : tuple of Knob
         What is varied.
-    pairs : tuple of (Tableau, Splitting)
+    pairs : tuple of (TimeScheme, Splitting)
         One per row.
     tasks : tuple of Task
         Pair by pair, one for every column.
@@ -90,7 +90,7 @@ class MapPlan:
 
     column: Column
     knobs: tuple[Knob, ...]
-    pairs: tuple[tuple[Tableau, Splitting], ...]
+    pairs: tuple[tuple[TimeScheme, Splitting], ...]
     tasks: tuple[Task, ...]
     step_s: float | None
     steep: bool
@@ -273,7 +273,7 @@ def find_point(item: MapItem) -> MapPoint:
 
 
 def _with_errors(
-    point: MapPoint, column: Column, splitting: Splitting, tableau: Tableau, step_s: float
+    point: MapPoint, column: Column, splitting: Splitting, tableau: TimeScheme, step_s: float
 ) -> MapPoint:
     try:
         found = step_wave_errors(column, splitting, tableau, step_s, resolved_only=True)

@@ -11,12 +11,12 @@ from numpy.typing import NDArray
 from levelstride.column.column import Column
 from levelstride.column.variants import with_levels
 from levelstride.errors import CalculationError, InputError
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.studies.least_change import Cuts, Rules, propose
 from levelstride.studies.sensitivity import branches_at
-from levelstride.tableaux.tableau import Tableau
 
 Array = NDArray[np.float64]
 
@@ -79,7 +79,7 @@ class Workshop:
         self,
         column: Column,
         splitting: Splitting,
-        tableau: Tableau,
+        tableau: TimeScheme,
         tolerance: Tolerance,
         tell: Callable[[int], None],
     ) -> None:

@@ -14,6 +14,7 @@ from levelstride.errors import CalculationError
 from levelstride.results.cause import cause
 from levelstride.results.dataset import Limit, OwnGrowth, StepAtTolerance, Window
 from levelstride.results.wording import number
+from levelstride.schemes.scheme import ProgramScheme, TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.amplification import explicit_polynomial
 from levelstride.stability.blas import on_one_thread
@@ -23,13 +24,12 @@ from levelstride.stability.step_limit import SCAN_RATIO, Watch
 from levelstride.stability.tolerance import STANDARD_EFOLDINGS_S, Tolerance
 from levelstride.stability.verdict import ColumnVerdict, StableStep
 from levelstride.stability.wave_problem import WaveProblem
-from levelstride.stepper.imex import Stepper
+from levelstride.stepper.any_scheme import stepper_of
 from levelstride.studies.certified import in_words, record
 from levelstride.studies.counterfactuals import ask_what_if
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.what_bites import binding_air, what_bites
 from levelstride.tableaux.lookup import find, names
-from levelstride.tableaux.tableau import Tableau
 
 Progress = Callable[[int, int, str], None]
 
@@ -235,6 +235,8 @@ def _criterion(found: StableStep, tolerance: Tolerance) -> str:
 
 
 def _explicit_share(verdict: ColumnVerdict, found: StableStep) -> float | None:
+    if isinstance(verdict.tableau, ProgramScheme) and verdict.tableau.substeps:
+        return None  # its slow terms are not what these pairs are made of
     rate, reach = verdict.explicit_rate(), verdict.tableau.imaginary_axis_limit
     if found.step_s is None or rate == 0.0 or reach == 0.0:
         return None
@@ -244,7 +246,7 @@ def _explicit_share(verdict: ColumnVerdict, found: StableStep) -> float | None:
 def _gain(
     column: Column,
     splitting: Splitting,
-    tableau: Tableau,
+    tableau: TimeScheme,
     tolerance: Tolerance,
     found: StableStep,
 ) -> float | None:
@@ -256,7 +258,7 @@ def _gain(
     return found.step_s / baseline if baseline else None
 
 
-def all_explicit_step(column: Column, tableau: Tableau, tolerance: Tolerance) -> float | None:
+def all_explicit_step(column: Column, tableau: TimeScheme, tolerance: Tolerance) -> float | None:
     """Stable step of the tableau's explicit part on the whole operator [s]; None if none.
 
     Explicit parts that share a stability polynomial take the same steps, so one stands for all.
@@ -265,7 +267,7 @@ def all_explicit_step(column: Column, tableau: Tableau, tolerance: Tolerance) ->
 
 
 @lru_cache(maxsize=64)
-def _baseline(column: Column, tableau: Tableau, tolerance: Tolerance) -> float | None:
+def _baseline(column: Column, tableau: TimeScheme, tolerance: Tolerance) -> float | None:
     try:
         verdict = ColumnVerdict(column, resolve("all-explicit"), tableau)
         return verdict.stable_step(tolerance).step_s
@@ -274,8 +276,10 @@ def _baseline(column: Column, tableau: Tableau, tolerance: Tolerance) -> float |
 
 
 @lru_cache(maxsize=256)
-def _representative(tableau: Tableau) -> Tableau:
+def _representative(tableau: TimeScheme) -> TimeScheme:
     """The first tableau of the library with the same explicit polynomial, else the given one."""
+    if isinstance(tableau, ProgramScheme):
+        return tableau
     wanted = explicit_polynomial(tableau)
     for name in names():
         other = find(name)
@@ -287,7 +291,7 @@ def _representative(tableau: Tableau) -> Tableau:
 
 def _certified(found: StableStep, tolerance: Tolerance, verdict: ColumnVerdict) -> str:
     size = verdict.search.problems()[0].size
-    scan = f"{SCAN}; {MARCHED}" if size > CERTAIN_UNKNOWNS else SCAN
+    scan = f"{SCAN}; {MARCHED}" if verdict.marches and size > CERTAIN_UNKNOWNS else SCAN
     if found.step_s is None:
         means = "marches" if verdict.marches else "power norms"
         return f"{means} of every sampled wave up to {number(verdict.largest_s)} s; {scan}"
@@ -325,4 +329,4 @@ def _own_growth(verdict: ColumnVerdict) -> tuple[OwnGrowth, ...]:
 
 def _path(verdict: ColumnVerdict) -> str:
     problem = verdict.search.problems()[0]
-    return str(Stepper(problem.parts, verdict.tableau, 1.0).path)
+    return str(stepper_of(problem.parts, verdict.tableau, 1.0).path)

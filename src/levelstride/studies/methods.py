@@ -5,14 +5,15 @@ from functools import lru_cache
 
 from levelstride.column.column import Column
 from levelstride.errors import InputError
+from levelstride.schemes.lookup import find_scheme
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
-from levelstride.tableaux.lookup import find
 from levelstride.tableaux.tableau import Tableau
 from levelstride.tableaux.user_file import read_file
 
 
-def tableau_of(column: Column, name: str) -> Tableau:
-    """Find a tableau among the built-in ones and those of the column's own tableau file.
+def tableau_of(column: Column, name: str) -> TimeScheme:
+    """Find a tableau, a baseline or a composition; baselines with the knobs of the column.
 
     Parameters
     ----------
@@ -23,7 +24,7 @@ def tableau_of(column: Column, name: str) -> Tableau:
 
     Returns
     -------
-    Tableau
+    TimeScheme
         The time scheme.
 
     Raises
@@ -32,7 +33,8 @@ def tableau_of(column: Column, name: str) -> Tableau:
         If the name is unknown or the tableau file is at fault.
     """
     path = column.advice.tableau_file
-    return find(name, _own_tableaux(path) if path else ())
+    own = _own_tableaux(path) if path else ()
+    return find_scheme(name, column.definition.get("scheme"), own)
 
 
 @lru_cache(maxsize=8)
@@ -42,7 +44,7 @@ def _own_tableaux(path: str) -> tuple[Tableau, ...]:
 
 def pairs_of(
     column: Column, tableaux: Sequence[str] | None, splits: Sequence[str] | None
-) -> list[tuple[Tableau, Splitting]]:
+) -> list[tuple[TimeScheme, Splitting]]:
     """Pair every tableau with every splitting, each once.
 
     Parameters
@@ -54,7 +56,7 @@ def pairs_of(
 
     Returns
     -------
-    list of (Tableau, Splitting)
+    list of (TimeScheme, Splitting)
         Splitting by splitting: workers that start together then work on different tableaux, and
         what they learn of one serves its other splittings. An explicit method steps every term
         alike, so it comes once, with ``all-explicit``.
@@ -65,7 +67,7 @@ def pairs_of(
         With one line for every unknown name.
     """
     problems: list[str] = []
-    schemes: dict[str, Tableau] = {}
+    schemes: dict[str, TimeScheme] = {}
     for name in column.advice.tableaux if tableaux is None else tableaux:
         try:
             scheme = tableau_of(column, name)

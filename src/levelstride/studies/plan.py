@@ -8,11 +8,11 @@ from math import inf
 from levelstride.column.column import Column
 from levelstride.errors import InputError
 from levelstride.results.calibration import SafetyFactor
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.studies.keys import finding_key, limit_key
 from levelstride.studies.methods import pairs_of, tableau_of
 from levelstride.studies.work_item import WorkItem
-from levelstride.tableaux.tableau import Tableau
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,7 +62,7 @@ class Plan:
     ----------
     column : Column
         The column.
-    pairs : tuple of (Tableau, Splitting)
+    pairs : tuple of (TimeScheme, Splitting)
         One per row.
     items : tuple of PlannedItem
         One per pair, in their order, and one more if the current step is of none of them.
@@ -75,7 +75,7 @@ class Plan:
     """
 
     column: Column
-    pairs: tuple[tuple[Tableau, Splitting], ...]
+    pairs: tuple[tuple[TimeScheme, Splitting], ...]
     items: tuple[PlannedItem, ...]
     current: CurrentConfiguration | None
     calibration: SafetyFactor | None = None
@@ -170,7 +170,7 @@ def _check_calibration(column: Column, calibration: SafetyFactor | None) -> None
 
 def _judged_pair(
     column: Column, current: CurrentConfiguration | None
-) -> tuple[Tableau, Splitting] | None:
+) -> tuple[TimeScheme, Splitting] | None:
     if current is None:
         return None
     if not 0.0 < current.step_s < inf:
@@ -180,5 +180,5 @@ def _judged_pair(
     return tableau, resolve(split)
 
 
-def _names(pair: tuple[Tableau, Splitting]) -> tuple[str, str]:
+def _names(pair: tuple[TimeScheme, Splitting]) -> tuple[str, str]:
     return pair[0].name, pair[1].name

@@ -7,6 +7,7 @@ from math import inf
 from levelstride.column.column import Column
 from levelstride.results.dataset import Advice, AdviceRow, CurrentStep, Limit, Provenance
 from levelstride.results.wording import CAUTION, limit_reason, number, percent, step
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.studies.advised_step import whole_steps
 from levelstride.studies.cost import HOUR_S, step_cost
@@ -15,7 +16,6 @@ from levelstride.studies.plan import CurrentConfiguration, Plan
 from levelstride.studies.summary import column_summary, provenance, wind_note
 from levelstride.studies.timing import step_time
 from levelstride.studies.work_item import Finding
-from levelstride.tableaux.tableau import Tableau
 
 CERTIFIED = (
     "every row on both sides of its limit, by dense eigenvalues or energy norms of powers of R at "
@@ -80,7 +80,7 @@ def best_row(rows: Sequence[AdviceRow]) -> int | None:
     return next(iter(vertical or able), None)
 
 
-def _row(column: Column, tableau: Tableau, splitting: Splitting, finding: Finding) -> AdviceRow:
+def _row(column: Column, tableau: TimeScheme, splitting: Splitting, finding: Finding) -> AdviceRow:
     choice = finding.choice
     of_limit = {field.name: getattr(finding.limit, field.name) for field in fields(Limit)}
     if choice.step_s is None:

@@ -4,9 +4,9 @@ from collections.abc import Mapping, Sequence
 from typing import Any, Final
 
 from levelstride.column.column import DEFAULT_SPLITS, DEFAULT_TABLEAUX, Column
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.studies.methods import pairs_of
-from levelstride.tableaux.tableau import Tableau
 
 SHORT_TABLEAUX: Final = ("ARS(2,3,2)", "ARS(3,4,3)", "UJ3(1,3,2)")
 SHORT_SPLITS: Final = ("sound+buoyancy", "sound+buoyancy+divergence")
@@ -18,7 +18,7 @@ def short_pairs(
     tableaux: Sequence[str] | None,
     splits: Sequence[str] | None,
     short: Sequence[str] = SHORT_TABLEAUX,
-) -> list[tuple[Tableau, Splitting, str | Mapping[str, str]]]:
+) -> list[tuple[TimeScheme, Splitting, str | Mapping[str, str]]]:
     """Pair every tableau with every splitting: those given, of the column file, or a short list.
 
     Parameters
@@ -32,7 +32,7 @@ def short_pairs(
 
     Returns
     -------
-    list of (Tableau, Splitting, str or mapping)
+    list of (TimeScheme, Splitting, str or mapping)
         As ``pairs_of`` orders them, each with its splitting as plain data.
 
     Raises

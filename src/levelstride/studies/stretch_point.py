@@ -15,6 +15,7 @@ from levelstride.errors import CalculationError
 from levelstride.results.dataset import Limit
 from levelstride.results.stretch_wording import binding_words
 from levelstride.results.stretching import Binding, StretchPoint
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.bites import anatomy, critical_state
 from levelstride.stability.blas import on_one_thread
@@ -28,7 +29,6 @@ from levelstride.studies.level_families import Family
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.stretched_levels import largest_ratio
 from levelstride.studies.work_item import StepChecker
-from levelstride.tableaux.tableau import Tableau
 
 SURPRISE: Final = (1.5, 1.2)
 """Factor from the expected step beyond which it is looked for in full, by one member and by two."""
@@ -122,7 +122,7 @@ class Members:
         self.column = unpacked(item.column)
         self.family = Family(self.column.levels.interfaces_m, item.keep, item.lowest)
         self.splitting: Splitting = resolve(item.split)
-        self.tableau: Tableau = tableau_of(self.column, item.tableau)
+        self.tableau: TimeScheme = tableau_of(self.column, item.tableau)
         self.tolerance = Tolerance(item.efolding_s, self.column.advice.transient_limit)
 
     def coordinate(self, point: StretchPoint) -> float:

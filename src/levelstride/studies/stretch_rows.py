@@ -9,11 +9,11 @@ from levelstride.errors import CalculationError
 from levelstride.results.mending import LayerSensitivity, Mended
 from levelstride.results.stretch_wording import verdict_of
 from levelstride.results.stretching import Crossing, StretchPoint, StretchRow
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.studies.level_families import Family
 from levelstride.studies.stretch_between import Loss
 from levelstride.studies.stretch_point import carries
-from levelstride.tableaux.tableau import Tableau
 
 Found = TypeVar("Found")
 
@@ -22,7 +22,7 @@ Found = TypeVar("Found")
 class Draft:
     """The curve of one pair, and its target; where the target is lost is looked for here."""
 
-    tableau: Tableau
+    tableau: TimeScheme
     splitting: Splitting
     curve: tuple[StretchPoint, ...]
     target: tuple[float | None, str]

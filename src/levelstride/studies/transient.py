@@ -4,17 +4,17 @@ from math import pi
 
 from levelstride.column.column import Column
 from levelstride.results.transient import TransientFound
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting
 from levelstride.stability.bites import anatomy
 from levelstride.stability.spectrum import sampled_wavenumbers
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.transient_growth import TransientGrowth, transient_growth
 from levelstride.stability.wave_problem import WaveProblem
-from levelstride.tableaux.tableau import Tableau
 
 
 def transient_at_step(
-    column: Column, splitting: Splitting, tableau: Tableau, step_s: float
+    column: Column, splitting: Splitting, tableau: TimeScheme, step_s: float
 ) -> TransientFound:
     """Find the largest power of a step and the state that it amplifies most.
 
@@ -24,7 +24,7 @@ def transient_at_step(
         All of its air states are looked at, at every sampled wave.
     splitting : Splitting
         The splitting.
-    tableau : Tableau
+    tableau : TimeScheme
         The time scheme.
     step_s : float
         The step [s].
@@ -63,7 +63,7 @@ def _described(column: Column, problem: WaveProblem, growth: TransientGrowth) ->
         kinds: dict[str, float] = {}
         energy: dict[str, float] = {}
     else:
-        state = anatomy(problem, growth.state[:, None])
+        state = anatomy(problem, problem.newest(growth.state[:, None]))
         kinds, energy = state.kind_share, state.energy_share
         kind = max(kinds, key=lambda name: kinds[name])
         lowest, highest = state.layer_lowest, state.layer_highest

@@ -69,6 +69,7 @@ def _of_wave(column: Column, bracket: Bracket, tolerance: Tolerance) -> Bites:
         wavelength_layers=where.wavelength_layers,
         wavelength_m=2 * np.pi / problem.kappa,
         period_s=state.period_s,
+        time_mode=state.time_mode,
         shortest_horizontal=_is(problem.kappa, np.pi / column.horizontal.grid_spacing_m),
         steepest_horizontal=_is(problem.kappa, steepest_wavenumber(column.horizontal)),
         shortest_vertical=where.alternates,

@@ -13,6 +13,7 @@ from levelstride.column.knobs import lowest_slope_gradients
 from levelstride.errors import CalculationError
 from levelstride.results.dataset import Limit
 from levelstride.results.wording import limit_reason, number, percent
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.spectrum import sampled_wavenumbers
@@ -21,7 +22,6 @@ from levelstride.stability.wave_problem import WaveProblem
 from levelstride.studies.advised_step import Choice, StepCheck, choose_step
 from levelstride.studies.limit import limit
 from levelstride.studies.methods import tableau_of
-from levelstride.tableaux.tableau import Tableau
 
 
 @dataclass(frozen=True, slots=True)
@@ -166,7 +166,9 @@ def unpacked(packed: bytes) -> tuple[Column, ...]:
 class StepChecker:
     """Examines steps of one tableau and splitting at every sampled wave."""
 
-    def __init__(self, columns: tuple[Column, ...], splitting: Splitting, tableau: Tableau) -> None:
+    def __init__(
+        self, columns: tuple[Column, ...], splitting: Splitting, tableau: TimeScheme
+    ) -> None:
         self._asked = columns[0].advice
         self._tolerance = Tolerance(self._asked.efolding_s, self._asked.transient_limit)
         waves = [wave for column in columns for wave in column_waves(column)]

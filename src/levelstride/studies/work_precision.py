@@ -14,16 +14,16 @@ from levelstride.column.column import Column
 from levelstride.errors import CalculationError, InputError
 from levelstride.results.wording import number
 from levelstride.results.work_precision import WorkPoint, WorkPrecision
+from levelstride.schemes.scheme import TimeScheme
 from levelstride.splitting.splitting import Splitting, resolve
 from levelstride.stability.blas import on_one_thread
 from levelstride.stability.tolerance import Tolerance
 from levelstride.stability.verdict import ColumnVerdict
-from levelstride.stepper.imex import Stepper
+from levelstride.stepper.any_scheme import AnyStepper, stepper_of
 from levelstride.studies.convergence import linear_order, notes, shorter_steps, with_orders
 from levelstride.studies.cost import HOUR_S, StepCost, step_cost
 from levelstride.studies.methods import tableau_of
 from levelstride.studies.timing import step_time
-from levelstride.tableaux.tableau import Tableau
 
 PER_STEP: Final = float(np.finfo(np.float64).eps) / 4
 """About what round-off adds to the error with every step [1]."""
@@ -126,7 +126,7 @@ class _Study:
         self,
         column: Column,
         splitting: Splitting,
-        tableau: Tableau,
+        tableau: TimeScheme,
         hours: float,
         runs: Sequence[ExactPacket],
     ) -> None:
@@ -137,7 +137,7 @@ class _Study:
         )
         self._timed = (column, splitting)
         self._step_time: float | None = None
-        self._steppers: list[Stepper] = []
+        self._steppers: list[AnyStepper] = []
         self._courant_per_s = max(
             float((np.sqrt(air.sound_speed_squared_c) / column.levels.thickness_m).max())
             for air in column.airs
@@ -182,7 +182,7 @@ class _Study:
 
     def _error(self, k: int, dt: float, steps: int) -> float:
         if len(self._steppers) <= k:
-            self._steppers.append(Stepper(self._parts[k], self._tableau, dt))
+            self._steppers.append(stepper_of(self._parts[k], self._tableau, dt))
         else:
             self._steppers[k] = self._steppers[k].at_step(dt)
         run = self._runs[k]
@@ -213,7 +213,7 @@ def _sensible(
         raise InputError(*problems)
 
 
-def _stable_step(column: Column, splitting: Splitting, tableau: Tableau) -> float:
+def _stable_step(column: Column, splitting: Splitting, tableau: TimeScheme) -> float:
     tolerance = Tolerance(column.advice.efolding_s, column.advice.transient_limit)
     step = ColumnVerdict(column, splitting, tableau).stable_step(tolerance).step_s
     return inf if step is None else step

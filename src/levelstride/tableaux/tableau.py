@@ -1,7 +1,7 @@
 """One time scheme as data: the two tables of an additive Runge-Kutta pair."""
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import asdict, dataclass, field
 from fractions import Fraction
 from functools import cached_property
 from types import MappingProxyType
@@ -94,6 +94,16 @@ class Tableau:
     def b_implicit(self) -> Array:
         """Implicit weights, (nstage), read-only."""
         return _read_only(self.exact.b_implicit)
+
+    @property
+    def levels(self) -> int:
+        """Time levels that a step starts from: one."""
+        return 1
+
+    @property
+    def fingerprint(self) -> dict[str, Any]:
+        """All that its answers depend on, as plain data."""
+        return asdict(self.coefficient_text)
 
     @property
     def nstage(self) -> int:
