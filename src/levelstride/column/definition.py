@@ -371,8 +371,7 @@ _STAND_INS: Final[dict[str, Any]] = {
 def parse(raw: dict[str, Any], problems: Problems) -> tuple[Definition, frozenset[str]]:
     """Check the shape of a column file.
 
-    A mistake in one table must not hide those in the next: a broken table is reported and replaced
-    by a stand-in, so that whatever does not depend on it can still be checked.
+    A mistake in one table must not hide those in the next: a stand-in takes its place.
 
     Parameters
     ----------
@@ -399,13 +398,3 @@ def parse(raw: dict[str, Any], problems: Problems) -> tuple[Definition, frozense
     rest = {key: value for key, value in raw.items() if key not in broken}
     stand_ins = {key: value for key, value in _STAND_INS.items() if key in broken}
     return Definition.model_validate(rest | stand_ins), broken
-
-
-def schema() -> dict[str, Any]:
-    """Make the JSON Schema of the column file, for editors."""
-    made = Definition.model_json_schema()
-    many = made["properties"]["air"]
-    described = many.pop("description", "")
-    made["properties"]["air"] = {"anyOf": [many["items"], many], "description": described}
-    made["properties"]["split"]["anyOf"].append({"type": "string"})
-    return {"$schema": "https://json-schema.org/draft/2020-12/schema", **made}

@@ -11,8 +11,7 @@ from ..errors import InputError
 from .assemble import assemble
 from .column import Column
 from .csv_table import read_text
-from .definition import parse
-from .definition import schema as definition_schema
+from .definition import Definition, parse
 from .embedding import embed
 from .problems import Problems
 
@@ -96,8 +95,13 @@ def build(
 
 
 def schema() -> dict[str, Any]:
-    """Make the JSON Schema of the column file, with units and descriptions."""
-    return definition_schema()
+    """Make the JSON Schema of the column file, with units and descriptions, for editors."""
+    made = Definition.model_json_schema()
+    many = made["properties"]["air"]
+    described = many.pop("description", "")
+    made["properties"]["air"] = {"anyOf": [many["items"], many], "description": described}
+    made["properties"]["split"]["anyOf"].append({"type": "string"})
+    return {"$schema": "https://json-schema.org/draft/2020-12/schema", **made}
 
 
 def _plain(value: Any) -> Any:
